@@ -46,3 +46,12 @@ def require_same_shape(**arrays):
         if value.shape != first.shape:
             raise OutOfRangeError(f"{name} must have the shape of {first_name} {first.shape}, got {value.shape}")
     return tuple(named.values())
+
+
+def require_positive(name, value, unit):
+    """Return the value as a float array, or raise when any of it is zero, negative or infinite. NaN passes."""
+    values = require_range(name, value, 0, np.inf, unit)
+    if (values == 0).any():
+        unit_text = f" {unit}" if unit else ""
+        raise OutOfRangeError(f"{name} must be above 0{unit_text}, got 0{unit_text}")
+    return values

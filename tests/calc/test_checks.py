@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from calc.checks import require_range, require_same_shape
+from calc.checks import require_positive, require_range, require_same_shape
 from calc.errors import OutOfRangeError
 
 
@@ -35,3 +35,16 @@ def test_infinity_is_refused_even_where_the_side_is_open(value):
 def test_arrays_of_different_shape_are_named():
     with pytest.raises(OutOfRangeError, match="do_mg_l must have the shape of stations_km"):
         require_same_shape(stations_km=[1.0, 2.0], do_mg_l=[8.0])
+
+
+@pytest.mark.parametrize(
+    ("value", "message"), [(0.0, "must be above 0 m, got 0 m"), (-1.0, "must be between 0 and inf m")]
+)
+def test_zero_and_less_are_not_positive(value, message):
+    with pytest.raises(OutOfRangeError, match=f"depth_m {message}"):
+        require_positive("depth_m", [1.0, value], "m")
+
+
+def test_positive_values_and_missing_ones_pass():
+    assert require_positive("slope", 0.001, "") == 0.001
+    assert np.isnan(require_positive("depth_m", np.nan, "m"))
