@@ -1,0 +1,127 @@
+"""Mixing where waters meet: flow-weighted means, and the distance the river needs to mix across.
+
+References
+----------
+.. [1] H. B. Fischer, E. J. List, R. C. Y. Koh, J. Imberger and N. H. Brooks, "Mixing in Inland and Coastal Waters",
+   Academic Press, 1979, chapter 5, equations 5.5 to 5.10.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from calc.checks import require_positive, require_range
+from calc.errors import OutOfRangeError
+from calc.river import Water
+from calc.units import GRAVITY_M_S2
+
+_CENTRE = 0.1
+_BANK = 0.4
+_NATURAL = 0.6
+_STRAIGHT = 0.15
+# The transverse coefficient of a natural channel is known to half its size either way.
+_UNCERTAINTY = 0.5
+
+
+@dataclass(frozen=True)
+class MixingDistance:
+    """Distance from an outfall to complete mixing across the river: the estimate and its range. [km]"""
+
+    low_km: float
+    best_km: float
+    high_km: float
+
+
+def mixed(flows_m3_s, values):
+    """Return the flow-weighted mean of temperature, concentration or conductance.
+
+    Parameters
+    ----------
+    flows_m3_s : array_like, shape (k) or (k, ...)
+        Flow of each of k waters, not negative. [m³/s] The sum must be above 0.
+    values : array_like, shape (k) or (k, ...)
+        Value of each water. A water without flow adds nothing, whatever its value; else NaN passes.
+
+    Returns
+    -------
+    float or ndarray, shape (...)
+        The mixed value, in the values' unit.
+
+    Raises
+    ------
+    OutOfRangeError
+        If a flow is negative or all are 0, or there are not as many values as flows.
+    """
+    flows = np.atleast_1d(require_range("flows_m3_s", flows_m3_s, 0, np.inf, "m³/s"))
+    values = np.atleast_1d(np.asarray(values, dtype=float))
+    if len(values) != len(flows):
+        raise OutOfRangeError(f"values must hold one for each of the {len(flows)} flows_m3_s, got {len(values)}")
+    rank = max(flows.ndim, values.ndim)
+    flows, values = (array.reshape(array.shape + (1,) * (rank - array.ndim)) for array in (flows, values))
+    total = flows.sum(axis=0)
+    if (total == 0).any():
+        raise OutOfRangeError("flows_m3_s must add up to more than 0 m³/s, got 0 m³/s")
+    return (np.where(flows == 0, 0.0, flows * values).sum(axis=0) / total)[()]
+
+
+def mix_waters(waters):
+    """Return the Water that several become where they meet.
+
+    Each field of a Water may be a float or an array of shape (n); the mixed field is then of shape (n). A water
+    whose conductance is not known counts as fresh, as everywhere; when none is known the mixture's is NaN too.
+
+    Raises
+    ------
+    OutOfRangeError
+        If there is no water, a flow is negative, or all flows are 0.
+    """
+    waters = tuple(waters)
+    if not waters:
+        raise OutOfRangeError("waters must hold at least one water, got none")
+    flows = _column(waters, "flow_m3_s")
+    conductances = _column(waters, "conductance_us_cm")
+    unknown = np.isnan(conductances)
+    conductance = np.where(unknown.all(axis=0), np.nan, mixed(flows, np.where(unknown, 0.0, conductances)))
+    return Water(
+        flow_m3_s=flows.sum(axis=0)[()],
+        do_mg_l=mixed(flows, _column(waters, "do_mg_l")),
+        water_temp_c=mixed(flows, _column(waters, "water_temp_c")),
+        cbod_mg_l=mixed(flows, _column(waters, "cbod_mg_l")),
+        nbod_mg_l=mixed(flows, _column(waters, "nbod_mg_l")),
+        conductance_us_cm=conductance[()],
+    )
+
+
+def complete_mix_km(velocity_m_s, depth_m, width_m, slope, *, at_bank, straight=False):
+    """Return the distance from an outfall to complete mixing across the river, as a range.
+
+    Parameters
+    ----------
+    velocity_m_s, depth_m, width_m, slope : float or array_like, broadcastable
+        Means along the way, above 0. [m/s], [m], [m], [m/m]
+    at_bank : bool
+        True where the outfall lies at a bank, False in the middle of the river.
+    straight : bool
+        True for a straight uniform channel, which mixes four times more slowly than a natural one.
+
+    Returns
+    -------
+    MixingDistance
+        L = k U W² / Ey, k 0.4 or 0.1, Ey 0.6 or 0.15 times H sqrt(g H S) [1]_; half of it, and half as much again.
+
+    Raises
+    ------
+    OutOfRangeError
+        If an argument is not above 0.
+    """
+    velocity = require_positive("velocity_m_s", velocity_m_s, "m/s")
+    depth = require_positive("depth_m", depth_m, "m")
+    width = require_positive("width_m", width_m, "m")
+    shear_velocity = np.sqrt(GRAVITY_M_S2 * depth * require_positive("slope", slope, ""))
+    transverse_m2_s = (_STRAIGHT if straight else _NATURAL) * depth * shear_velocity
+    best = (_BANK if at_bank else _CENTRE) * velocity * width**2 / transverse_m2_s / 1000
+    return MixingDistance(best * (1 - _UNCERTAINTY), best, best * (1 + _UNCERTAINTY))
+
+
+def _column(waters, name):
+    return np.stack(np.broadcast_arrays(*(np.asarray(getattr(water, name), dtype=float) for water in waters)))
