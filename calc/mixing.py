@@ -58,10 +58,7 @@ def mixed(flows_m3_s, values):
         raise OutOfRangeError(f"values must hold one for each of the {len(flows)} flows_m3_s, got {len(values)}")
     rank = max(flows.ndim, values.ndim)
     flows, values = (array.reshape(array.shape + (1,) * (rank - array.ndim)) for array in (flows, values))
-    total = flows.sum(axis=0)
-    if (total == 0).any():
-        raise OutOfRangeError("flows_m3_s must add up to more than 0 m³/s, got 0 m³/s")
-    return (np.where(flows == 0, 0.0, flows * values).sum(axis=0) / total)[()]
+    return _weighted(_shares(flows), values)
 
 
 def mix_waters(waters):
@@ -78,18 +75,12 @@ def mix_waters(waters):
     waters = tuple(waters)
     if not waters:
         raise OutOfRangeError("waters must hold at least one water, got none")
-    flows = _column(waters, "flow_m3_s")
-    conductances = _column(waters, "conductance_us_cm")
-    unknown = np.isnan(conductances)
-    conductance = np.where(unknown.all(axis=0), np.nan, mixed(flows, np.where(unknown, 0.0, conductances)))
-    return Water(
-        flow_m3_s=flows.sum(axis=0)[()],
-        do_mg_l=mixed(flows, _column(waters, "do_mg_l")),
-        water_temp_c=mixed(flows, _column(waters, "water_temp_c")),
-        cbod_mg_l=mixed(flows, _column(waters, "cbod_mg_l")),
-        nbod_mg_l=mixed(flows, _column(waters, "nbod_mg_l")),
-        conductance_us_cm=conductance[()],
-    )
+    fields = ("do_mg_l", "water_temp_c", "cbod_mg_l", "nbod_mg_l", "conductance_us_cm")
+    flows, *columns = _columns(waters, ("flow_m3_s", *fields))
+    shares = _shares(require_range("flow_m3_s", flows, 0, np.inf, "m³/s"))
+    unknown = np.isnan(columns[-1])
+    columns[-1] = np.where(unknown & ~unknown.all(axis=0), 0.0, columns[-1])
+    return Water(flows.sum(axis=0)[()], *(_weighted(shares, column) for column in columns))
 
 
 def complete_mix_km(velocity_m_s, depth_m, width_m, slope, *, at_bank, straight=False):
@@ -123,5 +114,23 @@ def complete_mix_km(velocity_m_s, depth_m, width_m, slope, *, at_bank, straight=
     return MixingDistance(best * (1 - _UNCERTAINTY), best, best * (1 + _UNCERTAINTY))
 
 
-def _column(waters, name):
-    return np.stack(np.broadcast_arrays(*(np.asarray(getattr(water, name), dtype=float) for water in waters)))
+def _columns(waters, names):
+    """Return each field of all waters as an array of shape (k) or (k, n), the same for every field."""
+    table = [[getattr(water, name) for water in waters] for name in names]
+    if any(np.ndim(value) for row in table for value in row):
+        shape = np.broadcast_shapes(*(np.shape(value) for row in table for value in row))
+        table = [[np.broadcast_to(value, shape) for value in row] for row in table]
+    return list(np.array(table, dtype=float))
+
+
+def _shares(flows):
+    """Return each flow's share of the total."""
+    total = flows.sum(axis=0)
+    if (total == 0).any():
+        raise OutOfRangeError("flows must add up to more than 0 m³/s, got 0 m³/s")
+    return flows / total
+
+
+def _weighted(shares, values):
+    """Return the mean over the leading axis; a share of 0 silences its value even when that is NaN."""
+    return np.where(shares == 0, 0.0, shares * values).sum(axis=0)[()]

@@ -70,7 +70,7 @@ def test_water_without_flow_adds_nothing_even_when_its_value_is_missing():
     ("flows", "values", "message"),
     [
         ([2.0, -0.1], [7.0, 7.0], "flows_m3_s must be between 0 and inf m³/s, got -0.1"),
-        ([0.0, 0.0], [7.0, 7.0], "flows_m3_s must add up to more than 0"),
+        ([0.0, 0.0], [7.0, 7.0], "flows must add up to more than 0 m³/s"),
         ([1.0, 2.0], [7.0], "values must hold one for each of the 2 flows_m3_s, got 1"),
     ],
 )
@@ -84,7 +84,8 @@ def test_every_field_of_two_waters_is_mixed_by_flow():
     both = mix_waters((river, outfall))
     assert both.flow_m3_s == pytest.approx(9.8)
     for name in ("do_mg_l", "water_temp_c", "cbod_mg_l", "nbod_mg_l", "conductance_us_cm"):
-        assert getattr(both, name) == mixed([8.70, 1.10], [getattr(river, name), getattr(outfall, name)])
+        expected = (8.70 * getattr(river, name) + 1.10 * getattr(outfall, name)) / 9.8
+        assert getattr(both, name) == pytest.approx(expected)
 
 
 def test_water_of_unknown_conductance_counts_as_fresh_and_only_unknown_stays_unknown():
@@ -99,6 +100,11 @@ def test_waters_of_many_draws_mix_draw_by_draw():
     assert both.flow_m3_s.tolist() == [4.0, 2.0]
     assert both.do_mg_l == pytest.approx([7.0, 5.0])
     assert both.cbod_mg_l == pytest.approx([10.0, 20.0])
+
+
+def test_water_that_takes_flow_away_is_refused():
+    with pytest.raises(OutOfRangeError, match="flow_m3_s must be between 0 and inf m³/s, got -1"):
+        mix_waters([Water(3.0, 8.0, 18.0), Water(-1.0, 8.0, 18.0)])
 
 
 def test_no_water_cannot_be_mixed():
