@@ -1,0 +1,122 @@
+"""A database of its own for each test, the three people, and a survey to work in."""
+
+import re
+
+import pytest
+
+from webapp import create_app
+from webapp.config import read_config
+from webapp.db import Database, make_engine
+from webapp.migrate import upgrade
+from webapp.models import SurveyMember
+from webapp.people import service as people_service
+from webapp.people.forms import NewPerson
+from webapp.surveys import service as survey_service
+from webapp.surveys.forms import parse_survey
+
+PASSWORD = "heron under willow"
+SURVEY_FORM = {
+    "name": "Alder Brook low flow",
+    "river": "Alder Brook",
+    "time_zone": "Europe/Vienna",
+    "elevation_m": "210",
+    "do_criterion_mg_l": "5",
+    "release_at": "2026-08-12T06:00",
+}
+
+
+@pytest.fixture
+def config(tmp_path):
+    """Settings of a fresh data folder, untouched by the environment."""
+    return read_config({}, data_dir=tmp_path / "data")
+
+
+@pytest.fixture
+def app(config):
+    """The application on a fresh database, with request limits off."""
+    upgrade_to_newest(config)
+    app = create_app(config, TESTING=True, RATELIMIT_ENABLED=False)
+    yield app
+    app.extensions["bankside_database"].engine.dispose()
+
+
+def upgrade_to_newest(config):
+    """Make the data folder and every table."""
+    config.data_dir.mkdir(parents=True, exist_ok=True)
+    upgrade(config.database_url)
+
+
+@pytest.fixture
+def db(app):
+    """A writing session on the application's database; commit before a client asks for something."""
+    database = Database(make_engine(app.config["BANKSIDE"].database_url))
+    session = database.writing()
+    yield session
+    session.close()
+    database.engine.dispose()
+
+
+@pytest.fixture
+def people(app):
+    """The three roles: a dictionary from role to Person, all with PASSWORD."""
+    database = app.extensions["bankside_database"]
+    made = {}
+    for role, name in (("office", "Olive Reed"), ("lead", "Linus Ford"), ("crew", "Cleo Banks")):
+        with database.writing() as session:
+            made[role] = people_service.add_person(session, NewPerson(name, f"{role}.test", role, PASSWORD))
+    return made
+
+
+@pytest.fixture
+def survey(app, people):
+    """A survey without a plan, with all three people on it."""
+    facts, errors = parse_survey(SURVEY_FORM)
+    assert not errors
+    database = app.extensions["bankside_database"]
+    with database.writing() as session:
+        survey = survey_service.create_survey(session, facts, people["office"].id)
+    with database.writing() as session:
+        for role in ("lead", "crew"):
+            session.add(SurveyMember(survey_id=survey.id, person_id=people[role].id))
+        session.commit()
+    return survey
+
+
+class Browser:
+    """A test client that signs in and puts the forgery token into every form it posts."""
+
+    def __init__(self, app):
+        self.client = app.test_client()
+        self.token = self._token_of(self.client.get("/sign-in"))
+
+    def sign_in(self, person, password=PASSWORD):
+        """Sign in and return the answer."""
+        answer = self.post("/sign-in", {"sign_in": person.sign_in, "password": password})
+        if answer.status_code == 303:
+            self.token = self._token_of(self.client.get("/"))
+        return answer
+
+    def get(self, address, **more):
+        """GET."""
+        return self.client.get(address, **more)
+
+    def post(self, address, form=None, htmx=False, **more):
+        """POST a form with the token."""
+        headers = {"HX-Request": "true"} if htmx else {}
+        return self.client.post(address, data={"csrf_token": self.token, **(form or {})}, headers=headers, **more)
+
+    @staticmethod
+    def _token_of(answer):
+        return re.search(r'name="csrf_token" value="([^"]+)"', answer.text).group(1)
+
+
+@pytest.fixture
+def browser_as(app, people):
+    """A function from a role to a Browser signed in as that role."""
+
+    def signed_in(role):
+        browser = Browser(app)
+        assert browser.sign_in(people[role]).status_code == 303
+        return browser
+
+    return signed_in

@@ -1,0 +1,166 @@
+"""The `bankside` commands: serve, demo, person, password."""
+
+import socket
+import sys
+from datetime import UTC, datetime
+
+import click
+import segno
+
+from webapp.config import BadSetting, read_config
+
+
+@click.group()
+def main():
+    """Bankside: river oxygen surveys, from plan and predicted sag to a clean dataset."""
+
+
+def listening(command):
+    """Give a command the options of a server."""
+    for option in (
+        click.option("--data", "data_dir", help="Folder of the database file. [BANKSIDE_DATA, else bankside-data]"),
+        click.option("--host", help="Address to listen on. [BANKSIDE_HOST, else 0.0.0.0: every address]"),
+        click.option("--port", type=click.IntRange(1, 65535), help="Port. [BANKSIDE_PORT, else 8080]"),
+    ):
+        command = option(command)
+    return command
+
+
+@main.command()
+@listening
+@click.option("--office-name", help="Name of the first office account, at the first start.")
+@click.option("--office-sign-in", help="Its sign-in name.")
+@click.option("--office-password", envvar="BANKSIDE_OFFICE_PASSWORD", help="Its password. [BANKSIDE_OFFICE_PASSWORD]")
+def serve(data_dir, host, port, office_name, office_sign_in, office_password):
+    """Serve Bankside. The first start makes the database and the first office account."""
+    config = _config(data_dir=data_dir, host=host, port=port)
+    database = _open(config)
+    _first_office(database, office_name, office_sign_in, office_password)
+    database.engine.dispose()
+    _serve(config)
+
+
+@main.command()
+@listening
+def demo(data_dir, host, port):
+    """Load the demo survey into a data folder of its own, then serve it."""
+    config = _config(data_dir=data_dir or "bankside-demo", host=host, port=port)
+    from webapp import demo as demo_survey
+
+    database = _open(config)
+    with database.writing() as db:
+        loaded = demo_survey.load(db, datetime.now(UTC))
+    database.engine.dispose()
+    click.echo("The demo survey is loaded." if loaded else "The demo survey was loaded before; it is as you left it.")
+    click.echo("Sign in as one of:")
+    for sign_in, password, role in demo_survey.SIGN_INS:
+        click.echo(f"  {role:7} {sign_in:8} password {password}")
+    _serve(config)
+
+
+@main.command()
+@click.option("--data", "data_dir", help="Folder of the database file. [BANKSIDE_DATA, else bankside-data]")
+@click.argument("sign_in")
+@click.option("--password", prompt="New password", hide_input=True, confirmation_prompt=True)
+def password(data_dir, sign_in, password):
+    """Set a new password for somebody, for example when the office forgot its own."""
+    from webapp.people import queries, service
+    from webapp.people.forms import parse_password
+
+    database = _open(_config(data_dir=data_dir))
+    with database.writing() as db:
+        person = queries.find_by_sign_in(db, sign_in)
+        if person is None:
+            raise click.ClickException(f"Nobody signs in as {sign_in}.")
+        checked, errors = parse_password({"password": password}, person.sign_in)
+        if errors:
+            raise click.ClickException(errors["password"])
+        service.change_password(db, person.id, checked, person.id)
+    click.echo(f"{person.name} has a new password; their open sessions have ended.")
+
+
+def _config(**overrides):
+    try:
+        return read_config(**overrides)
+    except BadSetting as bad:
+        raise click.ClickException(str(bad)) from bad
+
+
+def _open(config):
+    """Return the Database, brought to this version's tables."""
+    from webapp.db import Database, make_engine
+    from webapp.migrate import upgrade
+
+    config.data_dir.mkdir(parents=True, exist_ok=True)
+    if (copy := upgrade(config.database_url, config.data_dir / "copies")) is not None:
+        click.echo(f"The database was upgraded; a copy of it as it was is kept at {copy}")
+    return Database(make_engine(config.database_url))
+
+
+def _first_office(database, name, sign_in, password):
+    from webapp.people import queries, service
+    from webapp.people.forms import parse_person
+
+    with database.writing() as db:
+        if queries.active_offices(db):
+            return
+        if not (name and sign_in and password) and not sys.stdin.isatty():
+            raise click.ClickException(
+                "This database has no office account yet. Start with --office-name, --office-sign-in and "
+                "--office-password (or BANKSIDE_OFFICE_PASSWORD), or from a terminal to be asked."
+            )
+        click.echo("This is the first start: make the first office account.")
+        given = {
+            "name": name or click.prompt("Your name"),
+            "sign_in": sign_in or click.prompt("Sign-in name, for example d.marsh"),
+            "password": password or click.prompt("Password", hide_input=True, confirmation_prompt=True),
+            "role": "office",
+        }
+        new, errors = parse_person(given)
+        if errors:
+            raise click.ClickException(" ".join(errors.values()))
+        service.add_person(db, new)
+
+
+def _serve(config):
+    from waitress import serve as waitress_serve
+
+    from webapp import create_app
+
+    app = create_app(config)
+    for line in welcome(config):
+        click.echo(line)
+    waitress_serve(app, host=config.host, port=config.port, threads=config.threads, ident=None)
+
+
+def welcome(config, network_address=None):
+    """Return the lines that say where Bankside is reached, with a QR code for phones."""
+    lines = [f"On this machine: http://127.0.0.1:{config.port}/"]
+    address = network_address or _network_address(config.host)
+    if address is None:
+        lines.append("For phones: this machine listens to itself only, or is on no network.")
+    else:
+        url = f"http://{address}:{config.port}/"
+        lines += [f"For phones on the same network: {url}", _qr(url)]
+    lines.append("Stop with Ctrl+C.")
+    return lines
+
+
+def _network_address(host):
+    if host not in {"0.0.0.0", "::"}:
+        return None if host in {"127.0.0.1", "localhost", "::1"} else host
+    with socket.socket(socket.AF_INET, socket.SOCK_DGRAM) as probe:
+        try:
+            probe.connect(("192.0.2.1", 9))  # a documentation address: no packet is sent, only a route looked up
+        except OSError:
+            return None
+        address = probe.getsockname()[0]
+    return None if address.startswith("127.") else address
+
+
+def _qr(url):
+    import io
+
+    text = io.StringIO()
+    segno.make(url, error="m").terminal(out=text, border=2, compact=True)
+    return text.getvalue()

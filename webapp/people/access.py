@@ -1,0 +1,90 @@
+"""Who is signed in, for how long, and what their role may do."""
+
+from datetime import UTC, datetime, timedelta
+from functools import wraps
+
+from flask import session
+from flask_login import LoginManager, current_user, login_user, logout_user
+
+from webapp.db import get_db
+from webapp.errors import NotAllowed
+from webapp.people import queries
+
+ROLES = {"crew": "Crew", "lead": "Lead", "office": "Office"}
+STAYS = {"crew": timedelta(days=7), "lead": timedelta(days=7), "office": timedelta(hours=12)}
+MAY = {
+    "log": {"crew", "lead", "office"},
+    "plan": {"lead", "office"},
+    "correct": {"lead", "office"},
+    "export": {"office"},
+    "manage": {"office"},
+}
+
+login_manager = LoginManager()
+login_manager.login_view = "people.sign_in"
+login_manager.login_message = "Sign in to go on."
+login_manager.session_protection = None  # phones change address and browser build within a day
+
+
+class SignedIn:
+    """The person of this request, as Flask-Login wants it."""
+
+    is_authenticated = True
+    is_active = True
+    is_anonymous = False
+
+    def __init__(self, person):
+        self.id, self.name, self.role = person.id, person.name, person.role
+        self.session_key = person.session_key
+
+    def get_id(self):
+        """Return what the session keeps: the person and the key that ends when their sessions must."""
+        return f"{self.id}:{self.session_key}"
+
+    def may(self, deed):
+        """Return whether the role does this."""
+        return self.role in MAY[deed]
+
+
+@login_manager.user_loader
+def load(session_id):
+    """Return the signed-in person, or None where the session ended or was ended."""
+    person_id, _, key = session_id.partition(":")
+    until = session.get("until")
+    if not isinstance(until, (int, float)) or datetime.now(UTC).timestamp() > until:
+        return None
+    person = queries.find_person(get_db(), person_id)
+    if person is None or not person.active or person.session_key != key:
+        return None
+    return SignedIn(person)
+
+
+def start_session(person):
+    """Sign the person in, in a fresh session."""
+    session.clear()
+    session.permanent = True
+    session["until"] = (datetime.now(UTC) + STAYS[person.role]).timestamp()
+    login_user(SignedIn(person))
+
+
+def end_session():
+    """Sign out."""
+    logout_user()
+    session.clear()
+
+
+def needs(deed):
+    """Let a view run only for a signed-in person whose role does the deed."""
+
+    def decorate(view):
+        @wraps(view)
+        def guarded(*args, **kwargs):
+            if not current_user.is_authenticated:
+                return login_manager.unauthorized()
+            if not current_user.may(deed):
+                raise NotAllowed(f"This page is for {' and '.join(sorted(ROLES[role].lower() for role in MAY[deed]))}.")
+            return view(*args, **kwargs)
+
+        return guarded
+
+    return decorate

@@ -1,0 +1,45 @@
+"""People, and who is on which survey."""
+
+from sqlalchemy import func, select
+
+from webapp.errors import NotFound
+from webapp.models import Person, Survey, SurveyMember
+
+
+def find_person(db, person_id):
+    """Return the person or None."""
+    return db.get(Person, person_id)
+
+
+def get_person(db, person_id):
+    """Return the person. Raises NotFound."""
+    if (person := find_person(db, person_id)) is None:
+        raise NotFound("There is no such person.")
+    return person
+
+
+def find_by_sign_in(db, sign_in):
+    """Return the person with this sign-in name, however it is capitalised, or None."""
+    return db.scalar(select(Person).where(Person.sign_in == sign_in.strip().lower()))
+
+
+def people(db):
+    """Return everybody, active first, by name."""
+    return db.scalars(select(Person).order_by(Person.active.desc(), func.lower(Person.name))).all()
+
+
+def active_offices(db):
+    """Return how many active office accounts there are."""
+    return db.scalar(select(func.count()).where(Person.role == "office", Person.active))
+
+
+def surveys_of(db, person_id):
+    """Return the surveys a person is on, newest first."""
+    query = select(Survey).join(SurveyMember).where(SurveyMember.person_id == person_id)
+    return db.scalars(query.order_by(Survey.created_at.desc(), Survey.name)).all()
+
+
+def members_of(db, survey_id):
+    """Return the people on a survey, by name."""
+    query = select(Person).join(SurveyMember).where(SurveyMember.survey_id == survey_id)
+    return db.scalars(query.order_by(func.lower(Person.name))).all()
