@@ -70,17 +70,18 @@ def mix_waters(waters):
     Raises
     ------
     OutOfRangeError
-        If there is no water, a flow is negative, or all flows are 0.
+        If there is no water, or all flows are 0.
     """
     waters = tuple(waters)
     if not waters:
         raise OutOfRangeError("waters must hold at least one water, got none")
     fields = ("do_mg_l", "water_temp_c", "cbod_mg_l", "nbod_mg_l", "conductance_us_cm")
     flows, *columns = _columns(waters, ("flow_m3_s", *fields))
-    shares = _shares(require_range("flow_m3_s", flows, 0, np.inf, "m³/s"))
+    shares = _shares(flows)
     unknown = np.isnan(columns[-1])
     columns[-1] = np.where(unknown & ~unknown.all(axis=0), 0.0, columns[-1])
-    return Water(flows.sum(axis=0)[()], *(_weighted(shares, column) for column in columns))
+    values = (flows.sum(axis=0)[()], *(_weighted(shares, column) for column in columns))
+    return Water(*(value if value.ndim else float(value) for value in values))
 
 
 def complete_mix_km(velocity_m_s, depth_m, width_m, slope, *, at_bank, straight=False):

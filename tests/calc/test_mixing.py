@@ -102,11 +102,6 @@ def test_waters_of_many_draws_mix_draw_by_draw():
     assert both.cbod_mg_l == pytest.approx([10.0, 20.0])
 
 
-def test_water_that_takes_flow_away_is_refused():
-    with pytest.raises(OutOfRangeError, match="flow_m3_s must be between 0 and inf m³/s, got -1"):
-        mix_waters([Water(3.0, 8.0, 18.0), Water(-1.0, 8.0, 18.0)])
-
-
 def test_no_water_cannot_be_mixed():
     with pytest.raises(OutOfRangeError, match="waters must hold at least one water, got none"):
         mix_waters([])
