@@ -1,0 +1,48 @@
+"""Readings of a survey. Whoever asks has shown by surveys.queries.get_survey that the person is on it."""
+
+from sqlalchemy import select
+from sqlalchemy.orm import joinedload, selectinload
+
+from webapp.errors import NotFound
+from webapp.models import Reading, ReadingEvent, Station
+
+
+def readings_of(db, survey_id):
+    """Return the survey's readings with station, author and events, in the order they were taken."""
+    query = _with_all(select(Reading).where(Reading.survey_id == survey_id))
+    return db.scalars(query.order_by(Reading.taken_at, Reading.received_at, Reading.id)).all()
+
+
+def find_reading(db, reading_id):
+    """Return the reading with this id, of whatever survey, or None."""
+    return db.scalar(_with_all(select(Reading).where(Reading.id == reading_id)))
+
+
+def get_reading(db, survey_id, reading_id):
+    """Return one reading of the survey. Raises NotFound."""
+    reading = find_reading(db, reading_id)
+    if reading is None or reading.survey_id != survey_id:
+        raise NotFound("There is no such reading in this survey.")
+    return reading
+
+
+def get_station(db, survey_id, code):
+    """Return the station of this code. Raises NotFound."""
+    station = db.scalar(select(Station).where(Station.survey_id == survey_id, Station.code == code))
+    if station is None:
+        raise NotFound("There is no such station in this survey. Open the field sheet for those there are.")
+    return station
+
+
+def last_by(db, survey_id, person_id):
+    """Return the reading a person recorded last on the survey, or None."""
+    query = select(Reading).where(Reading.survey_id == survey_id, Reading.author_id == person_id)
+    return db.scalar(query.order_by(Reading.received_at.desc()).limit(1))
+
+
+def _with_all(query):
+    return query.options(
+        joinedload(Reading.station),
+        joinedload(Reading.author),
+        selectinload(Reading.events).joinedload(ReadingEvent.made_by),
+    )
