@@ -1,6 +1,7 @@
 """A database of its own for each test, the three people, and a survey to work in."""
 
 import re
+import shutil
 
 import pytest
 
@@ -11,10 +12,12 @@ from webapp.migrate import upgrade
 from webapp.models import SurveyMember
 from webapp.people import service as people_service
 from webapp.people.forms import NewPerson
+from webapp.people.queries import find_by_sign_in
 from webapp.surveys import service as survey_service
 from webapp.surveys.forms import parse_survey
 
 PASSWORD = "heron under willow"
+ROLES = {"office": "Olive Reed", "lead": "Linus Ford", "crew": "Cleo Banks"}
 SURVEY_FORM = {
     "name": "Alder Brook low flow",
     "river": "Alder Brook",
@@ -25,25 +28,34 @@ SURVEY_FORM = {
 }
 
 
+@pytest.fixture(scope="session")
+def database_with_people(tmp_path_factory):
+    """A database file with every table and the three people; each test gets a copy, since hashing passwords is slow."""
+    config = read_config({}, data_dir=tmp_path_factory.mktemp("template"))
+    upgrade(config.database_url)
+    database = Database(make_engine(config.database_url))
+    for role, name in ROLES.items():
+        with database.writing() as session:
+            people_service.add_person(session, NewPerson(name, f"{role}.test", role, PASSWORD))
+    database.engine.dispose()
+    return config.sqlite_path
+
+
 @pytest.fixture
-def config(tmp_path):
-    """Settings of a fresh data folder, untouched by the environment."""
-    return read_config({}, data_dir=tmp_path / "data")
+def config(tmp_path, database_with_people):
+    """Settings of a fresh data folder with the three people in it, untouched by the environment."""
+    config = read_config({}, data_dir=tmp_path / "data")
+    config.data_dir.mkdir()
+    shutil.copy(database_with_people, config.sqlite_path)
+    return config
 
 
 @pytest.fixture
 def app(config):
-    """The application on a fresh database, with request limits off."""
-    upgrade_to_newest(config)
+    """The application, with request limits off."""
     app = create_app(config, TESTING=True, RATELIMIT_ENABLED=False)
     yield app
     app.extensions["bankside_database"].engine.dispose()
-
-
-def upgrade_to_newest(config):
-    """Make the data folder and every table."""
-    config.data_dir.mkdir(parents=True, exist_ok=True)
-    upgrade(config.database_url)
 
 
 @pytest.fixture
@@ -58,13 +70,9 @@ def db(app):
 
 @pytest.fixture
 def people(app):
-    """The three roles: a dictionary from role to Person, all with PASSWORD."""
-    database = app.extensions["bankside_database"]
-    made = {}
-    for role, name in (("office", "Olive Reed"), ("lead", "Linus Ford"), ("crew", "Cleo Banks")):
-        with database.writing() as session:
-            made[role] = people_service.add_person(session, NewPerson(name, f"{role}.test", role, PASSWORD))
-    return made
+    """The three people, by role, all with PASSWORD."""
+    with app.extensions["bankside_database"].reading() as session:
+        return {role: find_by_sign_in(session, f"{role}.test") for role in ROLES}
 
 
 @pytest.fixture

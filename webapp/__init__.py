@@ -41,6 +41,7 @@ def create_app(config=None, **flask_settings):
         SEND_FILE_MAX_AGE_DEFAULT=31536000,
         WTF_CSRF_TIME_LIMIT=None,  # a form opened at dawn must still save at dusk; the token ends with the session
         RATELIMIT_HEADERS_ENABLED=True,
+        RATELIMIT_ENABLED=True,
     )
     app.config.update(flask_settings)
     app.extensions["bankside_database"] = db.Database(db.make_engine(config.database_url, pool_size=config.threads))
