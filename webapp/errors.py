@@ -69,5 +69,5 @@ def stale_form(_error):
     return _page(
         400,
         "This form is out of date",
-        "You signed in or out since it was opened. Open the page again; your browser's Back button keeps what you typed.",
+        "You signed in or out since it was opened. Open the page again; the Back button keeps what you typed.",
     )

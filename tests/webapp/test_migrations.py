@@ -1,3 +1,4 @@
+import shutil
 import sqlite3
 
 import pytest
@@ -32,12 +33,11 @@ def test_a_database_that_is_up_to_date_is_left_alone(url, tmp_path):
 
 def further(tmp_path, monkeypatch, body):
     """Put a second migration beside a copy of the real ones."""
-    import shutil
-
     folder = tmp_path / "migrations"
     shutil.copytree(migrate.MIGRATIONS, folder)
     (folder / "versions" / "0002_more.py").write_text(
-        f'import sqlalchemy as sa\nfrom alembic import op\nrevision, down_revision = "0002", "0001"\ndef upgrade():\n{body}'
+        "import sqlalchemy as sa\nfrom alembic import op\n"
+        f'revision, down_revision = "0002", "0001"\n\n\ndef upgrade():\n{body}'
     )
     monkeypatch.setattr(migrate, "MIGRATIONS", folder)
 
