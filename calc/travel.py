@@ -76,10 +76,11 @@ def travel_time_h(river, distance_km):
     distance = require_range("distance_km", distance_km, river.from_km, river.to_km, "km")
     edges, hours = _table(river)
     place = np.clip(np.searchsorted(edges, distance, side="right") - 1, 0, len(edges) - 2)
-    slowness = (hours[1:] - hours[:-1]) / np.diff(edges).reshape(-1, *[1] * (hours.ndim - 1))
     beyond = distance - edges[place]
-    time_h = hours[place] + slowness[place] * beyond.reshape(*beyond.shape, *[1] * (hours.ndim - 1))
-    return np.moveaxis(time_h, -1, 0)[()] if hours.ndim == 2 else time_h[()]
+    if hours.ndim == 1:
+        return (hours[place] + beyond * (np.diff(hours) / np.diff(edges))[place])[()]
+    slowness = np.diff(hours, axis=0) / np.diff(edges)[:, None]
+    return np.moveaxis(hours[place] + slowness[place] * beyond[..., None], -1, 0)
 
 
 def distance_at_travel_time_km(river, travel_time_h):
@@ -216,7 +217,7 @@ def _table(river):
     edges = np.array([*(reach.from_km for reach in river.reaches), river.to_km])
     steps = [
         np.asarray((to_km - from_km) / (KM_PER_HOUR * reach.velocity_m_s))
-        for reach, from_km, to_km in zip(river.reaches, edges, edges[1:], strict=True)
+        for reach, from_km, to_km in zip(river.reaches, edges[:-1], edges[1:], strict=True)
     ]
     steps = np.stack(np.broadcast_arrays(*steps))
     hours = np.concatenate([np.zeros_like(steps[:1]), np.cumsum(steps, axis=0)])
