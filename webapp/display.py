@@ -3,6 +3,7 @@
 import math
 from dataclasses import dataclass
 from datetime import UTC
+from decimal import Decimal
 from zoneinfo import ZoneInfo
 
 from calc.units import UNITS, convert
@@ -89,7 +90,7 @@ class Show:
         """Return an SI value as somebody would type it into a form: no digits lost, none invented."""
         if value is None or value == "":
             return ""
-        return f"{round(float(self.shown(quantity, value)), 10):.10g}"
+        return plain_digits(self.shown(quantity, value))
 
     def place(self, distance_km):
         """Return a place along the river in words: "3.20 km below the outfall", "river mile 41.20"."""
@@ -119,6 +120,11 @@ class Show:
     def iso(self, instant):
         """Return an instant in ISO 8601 with the survey's offset."""
         return self.local(instant).isoformat(timespec="seconds") if instant else ""
+
+
+def plain_digits(value):
+    """Return a number to ten digits as people type it, never as 8e-05."""
+    return format(Decimal(f"{round(float(value), 10):.10g}"), "f")
 
 
 def hours(value):

@@ -32,7 +32,10 @@ WEIR_SHAPES = {
 STATION_STATES = {"planned": "planned", "added": "added on site", "dropped": "dropped"}
 
 
-def _place(key, label, also=(), required=True, help=""):
+PLACE_NAMES = ("distance", "location", "at", "km", "mi", "miles", "river mile", "river km", "rm", "rkm")
+
+
+def _place(key, label, also=PLACE_NAMES, required=True, help=""):
     return Column(key, label, "place", required, -500, 2000, also, help=help)
 
 
@@ -43,13 +46,14 @@ REACHES = Table(
     "Lengths of river that are much alike, from the top down, without gaps. The first begins above the outfall.",
     (
         Column("name", "Name", longest=60, also=("reach", "reach name")),
-        _place("from_km", "From", ("start", "begin", "from km", "upstream end")),
-        _place("to_km", "To", ("end", "to km", "downstream end")),
+        _place("from_km", "From", ("start", "begin", "begins at", "upstream end")),
+        _place("to_km", "To", ("end", "ends at", "downstream end")),
         Column("depth_m", "Mean depth", "depth", True, 0.02, 60, ("depth", "h")),
         Column("velocity_m_s", "Mean velocity", "velocity", False, 0.002, 6, ("velocity", "u", "speed"),
                help="Leave empty to take flow divided by width and depth."),
         Column("width_m", "Width", "depth", False, 0.2, 5000, ("width", "w")),
-        Column("slope", "Slope", "plain", False, 0, 0.5, ("s", "bed slope", "gradient"), help="Drop per length, for example 0.0008."),
+        Column("slope", "Slope", "plain", False, 0, 0.5, ("s", "bed slope", "gradient"),
+               help="Drop per length, for example 0.0008."),
         Column("water_temp_c", "Water temperature", "temperature", False, 0, 40, ("temperature", "temp", "t"),
                help="Leave empty to carry the mixed temperature down."),
         Column("kd20_per_day", "kd at 20 °C", "rate", False, 0.001, 10, ("kd", "kd20", "deoxygenation"),
@@ -75,12 +79,12 @@ WATERS = Table(
     (
         Column("kind", "What it is", "choice", True, choices=KINDS, also=("type",)),
         Column("name", "Name", longest=80),
-        _place("distance_km", "Where", ("distance", "km", "location", "at"), required=False,
+        _place("distance_km", "Where", required=False,
                help="Leave empty for the river itself (top of the first reach) and for the outfall (zero)."),
         Column("flow_m3_s", "Flow", "flow", True, 0, 100000, ("flow", "q", "discharge")),
         Column("do_mg_l", "Oxygen", "oxygen", False, 0, 30, ("do", "dissolved oxygen", "oxygen")),
         Column("do_percent", "or oxygen saturation", "percent", False, 0, 400,
-               ("do saturation", "percent saturation", "% saturation", "saturation")),
+               ("do saturation", "percent saturation", "% saturation", "saturation", "do", "oxygen")),
         Column("water_temp_c", "Temperature", "temperature", False, 0, 40, ("temperature", "temp", "t")),
         Column("bod5_mg_l", "BOD5", "demand", False, 0, 50000, ("bod5", "bod", "cbod5")),
         Column("cbod_ultimate_mg_l", "or ultimate carbonaceous BOD", "demand", False, 0, 100000,
@@ -101,7 +105,7 @@ WEIRS = Table(
     "Weirs and dams on the river: water falling over them takes up oxygen.",
     (
         Column("name", "Name", required=True, longest=60),
-        _place("distance_km", "Where", ("distance", "km", "location", "at")),
+        _place("distance_km", "Where"),
         Column("drop_m", "Drop", "depth", True, 0.05, 4.5, ("drop", "height", "fall")),
         Column("quality", "Water", "choice", choices=WEIR_QUALITIES, also=("water quality",)),
         Column("shape", "Shape", "choice", choices=WEIR_SHAPES, also=("weir shape", "crest")),
@@ -117,10 +121,11 @@ ACCESS = Table(
     "Places where a crew can reach the water.",
     (
         Column("name", "Name", required=True, longest=80, also=("access point", "place")),
-        _place("distance_km", "Where", ("distance", "km", "location", "at")),
-        Column("way", "How to reach the water", longest=400, also=("how", "directions", "access", "how to reach the water")),
+        _place("distance_km", "Where"),
+        Column("way", "How to reach the water", longest=400, also=("how", "directions", "access")),
         Column("hazards", "Hazards", longest=400, also=("hazard", "danger")),
-        Column("drive_min", "Minutes to drive from the one before", "plain", False, 0, 600, ("drive", "minutes", "drive min")),
+        Column("drive_min", "Minutes to drive from the one before", "plain", False, 0, 600,
+               ("drive", "drive time", "minutes")),
         Column("latitude", "Latitude", "plain", False, -90, 90, ("lat",)),
         Column("longitude", "Longitude", "plain", False, -180, 180, ("lon", "long")),
         Column("contact", "Owner's contact", longest=200, also=("owner", "phone"), private=True,
@@ -137,16 +142,15 @@ STATIONS = Table(
     "Where the crew reads. A code, once given, is never given to another place.",
     (
         Column("code", "Code", required=True, longest=12, also=("station", "station code", "id")),
-        _place("distance_km", "Where", ("distance", "km", "location", "at")),
+        _place("distance_km", "Where"),
         Column("access", "Access point", longest=80, also=("access point", "place")),
         Column("state", "State", "choice", choices=STATION_STATES, also=("status",)),
-        Column(
-            "reason", "Reason", longest=200, also=("why",), help="Needed when a station is added on site or dropped."
-        ),
+        Column("reason", "Reason", longest=200, also=("why",),
+               help="Needed when a station is added on site or dropped."),
     ),
     "code",
     "distance_km",
-)
+)  # fmt: skip
 
 BASIS = Table(
     "basis",
@@ -161,8 +165,10 @@ BASIS = Table(
         Column("sd_ka", "Doubt about ka, as a fraction", "plain", False, 0, 2, help="Empty takes 0.40."),
         Column("sd_velocity", "Doubt about velocity, as a fraction", "plain", False, 0, 2, help="Empty takes 0.15."),
         Column("sd_cbod", "Doubt about mixed BOD, as a fraction", "plain", False, 0, 2, help="Empty takes 0.20."),
-        Column("sd_nbod", "Doubt about nitrogenous demand, as a fraction", "plain", False, 0, 2, help="Empty takes 0.30."),
-        Column("sd_deficit_mg_l", "Doubt about the deficit after mixing", "oxygen", False, 0, 5, help="Empty takes 0.3 mg/L."),
+        Column("sd_nbod", "Doubt about nitrogenous demand, as a fraction", "plain", False, 0, 2,
+               help="Empty takes 0.30."),
+        Column("sd_deficit_mg_l", "Doubt about the deficit after mixing", "oxygen", False, 0, 5,
+               help="Empty takes 0.3 mg/L."),
     ),
     "bod_bottle_rate_per_day",
     "bod_bottle_rate_per_day",
