@@ -1,0 +1,120 @@
+"""A real server process with the demo survey, and a real Chromium at phone size."""
+
+import os
+import socket
+import subprocess
+import sys
+import time
+import urllib.request
+from contextlib import contextmanager
+
+import pytest
+
+from tests.needs import chromium_path
+from webapp.demo import SIGN_INS
+
+PHONE = {"viewport": {"width": 360, "height": 740}, "device_scale_factor": 2, "is_mobile": True, "has_touch": True}
+DESK = {"viewport": {"width": 1280, "height": 900}}
+PASSWORDS = {role: (sign_in, password) for sign_in, password, role in SIGN_INS}
+
+
+@pytest.fixture(scope="session")
+def browser_type_launch_args():
+    """Use the system's Chromium, and let it reach nothing but this machine."""
+    rules = "MAP * ~NOTFOUND, EXCLUDE 127.0.0.1, EXCLUDE localhost"
+    return {"executable_path": chromium_path(), "args": [f"--host-resolver-rules={rules}"]}
+
+
+def free_port():
+    """Return a port nobody listens on."""
+    with socket.socket() as probe:
+        probe.bind(("127.0.0.1", 0))
+        return probe.getsockname()[1]
+
+
+@contextmanager
+def serving(data_dir, command="demo"):
+    """Run a Bankside server process on the data folder; give its address."""
+    port = free_port()
+    environ = {name: value for name, value in os.environ.items() if not name.startswith("BANKSIDE_")}
+    arguments = [command, "--data", str(data_dir), "--host", "127.0.0.1", "--port", str(port)]
+    process = subprocess.Popen(
+        [sys.executable, "-c", "from webapp.cli import main; main()", *arguments],
+        env=environ,
+        stdout=subprocess.DEVNULL,
+    )
+    address = f"http://127.0.0.1:{port}"
+    try:
+        _wait_for(address, process)
+        yield address
+    finally:
+        process.terminate()
+        process.wait(10)
+
+
+def _wait_for(address, process, seconds=40):
+    end = time.monotonic() + seconds
+    while time.monotonic() < end:
+        if process.poll() is not None:
+            raise RuntimeError("the server stopped before it served")
+        try:
+            urllib.request.urlopen(f"{address}/sign-in", timeout=2)
+            return
+        except OSError:
+            time.sleep(0.1)
+    raise RuntimeError("the server did not answer in time")
+
+
+@pytest.fixture(scope="session")
+def demo(tmp_path_factory):
+    """The address of a server with the demo survey, shared by the tests that change little."""
+    with serving(tmp_path_factory.mktemp("demo")) as address:
+        yield address
+
+
+def sign_in(page, address, role):
+    """Sign in as one of the demo's people."""
+    name, password = PASSWORDS[role]
+    page.goto(f"{address}/sign-in")
+    page.get_by_label("Sign-in name").fill(name)
+    page.get_by_label("Password").fill(password)
+    page.get_by_role("button", name="Sign in").click()
+    page.get_by_role("heading", name="Surveys").wait_for()
+
+
+@pytest.fixture(scope="session")
+def signed_in_states(browser, demo):
+    """The cookies of each role, signed in once: guesses are slowed, and so would the tests be."""
+    states = {}
+    for role in PASSWORDS:
+        context = browser.new_context()
+        sign_in(context.new_page(), demo, role)
+        states[role] = context.storage_state()
+        context.close()
+    return states
+
+
+@pytest.fixture
+def page_as(browser, demo, signed_in_states):
+    """A function from a role to a page signed in as that role, on a phone unless told otherwise."""
+    contexts = []
+
+    def opened(role, device=PHONE, **more):
+        context = browser.new_context(base_url=demo, storage_state=signed_in_states[role], **device, **more)
+        contexts.append(context)
+        page = context.new_page()
+        page.console_errors = []
+        page.on("console", lambda line: page.console_errors.append(line.text) if line.type == "error" else None)
+        page.on("pageerror", lambda error: page.console_errors.append(str(error)))
+        return page
+
+    yield opened
+    for context in contexts:
+        context.close()
+
+
+def survey_address(page):
+    """Open the surveys and return the path of the demo survey."""
+    page.goto("/")
+    link = page.get_by_role("link", name="Sallow Water, August low flow")
+    return link.get_attribute("href").removesuffix("/sheet")
