@@ -30,11 +30,12 @@ class BadCell:
 
 @dataclass(frozen=True)
 class TableFile:
-    """A table as read. rows (values in SI by column key), cells (texts as typed) and numbers (of rows) go together."""
+    """A table as read: of each row its values in SI, cells as typed and unit codes by column key, and its number."""
 
     rows: tuple = ()
     columns_found: tuple = ()
     cells: tuple = ()
+    units: tuple = ()
     numbers: tuple = ()
     errors: tuple = ()
     header_errors: tuple = ()
@@ -80,6 +81,7 @@ def read_table(text, table, show, zone=None):
         rows=tuple(reader.rows),
         columns_found=tuple(head.column for head in heads.values()),
         cells=tuple(reader.cells),
+        units=tuple(reader.units),
         numbers=tuple(number for number, _ in lines[1:]),
         errors=tuple(reader.errors),
         header_errors=tuple(header_errors),
@@ -172,22 +174,25 @@ class _Reader:
     def __init__(self, heads, show, zone, decimal_comma):
         self.heads, self.decimal_comma = heads, decimal_comma
         self.show = replace(show, time_zone=zone)
-        self.rows, self.cells, self.errors = [], [], []
+        self.rows, self.cells, self.units, self.errors = [], [], [], []
 
     def read(self, number, record):
         """Take one record."""
         typed = {head.column.key: record[at] if at < len(record) else "" for at, head in self.heads.items()}
-        row = {}
+        row, units = {}, {}
         for head in self.heads.values():
             text = typed[head.column.key]
+            head = self._in_unit_of_row(head, typed)
+            units[head.column.key] = head.unit
             try:
-                value = read_cell(self._in_unit_of_row(head, typed), text, self.show, self.decimal_comma)
+                value = read_cell(head, text, self.show, self.decimal_comma)
             except BadText as bad:
                 self.errors.append(BadCell(number, head.column.label, text[:100], str(bad)))
             else:
                 row |= {} if value is None else {head.column.key: value}
         self.rows.append(row)
         self.cells.append(typed)
+        self.units.append(units)
 
     def nameless(self, number, record, names):
         """Report the cells of a record above which no column name stands."""
