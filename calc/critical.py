@@ -19,6 +19,7 @@ KINDS = (WITHIN, MIXING_POINT, FIRST_REACH, BELOW_INFLOW, ABOVE_INFLOW, CHANGE, 
 _ABOVE_OUTFALL = -1
 # Where oxygen jumps, or the search begins: the head of a stretch counts even where the stretch has no length.
 _JUMPS = tuple(KINDS.index(kind) for kind in (MIXING_POINT, FIRST_REACH, BELOW_INFLOW))
+_LAST_CHANCES = tuple(KINDS.index(kind) for kind in (ABOVE_INFLOW, STILL_FALLING))
 _SAME_PLACE_KM = 1e-9
 
 
@@ -72,9 +73,11 @@ def critical_point(river):
     # The maximum removes rounding only: where oxygen runs out the deficit is the saturation.
     do = np.maximum(stretches.saturation_mg_l - stretches.balance.deficit_at(peak_d), 0.0)
     searched = (begins != _ABOVE_OUTFALL) & ((length_km > 0) | np.isin(begins, _JUMPS))
-    dry = searched & ~ordinary & (length_km > 0)
-    lowest = np.where(dry.any(axis=0), dry.argmax(axis=0), np.where(searched, do, np.inf).argmin(axis=0))
     at_end = (peak_d > 0) & (peak_d >= duration_d)
+    # Where oxygen is continuous a stretch's end is left to the head of the next: the water just below counts.
+    searched &= ~at_end | np.isin(ends, _LAST_CHANCES)
+    dry = (begins != _ABOVE_OUTFALL) & ~ordinary & (length_km > 0)
+    lowest = np.where(dry.any(axis=0), dry.argmax(axis=0), np.where(searched, do, np.inf).argmin(axis=0))
     code = np.where(peak_d == 0, begins, np.where(at_end, ends, KINDS.index(WITHIN)))
     dry_from_km, dry_to_km = _first_dry_length(dry, stretches)
     values = {
@@ -120,10 +123,13 @@ def _codes(river, stretches):
     place = stretches.start[:, 0]
     begin, end = (_column(np.array(codes))[place] for codes in (begins, ends))
     within = KINDS.index(WITHIN)
-    # A stretch split by anoxia has its Start's code at its first head only; one where settling ends, within the reach.
-    head_km = stretches.from_km[np.searchsorted(place, place)]
+    # A lower half has the code of the upper one where that has no length; a stretch split by anoxia has its Start's
+    # code at its first head only.
+    settled = np.array([start.settled for start in starts])[place]
+    whole = np.searchsorted(place, place - settled)
+    at_head = stretches.from_km == stretches.from_km[whole]
+    begin = np.where(at_head | (begin == _ABOVE_OUTFALL), begin[whole], within)
     next_km = _column(np.array([start.next_km for start in starts]))[place]
-    begin = np.where((stretches.from_km == head_km) | (begin == _ABOVE_OUTFALL), begin, within)
     return begin, np.where(stretches.to_km == next_km, end, within)
 
 

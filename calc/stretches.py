@@ -27,6 +27,7 @@ class Start:
     """Where a stretch begins and what meets the water there, in the order it does.
 
     It ends at to_km: at next_km, the next place that is the same in all plausible rivers, or where settling ends (n).
+    Below the latter, settled is True.
     """
 
     reach: Reach
@@ -36,6 +37,7 @@ class Start:
     new_reach: bool = False
     inflows: tuple[Inflow, ...] = ()
     weirs: tuple[Weir, ...] = ()
+    settled: bool = False
 
     @property
     def mixes(self):
@@ -99,7 +101,7 @@ def _split_at(settling_ends_km, start):
     if not np.any((settling_ends_km > low) & (settling_ends_km < high)):
         return [start]
     middle = np.minimum(np.maximum(settling_ends_km, low), high)
-    return [replace(start, to_km=middle), Start(start.reach, middle, high, high)]
+    return [replace(start, to_km=middle), Start(start.reach, middle, high, high, settled=True)]
 
 
 def cut(river):
