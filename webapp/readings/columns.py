@@ -8,7 +8,7 @@ PRESSURE_SOURCES = {
     "weather": "A weather report or phone (reduced to sea level)",
     "standard": "Not measured",
 }
-PRESSURE_UNITS = {"mm[Hg]": "mmHg", "hPa": "hPa or mbar", "[in_i'Hg]": "inHg"}
+PRESSURE_UNITS = {"mm[Hg]": "mmHg", "hPa": "hPa or mbar", "[in_i'Hg]": "inHg", "kPa": "kPa"}
 POSITIONS = {
     "": "Not noted",
     "left": "Left, looking downstream",

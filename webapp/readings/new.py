@@ -1,6 +1,6 @@
 """A reading on its way in, from the form or a paper sheet, before it is stored."""
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime
 
 
@@ -9,8 +9,9 @@ class NewReading:
     """What was read, in SI; None where nothing was.
 
     id is made by whoever recorded it, so that the same reading sent twice is one. pressure_mmhg is the air pressure as
-    read, converted but not un-reduced. entered holds {"text", "unit"} of each number as it was typed, kept_findings
-    {"name", "says"} of each check that asked and whose reading was kept.
+    read, converted but not un-reduced; surface_velocity_m_s that of a float, from which the mean velocity follows.
+    entered holds {"text", "unit"} of each number as it was typed, kept_findings {"name", "says"} of each check that
+    asked and whose reading was kept.
     """
 
     id: str
@@ -27,6 +28,7 @@ class NewReading:
     position: str = ""
     sensor_depth_m: float | None = None
     velocity_m_s: float | None = None
+    surface_velocity_m_s: float | None = None
     velocity_method: str = ""
     meter: str = ""
     replicate: bool = False
@@ -40,3 +42,7 @@ class NewReading:
     def __post_init__(self):
         if self.pressure_mmhg is None:  # a pressure that nobody read has no source
             object.__setattr__(self, "pressure_source", "standard")
+
+    def keeping(self, findings):
+        """Return the reading with the findings that the crew was asked about, in the words it read."""
+        return replace(self, kept_findings=tuple({"name": one.name, "says": one.says} for one in findings))

@@ -6,15 +6,16 @@ from sqlalchemy.exc import IntegrityError
 
 from calc.errors import OutOfRangeError
 from calc.oxygen import concentration_mg_l, salinity_psu, standard_pressure_mmhg, station_pressure_mmhg
+from calc.travel import mean_velocity_from_float_m_s
 from webapp.errors import Conflict
 from webapp.models import Reading
 from webapp.readings import queries
 from webapp.readings.new import NewReading
 from webapp.surveys.service import remember
 
-__all__ = ["NewReading", "add_reading", "oxygen_of", "put_reading", "station_pressure_of"]
+__all__ = ["NewReading", "add_reading", "oxygen_of", "put_reading", "station_pressure_of", "velocity_of"]
 
-# What a repeat must share with the stored reading; pressure and oxygen are compared as they were typed.
+# What a repeat must share with the stored reading; what is converted on the way is compared as it was typed.
 _CONTENT = (
     "taken_at",
     "water_temp_c",
@@ -25,7 +26,6 @@ _CONTENT = (
     "pressure_source",
     "position",
     "sensor_depth_m",
-    "velocity_m_s",
     "velocity_method",
     "meter",
     "replicate",
@@ -34,7 +34,7 @@ _CONTENT = (
     "longitude",
     "position_radius_m",
 )
-_AS_TYPED = ("do_mg_l", "pressure")
+_AS_TYPED = ("do_mg_l", "pressure", "velocity_m_s", "float_distance", "float_time_s")
 
 
 def add_reading(db, survey, new, by_id, plan_version, received_at):
@@ -56,10 +56,12 @@ def put_reading(db, survey, new, by_id, plan_version, received_at):
     if (stored := queries.find_reading(db, new.id)) is not None:
         return _the_same(stored, survey, new)
     station = queries.get_station(db, survey.id, new.station_code)
-    values = {name: value for name, value in asdict(new).items() if name != "station_code"}
+    values = asdict(new)
+    del values["station_code"], values["surface_velocity_m_s"]
     values["kept_findings"] = list(new.kept_findings)
     values["pressure_mmhg"] = station_pressure_of(new, survey.elevation_m)
     values["do_mg_l"] = oxygen_of(new, survey.elevation_m)
+    values["velocity_m_s"] = velocity_of(new)
     reading = Reading(
         survey_id=survey.id,
         station_id=station.id,
@@ -101,6 +103,13 @@ def oxygen_of(new, elevation_m):
         return float(concentration_mg_l(new.do_percent, new.water_temp_c, pressure, salinity))
     except OutOfRangeError:
         return None
+
+
+def velocity_of(new):
+    """Return the mean velocity: as measured, or 0.85 of a surface float's. [m/s]"""
+    if new.surface_velocity_m_s is None:
+        return new.velocity_m_s
+    return float(mean_velocity_from_float_m_s(new.surface_velocity_m_s))
 
 
 def _the_same(stored, survey, new):
