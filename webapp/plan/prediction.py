@@ -5,14 +5,17 @@ from functools import lru_cache
 
 import numpy as np
 
+from calc.critical import MIXING_POINT, STILL_FALLING
 from calc.errors import CalcError
 from calc.mixing import MixingDistance, complete_mix_km, mix_waters
 from calc.oxygen import salinity_psu, saturation_mg_l
 from calc.reaeration import at_temperature
 from calc.river import River, Water
 from calc.sag import CriticalPoint, critical_point, predict
+from calc.spread import PlanSpread, band, critical_interval
 from webapp.plan.build import ReachRates, build
-from webapp.plan.notes import Note, NotReady
+from webapp.plan.notes import Note, NotReady, refused
+from webapp.plan.tables import BASIS
 
 GRID_POINTS = 161
 # How far above a weir or inflow the grid holds the water before it, so that a jump is drawn as one.
@@ -22,7 +25,14 @@ _SAID = {
     "supersaturated above a weir": "Above a weir the water is predicted to be supersaturated; what is known of weirs "
     "does not apply there, and oxygen is carried over it as it is."
 }
-DOUBTS = {"sd_kd": 0.35, "sd_ka": 0.40, "sd_velocity": 0.15, "sd_cbod": 0.20, "sd_nbod": 0.30, "sd_deficit_mg_l": 0.3}
+DOUBTS = {
+    "sd_kd": "log_kd",
+    "sd_ka": "log_ka",
+    "sd_velocity": "log_velocity",
+    "sd_cbod": "log_cbod",
+    "sd_nbod": "log_nbod",
+    "sd_deficit_mg_l": "initial_deficit_mg_l",
+}
 
 
 @dataclass(frozen=True)
@@ -64,7 +74,7 @@ class MixedWater:
 
 @dataclass(frozen=True)
 class Interval:
-    """A 90 % interval of the critical point under the plan's doubts; either end may be the river's own."""
+    """A 90 % interval of the critical point; open_below where high_km is only the end of the plan."""
 
     low_km: float
     high_km: float
@@ -72,6 +82,7 @@ class Interval:
     high_h: float
     low_mg_l: float
     high_mg_l: float
+    open_below: bool = False
 
 
 @dataclass(frozen=True)
@@ -99,23 +110,45 @@ class Prediction:
     warnings: tuple[Note, ...]
     ready = True
 
+    @property
+    def still_falling(self):
+        """Whether oxygen still falls at the end of the last reach: the true lowest point lies below the plan."""
+        return self.critical.kind == STILL_FALLING
+
+    @property
+    def never_sags(self):
+        """Whether oxygen is lowest where the outfall mixes, and only rises from there."""
+        return self.critical.kind == MIXING_POINT
+
     def at(self, distance_km):
         """Return the StationPrediction of one place, or None outside the river."""
-        if distance_km is None or not self.river.from_km <= distance_km <= self.river.to_km:
-            return None
-        state = predict(self.river, distance_km)
-        reach = next(reach for reach in reversed(self.river.reaches) if reach.from_km <= distance_km)
-        return StationPrediction(
-            distance_km=distance_km,
-            travel_time_h=float(state.travel_time_h),
-            do_mg_l=float(state.do_mg_l),
-            low_mg_l=float(np.interp(distance_km, self.grid_km, self.low_mg_l)),
-            high_mg_l=float(np.interp(distance_km, self.grid_km, self.high_mg_l)),
-            deficit_mg_l=float(state.deficit_mg_l),
-            saturation_mg_l=float(state.saturation_mg_l),
-            water_temp_c=float(state.water_temp_c),
-            depth_m=reach.depth_m,
-        )
+        return self.along([distance_km])[0]
+
+    def along(self, distances_km):
+        """Return a list with the StationPrediction of each place, None for those outside the river."""
+        inside = [km for km in distances_km if km is not None and self.river.from_km <= km <= self.river.to_km]
+        if not inside:
+            return [None] * len(distances_km)
+        state = predict(self.river, inside)
+        columns = {
+            "distance_km": state.distance_km,
+            "travel_time_h": state.travel_time_h,
+            "do_mg_l": state.do_mg_l,
+            "low_mg_l": np.interp(inside, self.grid_km, self.low_mg_l),
+            "high_mg_l": np.interp(inside, self.grid_km, self.high_mg_l),
+            "deficit_mg_l": state.deficit_mg_l,
+            "saturation_mg_l": state.saturation_mg_l,
+            "water_temp_c": state.water_temp_c,
+        }
+        rows = zip(*(values.tolist() for values in columns.values()), strict=True)
+        found = {
+            row[0]: StationPrediction(**dict(zip(columns, row, strict=True)), depth_m=self._depth_m(row[0]))
+            for row in rows
+        }
+        return [found.get(km) for km in distances_km]
+
+    def _depth_m(self, distance_km):
+        return next(reach.depth_m for reach in reversed(self.river.reaches) if reach.from_km <= distance_km)
 
 
 @dataclass(frozen=True)
@@ -156,14 +189,15 @@ def _predict(built, basis):
     river = built.river
     grid_km = _grid(river)
     state = predict(river, grid_km)
-    low, high, interval = _spread(river, basis, grid_km)
+    spread = _spread_of(basis)
+    around = band(river, grid_km, spread)
     critical = critical_point(river)
     along = {
         "grid_km": grid_km,
         "travel_time_h": state.travel_time_h,
         "do_mg_l": state.do_mg_l,
-        "low_mg_l": np.minimum(low, state.do_mg_l),
-        "high_mg_l": np.maximum(high, state.do_mg_l),
+        "low_mg_l": np.minimum(around.low_mg_l, state.do_mg_l),
+        "high_mg_l": np.maximum(around.high_mg_l, state.do_mg_l),
         "deficit_mg_l": state.deficit_mg_l,
         "saturation_mg_l": state.saturation_mg_l,
     }
@@ -173,7 +207,7 @@ def _predict(built, basis):
         river=river,
         **along,
         critical=critical,
-        critical_interval=interval,
+        critical_interval=_interval(river, spread),
         mixing=_mixing(river),
         reach_rates=_warm_rates(built),
         mix_km=_mix_km(built),
@@ -181,38 +215,23 @@ def _predict(built, basis):
     )
 
 
-def _spread(river, basis, grid_km):
-    """Return the low and high of the 90 % band along the grid, and the Interval of the critical point."""
-    doubts = {name: basis.get(name) if basis.get(name) is not None else default for name, default in DOUBTS.items()}
-    rivers = _plausible(river, doubts)
-    low, high = np.quantile(predict(rivers, grid_km).do_mg_l, (0.05, 0.95), axis=0)
-    lowest = critical_point(rivers)
-    ends = [np.quantile(values, (0.05, 0.95)) for values in (lowest.distance_km, lowest.travel_time_h, lowest.do_mg_l)]
-    return low, high, Interval(*(float(end) for pair in ends for end in pair))
+def _spread_of(basis):
+    """Return the PlanSpread of the plan's own doubts, calc's where one is empty. Raises NotReady."""
+    given = {name: basis[key] for key, name in DOUBTS.items() if basis.get(key) is not None}
+    try:
+        return PlanSpread(**given)
+    except CalcError as error:
+        also = {name: BASIS.column(key).label for key, name in DOUBTS.items()}
+        raise NotReady([refused(BASIS, BASIS.title, error, also)]) from error
 
 
-def _plausible(river, doubts):
-    draws = np.random.default_rng(1).standard_normal((6, 200))
-    kd, ka, velocity, cbod, nbod = (
-        np.exp(doubts[f"sd_{name}"] * draw)
-        for name, draw in zip(("kd", "ka", "velocity", "cbod", "nbod"), draws, strict=False)
-    )
-    reaches = tuple(
-        replace(
-            reach,
-            kd20_per_day=reach.kd20_per_day * kd,
-            ka20_per_day=reach.ka20_per_day * ka,
-            velocity_m_s=reach.velocity_m_s * velocity,
-        )
-        for reach in river.reaches
-    )
-
-    def scaled(water):
-        return replace(water, cbod_mg_l=water.cbod_mg_l * cbod, nbod_mg_l=water.nbod_mg_l * nbod)
-
-    inflows = tuple(replace(inflow, water=scaled(inflow.water)) for inflow in river.inflows)
-    shift = doubts["sd_deficit_mg_l"] * draws[5]
-    return replace(river, head=scaled(river.head), reaches=reaches, inflows=inflows, initial_deficit_shift_mg_l=shift)
+def _interval(river, spread):
+    """Return the Interval of the critical point."""
+    found = critical_interval(river, spread)
+    place, time_h, oxygen = found.distance_km, found.travel_time_h, found.do_mg_l
+    # More rivers than the upper twentieth still fall where the plan ends: nothing bounds the place from below.
+    open_below = found.still_falling > 0.05
+    return Interval(place.low, place.high, time_h.low, time_h.high, oxygen.low, oxygen.high, open_below)
 
 
 def _grid(river):
