@@ -250,6 +250,8 @@ def through_anoxia(balance, saturation_mg_l, duration_d):
     ka, net = balance.ka_per_day, balance.net_mg_l_per_day
     onset = balance.onset_d(saturation_mg_l, duration_d)
     dry = np.isfinite(onset)
+    if not dry.any():
+        return [], tuple(state(duration_d) for state in (balance.deficit_at, balance.cbod_at, balance.nbod_at))
     onset = np.where(dry, onset, duration_d)
     deficit = np.where(dry, saturation_mg_l, balance.deficit_at(onset))
     supply = ka * saturation_mg_l - net
@@ -266,4 +268,4 @@ def through_anoxia(balance, saturation_mg_l, duration_d):
     ]
     left = duration_d - returns
     end = (after.deficit_at(left), after.cbod_at(left), after.nbod_at(left))
-    return parts if dry.any() else [], end
+    return parts, end

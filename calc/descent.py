@@ -5,10 +5,12 @@ numpy more in calls than in arithmetic, so one river is walked in plain floats.
 """
 
 from dataclasses import dataclass
+from itertools import pairwise
+from typing import NamedTuple
 
 import numpy as np
 
-from calc.balance import SMALLEST_RATE, Balance, exhausted_time_d, through_anoxia, transfer_time_d
+from calc.balance import ORDINARY, Balance, exhausted_time_d, through_anoxia, transfer_time_d
 from calc.reaeration import weir_deficit_ratio
 from calc.travel import KM_PER_DAY, hours_from_head, zero_km
 
@@ -21,8 +23,7 @@ class Caution:
     message: str
 
 
-@dataclass(frozen=True)
-class Head:
+class Head(NamedTuple):
     """The state at the head of a stretch: start is the place of its Start, phase one of calc.balance's."""
 
     start: int
@@ -58,7 +59,8 @@ def descend(river, starts, joining, water_temp_c, saturation_mg_l, rates, durati
     unpack = np.ndarray.tolist if single else list
     saturation, duration, warmth = unpack(saturation_mg_l), unpack(duration_d), unpack(water_temp_c)
     ends = list(zip(*(unpack(part) for part in _ends(rates, duration_d)), strict=True))
-    limits = list(zip(*(unpack(part) for part in _limits(rates, saturation_mg_l, duration_d)), strict=True))
+    uses = (rates.kd_per_day, rates.kn_per_day, rates.net_mg_l_per_day, rates.ka_per_day * saturation_mg_l)
+    uses = list(zip(*(unpack(part) for part in uses), strict=True))
     state = (river.head.do_mg_l, river.head.cbod_mg_l, river.head.nbod_mg_l)
     shift_at = outfall_place(river, starts)
     time_d = -hours_from_head(river, zero_km(river)) / 24
@@ -73,9 +75,11 @@ def descend(river, starts, joining, water_temp_c, saturation_mg_l, rates, durati
         deficit = saturation[place] - do
         for weir in start.weirs:
             deficit = _below_weir(deficit, weir, warmth[place], cautions)
-        head = Head(place, 0, start.from_km, time_d, deficit, cbod, nbod)
+        head = Head(place, ORDINARY, start.from_km, time_d, deficit, cbod, nbod)
         heads.append(head)
-        if _may_run_out(deficit, cbod, nbod, saturation[place], limits[place]):
+        kd, kn, net, supply = uses[place]
+        # Since demand falls, D cannot rise above the demand at the head over ka: most stretches are surely oxic.
+        if in_any(kd * cbod + kn * nbod + net > supply):
             further, state = _through_anoxia(head, rates, start, saturation[place], duration[place])
             heads.extend(further)
         else:
@@ -85,7 +89,25 @@ def descend(river, starts, joining, water_temp_c, saturation_mg_l, rates, durati
         # Rounding alone can bring oxygen below zero: where it runs out the deficit is the saturation.
         state = (_not_below_zero(saturation[place] - state[0]), *state[1:])
         time_d = time_d + duration[place]
+    cautions.extend(_runs_out(heads))
     return heads, tuple(cautions)
+
+
+def _runs_out(heads):
+    """Return a Caution where oxygen runs out, in the first place that it does or in some of the plausible rivers."""
+    lengths = [
+        (head, np.less(head.from_km, below.from_km)) for head, below in pairwise(heads) if head.phase != ORDINARY
+    ]
+    if not any(np.any(dry) for _, dry in lengths):
+        return []
+    dry = np.any([dry for _, dry in lengths], axis=0)
+    if dry.ndim:
+        where = f"in {np.count_nonzero(dry)} of {dry.size} plausible rivers"
+    else:
+        where = f"at {next(head.from_km for head, dry in lengths if dry):.2f} km"
+    return [
+        Caution("oxygen runs out", f"Oxygen runs out {where}. From there decay is limited by what reaeration brings.")
+    ]
 
 
 def outfall_place(river, starts):
@@ -94,6 +116,11 @@ def outfall_place(river, starts):
     if outfall_km is None:
         return 0
     return next(place for place, start in enumerate(starts) if start.mixes and start.from_km == outfall_km)
+
+
+def in_any(condition):
+    """Return whether a condition holds in any of the plausible rivers; numpy's own any is slow on a plain bool."""
+    return condition if isinstance(condition, bool) else bool(condition.any())
 
 
 def blend(above, joining, share):
@@ -121,30 +148,6 @@ def _ends(rates, duration_d):
         np.exp(-(kd + ks) * duration_d),
         np.exp(-kn * duration_d),
     )
-
-
-def _limits(rates, saturation_mg_l, duration_d):
-    """Return bounds on the deficit within each stretch, cheaper than finding its peak: see _may_run_out."""
-    kd, ks, kn, ka, net = rates
-    peaks = []
-    for use, removal in ((kd, kd + ks), (kn, kn)):
-        difference = np.maximum(np.abs(ka - removal), SMALLEST_RATE)
-        slower = np.maximum(np.minimum(ka, removal), SMALLEST_RATE)
-        peak_d = np.minimum(np.log1p(difference / slower) / difference, duration_d)
-        peaks.append(use * transfer_time_d(removal, ka, peak_d))
-    return *peaks, np.maximum(net, 0.0) * exhausted_time_d(ka, duration_d), kd, kn, net, ka * saturation_mg_l
-
-
-def _may_run_out(deficit, cbod, nbod, saturation, limits):
-    """Return False where oxygen surely lasts: the separate peaks of D together, or the demand at the head, are too low.
-
-    D cannot rise above (kd L + kn N + net)/ka at the head, since demand only falls.
-    """
-    cbod_peak, nbod_peak, net_peak, kd, kn, net, supply = limits
-    doubtful = (abs(deficit) + cbod * cbod_peak + nbod * nbod_peak + net_peak >= saturation) & (
-        kd * cbod + kn * nbod + net > supply
-    )
-    return bool(np.any(doubtful))
 
 
 def _below_weir(deficit, weir, water_temp_c, cautions):

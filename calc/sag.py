@@ -104,7 +104,7 @@ def _along(stretches, distance_km):
     if heads.ndim == 1 or (heads == heads[:, :1]).all():
         first = heads if heads.ndim == 1 else heads[:, 0]
         stretch = np.maximum(np.searchsorted(first, distance_km, side="right") - 1, 0)
-        return (lambda values: values[stretch]), distance_km if heads.ndim == 1 else distance_km[:, None]
+        return (lambda values: values.take(stretch, axis=0)), distance_km if heads.ndim == 1 else distance_km[:, None]
     members = heads.shape[1]
     place_km = distance_km[:, None]
     stretch = np.maximum((heads[:, None] <= place_km).sum(axis=0) - 1, 0)

@@ -8,12 +8,14 @@ Where several things meet at one place the water first enters the next reach, th
 order, then it falls over the weirs.
 """
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
+from math import isnan, nan
+from typing import NamedTuple
 
 import numpy as np
 
 from calc.balance import Balance
-from calc.descent import Caution, Rates, blend, descend
+from calc.descent import Caution, Rates, blend, descend, in_any
 from calc.errors import OutOfRangeError
 from calc.mixing import mixed
 from calc.oxygen import salinity_psu, saturation_mg_l
@@ -22,8 +24,7 @@ from calc.river import Inflow, Reach, Weir
 from calc.travel import KM_PER_DAY
 
 
-@dataclass(frozen=True)
-class Start:
+class Start(NamedTuple):
     """Where a stretch begins and what meets the water there, in the order it does.
 
     It ends at to_km: at next_km, the next place that is the same in all plausible rivers, or where settling ends (n).
@@ -98,10 +99,10 @@ def divide(river):
 def _split_at(settling_ends_km, start):
     """Return the start, or two where settling ends within it, for some of the rivers at least."""
     low, high = start.from_km, start.to_km
-    if not np.any((settling_ends_km > low) & (settling_ends_km < high)):
+    if not in_any((settling_ends_km > low) & (settling_ends_km < high)):
         return [start]
     middle = np.minimum(np.maximum(settling_ends_km, low), high)
-    return [replace(start, to_km=middle), Start(start.reach, middle, high, high, settled=True)]
+    return [start._replace(to_km=middle), Start(start.reach, middle, high, high, settled=True)]
 
 
 def cut(river):
@@ -207,8 +208,12 @@ def _carried(river, starts, joining):
 
 def _blend_conductance(above, joining, share):
     """Return the mixed conductance: a water whose own is not known counts as fresh, and NaN stays if neither is."""
+    if isinstance(share, float):
+        if isnan(above) and isnan(joining):
+            return nan
+        return blend(0.0 if isnan(above) else above, 0.0 if isnan(joining) else joining, share)
     mixture = blend(np.nan_to_num(above), np.nan_to_num(joining), share)
-    return np.where(np.isnan(above) & np.isnan(joining), np.nan, mixture)[()]
+    return np.where(np.isnan(above) & np.isnan(joining), np.nan, mixture)
 
 
 def _rates(river, starts, water_temp_c, from_km, stack):

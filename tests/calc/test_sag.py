@@ -392,9 +392,20 @@ def test_river_anoxic_to_its_end_is_anoxic_at_its_end():
     foul = Inflow(0.0, Water(3.0, 0.0, 22.0, 4000.0), kind="outfall")
     river = plan(inflows=(foul,))
     assert critical_point(river).anoxic_to_km == 40.0
+    (caution,) = predict(river, 0.0).warnings
+    assert caution.name == "oxygen runs out"
+    assert f"at {critical_point(river).anoxic_from_km:.2f} km" in caution.message
     last = predict(river, 40.0)
     assert last.anoxic
     assert last.do_mg_l == 0.0
+
+
+def test_caution_counts_the_plausible_rivers_that_run_out_of_oxygen():
+    outfall = replace(plan().inflows[0], water=Water(0.6, 2.0, 22.0, np.array([90.0, 400.0, 900.0])))
+    river = plan(inflows=(outfall,))
+    assert critical_point(river).anoxic.tolist() == [False, True, True]
+    (caution,) = predict(river, 0.0).warnings
+    assert "in 2 of 3 plausible rivers" in caution.message
 
 
 def test_background_demand_above_all_reaeration_leaves_demand_waiting():

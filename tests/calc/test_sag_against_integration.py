@@ -40,6 +40,8 @@ def test_random_rivers_hold_what_is_awkward():
         assert sum(((part.phase == phase) & far).any() for part, far in zip(stretches, long, strict=True)) > 10
     settling = [(b.ks_per_day > 0) & (part.phase == 1) for b, part in zip(balances, stretches, strict=True)]
     assert sum(found.any() for found in settling) > 5
-    assert sum(bool(part.cautions) for part in stretches) > 5
+    named = [caution.name for part in stretches for caution in part.cautions]
+    assert named.count("supersaturated above a weir") > 5
+    assert named.count("oxygen runs out") > 20
     kinds = {critical_point(river).kind for river in rivers}
     assert len(kinds) >= 5
