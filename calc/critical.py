@@ -15,7 +15,8 @@ BELOW_INFLOW = "at an inflow, just below"
 ABOVE_INFLOW = "at an inflow or weir, just above"
 CHANGE = "where the reach changes"
 STILL_FALLING = "at the end of the last reach (oxygen still falling)"
-KINDS = (WITHIN, MIXING_POINT, FIRST_REACH, BELOW_INFLOW, ABOVE_INFLOW, CHANGE, STILL_FALLING)
+UNKNOWN = "not known, a number is missing"
+KINDS = (WITHIN, MIXING_POINT, FIRST_REACH, BELOW_INFLOW, ABOVE_INFLOW, CHANGE, STILL_FALLING, UNKNOWN)
 _ABOVE_OUTFALL = -1
 # Where oxygen jumps, or the search begins: the head of a stretch counts even where the stretch has no length.
 _JUMPS = tuple(KINDS.index(kind) for kind in (MIXING_POINT, FIRST_REACH, BELOW_INFLOW))
@@ -79,10 +80,13 @@ def critical_point(river):
     dry = (begins != _ABOVE_OUTFALL) & ~ordinary & (length_km > 0)
     lowest = np.where(dry.any(axis=0), dry.argmax(axis=0), np.where(searched, do, np.inf).argmin(axis=0))
     code = np.where(peak_d == 0, begins, np.where(at_end, ends, KINDS.index(WITHIN)))
+    code = np.where(np.isnan(do), KINDS.index(UNKNOWN), code)
+    place_km = np.where(at_end, stretches.to_km, stretches.from_km + peak_d * stretches.km_per_day)
+    missing = np.where(np.isnan(do), np.nan, 0.0)
     dry_from_km, dry_to_km = _first_dry_length(dry, stretches)
     values = {
-        "distance_km": np.where(at_end, stretches.to_km, stretches.from_km + peak_d * stretches.km_per_day),
-        "travel_time_h": 24 * (stretches.head_time_d + peak_d),
+        "distance_km": place_km + missing,
+        "travel_time_h": 24 * (stretches.head_time_d + peak_d) + missing,
         "do_mg_l": do,
         "deficit_mg_l": stretches.saturation_mg_l - do,
         "water_temp_c": stretches.water_temp_c,

@@ -522,6 +522,12 @@ def test_missing_distance_gives_missing_oxygen():
     assert np.isnan(predict(plan(), [np.nan, 1.0]).do_mg_l).tolist() == [True, False]
 
 
+def test_missing_rate_gives_a_missing_low_point():
+    point = critical_point(with_reach(plan(), 0, kd20_per_day=np.array([0.6, np.nan])))
+    assert np.isnan(point.do_mg_l).tolist() == np.isnan(point.distance_km).tolist() == [False, True]
+    assert point.kind.tolist() == ["within a reach", "not known, a number is missing"]
+
+
 def test_arrays_of_different_lengths_in_a_river_are_refused():
     uneven = with_reach(plan(head=Water(3.0, np.full(3, 8.0), 19.0)), 0, velocity_m_s=np.full(4, 0.3))
     with pytest.raises(OutOfRangeError, match=r"arrays in a river must all have one shape \(n,\)"):
