@@ -1,0 +1,102 @@
+"""What follows from many readings at once: saturation, deficit and how each compares with the predicted sag.
+
+The on-site check computes the same for one reading; here calc is called once over arrays, for tables and the dataset.
+"""
+
+import math
+from dataclasses import dataclass
+from datetime import timedelta
+
+import numpy as np
+
+from calc.oxygen import salinity_psu, saturation_mg_l
+
+_SATURATION_RANGE_C = (0, 40)
+_PRESSURE_RANGE_MMHG = (380, 836)
+_CONDUCTANCE_RANGE_US_CM = (0, 59000)
+
+
+@dataclass(frozen=True)
+class Derived:
+    """What follows from one reading; None where it can't be told. difference_mg_l is measured less predicted."""
+
+    distance_km: float | None
+    saturation_mg_l: float | None
+    percent_saturation: float | None
+    deficit_mg_l: float | None
+    travel_time_h: float | None
+    hours_late: float | None
+    predicted_do_mg_l: float | None
+    predicted_low_mg_l: float | None
+    predicted_high_mg_l: float | None
+    difference_mg_l: float | None
+
+
+def derive(survey, stations, prediction, finals):
+    """Return a Derived for each FinalReading.
+
+    stations are the rows of a plan, prediction that plan's, or None where it has none. The predicted oxygen is that at
+    the temperature measured: measured saturation less predicted deficit.
+    """
+    places = {row["code"]: row.get("distance_km") for row in stations}
+    expected = {code: _at(prediction, place) for code, place in places.items()}
+    saturation = _saturations(finals)
+    return [
+        _one(survey, final, places.get(final.station_code), expected.get(final.station_code), float(value))
+        for final, value in zip(finals, saturation, strict=True)
+    ]
+
+
+def _at(prediction, distance_km):
+    return None if prediction is None or distance_km is None else prediction.at(distance_km)
+
+
+def _saturations(finals):
+    """Return each reading's saturation, NaN where a value is missing or outside the equations. [mg/L]"""
+    temperature = _within([final.water_temp_c for final in finals], *_SATURATION_RANGE_C)
+    pressure = _within([final.pressure_mmhg for final in finals], *_PRESSURE_RANGE_MMHG)
+    # Without a conductance the water is taken for fresh; one beyond the equation leaves saturation unknown.
+    conductance = [0.0 if final.conductance_us_cm is None else final.conductance_us_cm for final in finals]
+    salinity = _within(salinity_psu(_within(conductance, *_CONDUCTANCE_RANGE_US_CM)), 0, 40)
+    return saturation_mg_l(temperature, pressure, salinity)
+
+
+def _within(values, low, high):
+    numbers = np.array([np.nan if value is None else value for value in values], dtype=float)
+    return np.where((numbers >= low) & (numbers <= high), numbers, np.nan)
+
+
+def _one(survey, final, distance_km, expected, saturation):
+    saturation = saturation if math.isfinite(saturation) else None
+    oxygen = final.do_mg_l
+    both = saturation is not None and oxygen is not None
+    predicted, low, high = _predicted(expected, saturation)
+    travel = expected.travel_time_h if expected is not None and distance_km >= 0 else None
+    return Derived(
+        distance_km=distance_km,
+        saturation_mg_l=saturation,
+        percent_saturation=100 * oxygen / saturation if both else None,
+        deficit_mg_l=saturation - oxygen if both else None,
+        travel_time_h=travel,
+        hours_late=_hours_late(survey, final, travel),
+        predicted_do_mg_l=predicted,
+        predicted_low_mg_l=low,
+        predicted_high_mg_l=high,
+        difference_mg_l=None if predicted is None or oxygen is None else oxygen - predicted,
+    )
+
+
+def _predicted(expected, saturation):
+    """Return prediction and band moved to the temperature measured, never below zero. [mg/L]"""
+    if expected is None or saturation is None or not math.isfinite(expected.do_mg_l):
+        return None, None, None
+    shift = saturation - expected.deficit_mg_l - expected.do_mg_l
+    return tuple(max(0.0, value + shift) for value in (expected.do_mg_l, expected.low_mg_l, expected.high_mg_l))
+
+
+def _hours_late(survey, final, travel_time_h):
+    """Return how long after the released parcel the reading was taken, negative before it. [h]"""
+    if travel_time_h is None or survey.sampling != "same_parcel" or survey.release_at is None:
+        return None
+    arrival = survey.release_at + timedelta(hours=travel_time_h)
+    return (final.taken_at - arrival).total_seconds() / 3600
