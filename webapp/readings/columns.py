@@ -16,7 +16,7 @@ POSITIONS = {
     "right": "Right, looking downstream",
 }
 PERCENT_BASES = {"local": "the air pressure here", "760": "760 mmHg"}
-VELOCITY_METHODS = {"": "", "meter": "current meter", "float": "surface float"}
+VELOCITY_METHODS = {"": "Not noted", "meter": "current meter", "float": "surface float"}
 
 READINGS = Table(
     "readings",

@@ -58,7 +58,9 @@ class PlacedReading:
 
 
 def final(reading):
-    """Return the reading with every correction applied in the order it was made."""
+    """Return the reading with every correction applied in the order it was made; a FinalReading as it is."""
+    if isinstance(reading, FinalReading):
+        return reading
     raw = {name: getattr(reading, name) for name in NUMBERS}
     numbers, set_aside, reason = dict(raw), False, ""
     for event in reading.events:
