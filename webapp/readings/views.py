@@ -1,8 +1,132 @@
-from flask import Blueprint
+"""The reading form and the on-site check."""
+
+from datetime import UTC, datetime
+
+from flask import Blueprint, redirect, request, url_for
+from flask_login import current_user, login_required
+
+from webapp.charts import sag_chart
+from webapp.db import get_db
+from webapp.display import Show
+from webapp.errors import Conflict
+from webapp.fieldsheet import service as fieldsheet
+from webapp.htmx import page_or_part, wants_fragment
+from webapp.people.access import needs
+from webapp.plan import queries as plan_queries
+from webapp.readings import columns, forms, queries, service
+from webapp.readings.day import Day
+from webapp.readings.surroundings import where
+from webapp.surveys import queries as survey_queries
 
 bp = Blueprint("readings", __name__)
+OPTIONS = {
+    "pressure_sources": columns.PRESSURE_SOURCES,
+    "pressure_units": columns.PRESSURE_UNITS,
+    "positions": columns.POSITIONS,
+    "percent_bases": columns.PERCENT_BASES,
+    "velocity_methods": columns.VELOCITY_METHODS,
+}
 
 
-@bp.get("/surveys/<survey_id>/readings/new")
-def placeholder(survey_id):
-    return "being built"
+@bp.get("/surveys/<survey_id>/stations/<code>/reading")
+@needs("log")
+def new(survey_id, code):
+    """Show a fresh form for a reading at a station."""
+    db = get_db()
+    survey = survey_queries.get_survey(db, survey_id, current_user.id)
+    queries.get_station(db, survey_id, code)
+    show = Show.of(survey)
+    form = forms.fresh_form(show, queries.last_by(db, survey_id, current_user.id), datetime.now(UTC))
+    return _form_page(survey, show, code, plan_queries.current_plan(db, survey_id), form, fresh=True)
+
+
+@bp.post("/surveys/<survey_id>/stations/<code>/reading")
+@needs("log")
+def save(survey_id, code):
+    """Store a reading and show its check, or the form again: what can't be, or what is odd and was not asked about."""
+    db = get_db()
+    survey = survey_queries.get_survey(db, survey_id, current_user.id)
+    queries.get_station(db, survey_id, code)
+    day = Day(db, survey)
+    form = request.form.to_dict()
+    show = forms.show_of_form(form, Show.of(survey))
+    reading, errors = forms.parse_reading(form, show, code, day.now)
+    asks = day.asks(reading)
+    if taken := forms.with_suggestion(form, asks, show):
+        form = taken
+        reading, errors = forms.parse_reading(form, show, code, day.now)
+        asks = day.asks(reading)
+    if errors:
+        return _form_page(survey, show, code, day.plan, form, 422, errors, [one for one in asks if one.suggestion])
+    if open_asks := forms.unanswered(asks, form):
+        return _form_page(survey, show, code, day.plan, form, 422, {}, open_asks)
+    try:
+        stored = service.add_reading(db, survey, reading.keeping(asks), current_user.id, day.plan, day.now)
+    except Conflict as conflict:
+        return _form_page(survey, show, code, day.plan, form, 409, conflict=conflict.message)
+    return _stored(day, stored)
+
+
+@bp.get("/surveys/<survey_id>/readings/<reading_id>/check")
+@login_required
+def check(survey_id, reading_id):
+    """Show the check of a stored reading."""
+    db = get_db()
+    survey = survey_queries.get_survey(db, survey_id, current_user.id)
+    return _check_page(Day(db, survey), queries.get_reading(db, survey_id, reading_id))
+
+
+def _stored(day, reading):
+    """Answer with the check and the id that is now stored: the phone lets go of a reading only for this header."""
+    address = url_for(".check", survey_id=day.survey.id, reading_id=reading.id)
+    if wants_fragment():
+        day.holds(reading)
+        response = _check_page(day, reading)
+        response.headers["HX-Push-Url"] = address
+    else:
+        response = redirect(address, code=303)
+    response.headers["X-Stored-Id"] = reading.id
+    return response
+
+
+def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(), conflict="", fresh=False):
+    kept, keep = forms.answers(asks, form)
+    station, place = where(plan, code)
+    return page_or_part(
+        "readings/new.html",
+        "readings/_form.html",
+        status,
+        survey=survey,
+        show=show,
+        tab="fieldsheet",
+        code=code,
+        station=station,
+        place=place,
+        form=form,
+        errors=errors or {},
+        asks=[(one, forms.suggestion_words(one, show)) for one in asks],
+        kept=kept,
+        keep=keep,
+        conflict=conflict,
+        fresh=fresh,
+        unfolded=forms.unfolded(form, errors or {}, asks),
+        **OPTIONS,
+    )
+
+
+def _check_page(day, reading):
+    survey, show = day.survey, Show.of(day.survey)
+    check = day.check(reading)
+    prediction = check.around.prediction
+    return page_or_part(
+        "readings/check.html",
+        "readings/_check.html",
+        survey=survey,
+        show=show,
+        tab="fieldsheet",
+        reading=reading,
+        check=check,
+        chart=prediction and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l),
+        next=fieldsheet.next_stop(survey, day.plan, day.readings),
+        now=day.now,
+    )

@@ -1,0 +1,54 @@
+// The reading form: an id made on this phone for each fresh form, and where the phone is, if the crew asks for it.
+function newId() {
+  if (crypto.randomUUID) return crypto.randomUUID();
+  // A plain-HTTP hotspot has no randomUUID, but it has random numbers.
+  const bytes = crypto.getRandomValues(new Uint8Array(16));
+  bytes[6] = (bytes[6] & 0x0f) | 0x40;
+  bytes[8] = (bytes[8] & 0x3f) | 0x80;
+  const hex = Array.from(bytes, (byte) => byte.toString(16).padStart(2, "0")).join("");
+  return hex.replace(/^(.{8})(.{4})(.{4})(.{4})(.{12})$/, "$1-$2-$3-$4-$5");
+}
+
+// A page that comes from a cache carries the id of a reading that may be stored by now.
+function freshId() {
+  const form = document.querySelector("form[data-fresh]");
+  if (!form) return;
+  form.elements.submission_id.value = newId();
+  form.removeAttribute("data-fresh");
+}
+
+const TROUBLES = {
+  1: "This phone does not give its position to this page. Go on without it.",
+  2: "This phone does not know where it is. Go on without it.",
+  3: "No position within half a minute. Go on without it, or try again.",
+};
+
+function notePosition(button) {
+  const { latitude, longitude, position_radius_m: radius } = button.form.elements;
+  const status = button.closest("[data-position]").querySelector("[data-position-status]");
+  status.textContent = "Looking for the position. You can go on meanwhile.";
+  navigator.geolocation.getCurrentPosition(
+    ({ coords }) => {
+      latitude.value = coords.latitude.toFixed(6);
+      longitude.value = coords.longitude.toFixed(6);
+      radius.value = Math.ceil(coords.accuracy);
+      const rough = coords.accuracy > 100 ? " That is rough: leave the note on where you are." : "";
+      status.textContent = `Position noted, within ${radius.value} m.${rough}`;
+    },
+    (trouble) => { status.textContent = TROUBLES[trouble.code] ?? TROUBLES[2]; },
+    { enableHighAccuracy: true, timeout: 30000, maximumAge: 10000 },
+  );
+}
+
+function showButtons() {
+  const here = window.isSecureContext && "geolocation" in navigator;
+  for (const button of document.querySelectorAll("[data-position-button]")) button.hidden = !here;
+}
+
+document.addEventListener("click", (event) => {
+  const button = event.target.closest("[data-position-button]");
+  if (button) notePosition(button);
+});
+document.addEventListener("htmx:afterSettle", showButtons);
+freshId();
+showButtons();

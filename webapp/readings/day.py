@@ -1,0 +1,44 @@
+"""What a survey knows at one moment: its plan, settings and readings, each fetched once for the page or the save."""
+
+from datetime import UTC, datetime
+
+from webapp.plan.queries import current_plan
+from webapp.readings.asking import findings_on_new, thresholds, to_ask
+from webapp.readings.check import on_site_check
+from webapp.readings.layers import final, placed
+from webapp.readings.queries import readings_of
+from webapp.readings.surroundings import look_around
+from webapp.surveys.queries import current_settings
+
+
+class Day:
+    """A survey now; readings are FinalReadings, and grow by what is stored meanwhile."""
+
+    def __init__(self, db, survey):
+        self.survey = survey
+        self.now = datetime.now(UTC)
+        self.plan = current_plan(db, survey.id)
+        self.settings = thresholds(current_settings(db, survey.id))
+        self.readings = [final(one) for one in readings_of(db, survey.id)]
+
+    def asks(self, new):
+        """Return the findings to ask about before this reading is stored: none for one that is stored already."""
+        if new is None or any(one.id == new.id for one in self.readings):
+            return []
+        around = look_around(
+            self.survey, self.plan, new.station_code, new.taken_at, self.readings, replicate=new.replicate
+        )
+        return to_ask(findings_on_new(self.survey, self.settings, new, around, self.now), new, self.now)
+
+    def holds(self, reading):
+        """Count a reading that was stored after the others were fetched."""
+        if all(one.id != reading.id for one in self.readings):
+            self.readings.append(final(reading))
+
+    def check(self, reading):
+        """Return the OnSiteCheck of a stored reading."""
+        return on_site_check(self.survey, self.plan, self.settings, reading, self.readings)
+
+    def placed(self):
+        """Return the readings that a chart can draw."""
+        return placed(self.readings, self.plan.tables["stations"] if self.plan else [])

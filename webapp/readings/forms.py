@@ -1,0 +1,235 @@
+"""The reading form: what a crew typed, into a NewReading or a message beside each field."""
+
+import json
+import uuid
+from dataclasses import replace
+from datetime import timedelta
+
+from webapp.forms import Fields
+from webapp.readings.columns import (
+    PERCENT_BASES,
+    POSITIONS,
+    PRESSURE_SOURCES,
+    PRESSURE_UNITS,
+    READINGS,
+    VELOCITY_METHODS,
+)
+from webapp.readings.new import NewReading
+
+FURTHEST_AHEAD = timedelta(minutes=10)
+# Beyond what can be measured, but a slip that is worth an offer: °F in the °C box, percent in the mg/L box.
+WIDE = {"do_mg_l": 400.0, "water_temp_c": 113.0}
+# What the form asks for under "More about this reading".
+MORE = (
+    "do_percent",
+    "percent_basis",
+    "conductance_us_cm",
+    "pressure",
+    "pressure_unit",
+    "pressure_source",
+    "position",
+    "sensor_depth_m",
+    "velocity_m_s",
+    "velocity_method",
+    "float_distance",
+    "float_time_s",
+    "meter",
+    "replicate",
+    "note",
+    "latitude",
+    "longitude",
+    "position_radius_m",
+)
+WEATHER = "a weather value"
+# The names that calc.quality uses for two of the fields.
+FIELD_OF = {"do_percent_meter": "do_percent", "pressure_value": "pressure"}
+
+
+def parse_reading(source, show, station_code, now):
+    """Return (NewReading, errors); the reading is None where the errors leave no numbers to check."""
+    fields = Fields(source, show)
+    new = NewReading(
+        id=fields.uuid("submission_id"),
+        station_code=station_code,
+        taken_at=_time(fields, now),
+        do_mg_l=_measured(fields, "do_mg_l", "oxygen", required=not fields.source.get("do_percent")),
+        water_temp_c=_measured(fields, "water_temp_c", "water temperature", required=True),
+        **_velocity(fields),
+        **{name: _measured(fields, name, label) for name, label in _PLAIN},
+        **_pressure(fields),
+        **_words(fields),
+        entered=fields.entered,
+    )
+    if new.sensor_depth_m is not None and new.depth_m is not None and new.sensor_depth_m > new.depth_m:
+        fields.refuse("sensor_depth_m", "The sensor would be under the bed. Check this and the depth of the water.")
+    usable = set(fields.errors) <= set(WIDE) and None not in (new.water_temp_c, new.do_mg_l or new.do_percent)
+    return (new if usable else None), fields.errors
+
+
+def fresh_form(show, last, now):
+    """Return the texts of a fresh form: the time, and what a crew sets once a day, as in their last reading."""
+    pressure = (last.entered.get("pressure") or {}) if last else {}
+    return {
+        "submission_id": str(uuid.uuid4()),
+        "taken_at": show.typed_time(now),
+        "units": show.unit_system,
+        "meter": last.meter if last else "",
+        "pressure_source": last.pressure_source if last else "standard",
+        "pressure_unit": pressure.get("unit") or ("[in_i'Hg]" if show.unit_system == "us" else "mm[Hg]"),
+    }
+
+
+def show_of_form(source, show):
+    """Return the Show of the units that the form was filled in with, should the survey's have changed meanwhile."""
+    return replace(show, unit_system=source["units"]) if source.get("units") in ("si", "us") else show
+
+
+_PLAIN = (
+    ("depth_m", "depth of the water"),
+    ("do_percent", "saturation the meter shows"),
+    ("conductance_us_cm", "specific conductance"),
+    ("sensor_depth_m", "depth of the sensor"),
+    ("latitude", "latitude"),
+    ("longitude", "longitude"),
+    ("position_radius_m", "radius of the position"),
+)
+
+
+def _measured(fields, name, label, required=False):
+    """Return a number within its column's limits; one of WIDE beyond them comes back with its message set."""
+    column = READINGS.column(name)
+    high = WIDE.get(name, column.high)
+    value = fields.number(name, label, column.low, high, column.quantity, required)
+    if value is not None and value > column.high:
+        fields.refuse(name, _TOO_HIGH[name])
+    return value
+
+
+_TOO_HIGH = {
+    "do_mg_l": "That is too much for mg/L, and looks like percent. Put it under “Saturation the meter shows”, "
+    "and leave this box empty if the meter can't show mg/L.",
+    "water_temp_c": "No river is that warm. Check the unit that the meter shows.",
+}
+
+
+def _time(fields, now):
+    taken_at = fields.local_time("taken_at", "time of the reading")
+    if taken_at is not None and taken_at > now + FURTHEST_AHEAD:
+        return fields.refuse("taken_at", "That time is still to come. Check the date, the hour and this phone's clock.")
+    return taken_at
+
+
+def _pressure(fields):
+    source = fields.choice("pressure_source", "source of the air pressure", PRESSURE_SOURCES, "standard")
+    unit = fields.choice("pressure_unit", "unit of the air pressure", PRESSURE_UNITS, "mm[Hg]")
+    column = READINGS.column("pressure")
+    value = fields.number("pressure", "air pressure", column.low, column.high, "pressure", False, unit or "mm[Hg]")
+    if value is not None and source == "standard":
+        fields.refuse("pressure_source", "Say where the air pressure comes from: a weather report's is converted.")
+    return {"pressure_mmhg": value, "pressure_source": source or "standard"}
+
+
+def _velocity(fields):
+    """Return the velocity of a current meter, or that of a float at the surface, which is not yet the mean."""
+    method = fields.choice("velocity_method", "way the velocity was measured", VELOCITY_METHODS, "")
+    column = READINGS.column("velocity_m_s")
+    velocity = fields.number("velocity_m_s", "velocity", column.low, column.high, "velocity", False)
+    run_m = fields.number("float_distance", "distance of the float", 0.1, 1000, "depth", False)
+    run_s = fields.number("float_time_s", "time of the float", 1, 3600, "plain", False)
+    if run_m is not None or run_s is not None:
+        if velocity is not None:
+            fields.refuse("velocity_m_s", "Enter the velocity, or the float's time and distance, not both.")
+        if run_m is None:
+            fields.refuse("float_distance", "Enter how far the float went.")
+        if run_s is None:
+            fields.refuse("float_time_s", "Enter how long the float took.")
+        if not fields.errors:
+            velocity, method = run_m / run_s, "float"
+    if velocity is None:
+        return {"velocity_method": ""}
+    if method == "float":
+        if not 0 <= velocity <= column.high:
+            fields.refuse("velocity_m_s", "A float's velocity lies between 0 and 6 m/s (20 ft/s); check it.")
+        return {"surface_velocity_m_s": velocity, "velocity_method": method}
+    if not method:
+        fields.refuse("velocity_method", "Say how the velocity was measured: a float runs faster than the water.")
+    return {"velocity_m_s": velocity, "velocity_method": method or ""}
+
+
+def _words(fields):
+    return {
+        "percent_basis": fields.choice("percent_basis", "basis of the percent", PERCENT_BASES, "local"),
+        "position": fields.choice("position", "position across the river", POSITIONS, ""),
+        "meter": fields.text("meter", "meter's name", READINGS.column("meter").longest, required=False),
+        "replicate": fields.ticked("replicate"),
+        "note": fields.text("note", "note", READINGS.column("note").longest, required=False),
+    }
+
+
+def unanswered(findings, source):
+    """Return the findings that the crew has not yet answered with "keep it"."""
+    kept = set(_marks(source, "kept")) | set(_marks(source, "keep"))
+    return [one for one in findings if _mark(one, source) not in kept]
+
+
+def answers(findings, source):
+    """Return the marks of the findings kept so far, and those that "keep it" adds, as the form carries them."""
+    kept = sorted(set(_marks(source, "kept")) | set(_marks(source, "keep")))
+    return json.dumps(kept), json.dumps([_mark(one, source) for one in findings])
+
+
+def _marks(source, name):
+    try:
+        marks = json.loads(source.get(name) or "[]")
+    except (ValueError, RecursionError):
+        return []
+    return [mark for mark in marks if isinstance(mark, str)] if isinstance(marks, list) else []
+
+
+def _mark(finding, source):
+    """Return what identifies a finding that was asked about: its name and the text it was about."""
+    return f"{finding.name}={source.get(FIELD_OF.get(finding.field, finding.field)) or ''}"
+
+
+def unfolded(form, errors, findings):
+    """Return whether something under "More about this reading" needs to be seen."""
+    touched = set(errors) | {FIELD_OF.get(one.field, one.field) for one in findings}
+    return bool(touched & set(MORE)) or any(form.get(name) for name in ("do_percent", "note", "velocity_m_s"))
+
+
+def with_suggestion(source, findings, show):
+    """Return the form's texts with the suggestion that the crew took, None where they took none."""
+    wanted = source.get("use")
+    taken = next((one for one in findings if one.name == wanted and one.suggestion), None)
+    return {**source, **suggested_texts(taken, show)} if taken else None
+
+
+def suggested_texts(finding, show):
+    """Return what a finding suggests, as somebody would type it into the form."""
+    texts = {}
+    for key, value in finding.suggestion.items():
+        name = FIELD_OF.get(key, key)
+        if key in ("pressure_source", "pressure_unit"):
+            texts[name] = value
+        elif key == "pressure_value":
+            texts[name] = f"{value:.10g}"
+        else:
+            texts[name] = show.typed(READINGS.column(name).quantity, value)
+    return texts
+
+
+def suggestion_words(finding, show):
+    """Return what a finding suggests as a button says it; nothing where it suggests nothing."""
+    if not finding.suggestion:
+        return ""
+    words = []
+    for name, text in suggested_texts(finding, show).items():
+        if name == "pressure_source":
+            words.append(f"it as {WEATHER}")
+        elif name == "pressure_unit":
+            words.append(PRESSURE_UNITS.get(text, text))
+        elif name == "pressure":
+            words.append(text)
+        else:
+            words.append(f"{text} {show.unit_label(READINGS.column(name).quantity)}")
+    return " ".join(words) if "pressure_unit" in finding.suggestion else " and ".join(words)
