@@ -4,7 +4,7 @@ from dataclasses import dataclass
 
 TEXT_SIZE = 13
 # Letters of ordinary sans-serif faces are narrower than this share of the text's size, on average.
-_LETTER, _BOLD_LETTER = 0.55, 0.7
+_LETTER, _BOLD_LETTER = 0.55, 0.78
 # What the search for places may cost before it makes do with fewer.
 _MOST_TRIES = 1500
 _ASCENT, _DESCENT = 0.8, 0.25

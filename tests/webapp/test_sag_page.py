@@ -123,10 +123,10 @@ def test_stations_stand_with_reading_prediction_and_difference(sag_text, read):
     assert f"/readings/{reading.id}/check" in text
     card = text.split("<strong>D5</strong>")[1].split("</li>")[0]
     expected = saturation_mg_l(21.0, standard_pressure_mmhg(210)) - predict_plan(PLAN, 210.0).at(12.4).deficit_mg_l
-    assert f"{expected:.2f} mg/L at the temperature read" in card
-    assert f"\u2212{expected - 3.0:.1f} mg/L" in card
+    assert f"predicted {expected:.2f} (" in card
+    assert f"difference <strong>\u2212{expected - 3.0:.1f}</strong>" in card
     untouched = text.split("<strong>D8</strong>")[1].split("</li>")[0]
-    assert "not yet" in untouched
+    assert "Not read yet" in untouched
 
 
 def test_dropped_station_without_readings_is_left_out(db, survey, people, sag_text):

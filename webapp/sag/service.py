@@ -3,8 +3,12 @@
 from dataclasses import dataclass
 
 from webapp.plan.prediction import prediction_of
-from webapp.readings.day import Day
-from webapp.readings.layers import final
+from webapp.plan.queries import current_plan
+from webapp.readings.asking import thresholds
+from webapp.readings.check import on_site_check
+from webapp.readings.layers import final, placed
+from webapp.readings.queries import readings_of
+from webapp.surveys.queries import current_settings
 
 
 @dataclass(frozen=True)
@@ -46,38 +50,47 @@ class Sag:
 
 def sag_of(db, survey):
     """Return the Sag of a survey as it stands."""
-    day = Day(db, survey)
-    prediction = prediction_of(survey, day.plan)
-    rows = sorted(day.plan.tables.get("stations") or [], key=lambda row: row["distance_km"]) if day.plan else []
-    used = _used_by_code(day.readings)
-    lines = tuple(_line(row, prediction, day, used.get(row["code"], [])) for row in rows)
+    plan = current_plan(db, survey.id)
+    settings = thresholds(current_settings(db, survey.id))
+    readings = readings_of(db, survey.id)
+    finals = [final(reading) for reading in readings]
+    prediction = prediction_of(survey, plan)
+
+    def check(reading):
+        return on_site_check(survey, plan, settings, reading, finals)
+
+    stations = plan.tables.get("stations") or [] if plan else []
+    used = _used_by_code(readings, finals)
+    lines = tuple(
+        _line(row, prediction, check, used.get(row["code"], []))
+        for row in sorted(stations, key=lambda row: row["distance_km"])
+    )
     shown = tuple(line for line in lines if line.count or not line.dropped)
-    return Sag(day.plan, prediction, day.placed(), shown, _lowest(survey, day, used, lines))
+    return Sag(plan, prediction, placed(finals, stations), shown, _lowest(survey, check, used, lines))
 
 
-def _used_by_code(readings):
-    """Return the readings that count and have oxygen, by station, in the order they were taken."""
+def _used_by_code(readings, finals):
+    """Return (oxygen, reading) of those that count, by station, in the order they were taken."""
     used = {}
-    for reading in readings:
-        now = final(reading)
+    for reading, now in zip(readings, finals, strict=True):
         if not now.set_aside and now.do_mg_l is not None:
             used.setdefault(now.station_code, []).append((now.do_mg_l, reading))
     return used
 
 
-def _line(row, prediction, day, used):
+def _line(row, prediction, check, used):
     return StationLine(
         code=row["code"],
         distance_km=row["distance_km"],
         access=row.get("access") or "",
         dropped=row.get("state") == "dropped",
         expected=prediction.at(row["distance_km"]) if prediction.ready else None,
-        check=day.check(used[-1][1]) if used else None,
+        check=check(used[-1][1]) if used else None,
         count=len(used),
     )
 
 
-def _lowest(survey, day, used, lines):
+def _lowest(survey, check, used, lines):
     """Return the Lowest below the outfall, or None where nothing was read there yet."""
     read = [line for line in lines if line.count and line.distance_km >= 0]
     if not read:
@@ -87,4 +100,4 @@ def _lowest(survey, day, used, lines):
     ends = {read[0].code: "first", read[-1].code: "last"} if len(read) > 1 else {line.code: "only"}
     criterion = survey.do_criterion_mg_l
     below = None if criterion is None else do < criterion
-    return Lowest(day.check(reading), line.distance_km, ends.get(line.code, ""), below)
+    return Lowest(check(reading), line.distance_km, ends.get(line.code, ""), below)
