@@ -62,7 +62,9 @@ def checked(db, survey, text):
         latest = datetime.now(UTC) + FURTHEST_AHEAD
         for number, row, typed in zip(file.numbers, file.rows, file.cells, strict=True):
             errors += _impossible(number, row, typed, codes, latest)
-    return Preview(file, tuple(sorted(errors, key=lambda cell: cell.row)))
+    order = {column.label: at for at, column in enumerate(READINGS.columns)}
+    errors.sort(key=lambda cell: (cell.row, order.get(cell.column_label, len(order))))
+    return Preview(file, tuple(errors))
 
 
 def preview(db, survey, text):

@@ -35,6 +35,11 @@ class NumberLine:
     final: float | None
     corrected: bool
 
+    @property
+    def missing(self):
+        """Return whether there was never such a number."""
+        return not (self.typed or self.corrected) and self.raw is None
+
 
 def rows_of(survey, plan, readings):
     """Return a Row for each reading; plan is the newest PlanVersion or None."""
