@@ -131,7 +131,8 @@ def _with_second_reach(draw, truth, change_km, scatter):
     depth = reach.depth_m * np.exp(draw.normal(0, 0.35))
     velocity = reach.velocity_m_s * np.exp(draw.normal(0, 0.3))
     ka = covar_per_day(velocity, depth) * scatter
-    below = replace(reach, from_km=change_km, velocity_m_s=velocity, depth_m=depth, ka20_per_day=ka)
+    ks = reach.ks20_per_day * reach.depth_m / depth
+    below = replace(reach, from_km=change_km, velocity_m_s=velocity, depth_m=depth, ka20_per_day=ka, ks20_per_day=ks)
     return replace(truth, reaches=(replace(reach, to_km=change_km), below))
 
 
