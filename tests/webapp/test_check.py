@@ -5,6 +5,7 @@ import pytest
 
 from calc.settings import Settings
 from tests.webapp.plans import put_plan
+from webapp.models import ReadingEvent
 from webapp.plan.prediction import prediction_of
 from webapp.readings import queries
 from webapp.readings.check import on_site_check
@@ -179,3 +180,43 @@ def test_survey_without_plan_still_checks_saturation(db, survey, store):
 def test_cold_water_is_told_only_where_it_needs_immersion_clothing(store, check):
     assert check(store("D1", 9.0, water_temp_c=18.0)).hazards == ()
     assert [one.name for one in check(store("D2", 9.0, water_temp_c=9.0)).hazards] == ["cold_water"]
+
+
+def test_finding_that_nobody_was_asked_about_is_told_and_a_kept_one_is_not_told_again(store, check):
+    odd = check(store("D1", 11.5))
+    assert "supersaturation" in {one.name for one in odd.unasked}
+    kept = check(store("D2", 11.5, kept_findings=({"name": "supersaturation", "says": "127 % saturation"},)))
+    assert "supersaturation" not in {one.name for one in kept.unasked}
+    assert kept.kept == ({"name": "supersaturation", "says": "127 % saturation"},)
+
+
+def test_reading_without_oxygen_has_no_deficit_and_says_so(store, check):
+    seen = check(store("D1", None, entered={}))
+    assert (seen.deficit_mg_l, seen.sentence) == (None, "No oxygen was read here.")
+
+
+def test_set_aside_neighbour_does_not_count(db, people, store, check):
+    store("D1", 2.0)
+    event = ReadingEvent(reading_id="D1-2.0-2.0", kind="set_aside", reason="air", made_by_id=people["office"].id)
+    db.add(event)
+    db.commit()
+    db.expire_all()
+    assert check(store("D2", 6.0)).around.upstream is None
+
+
+def test_corrected_reading_is_checked_as_it_stands(db, people, store, check):
+    reading = store("D1", 7.0)
+    event = ReadingEvent(
+        reading_id=reading.id,
+        kind="corrected",
+        field="do_mg_l",
+        new_value=6.0,
+        reason="typo",
+        made_by_id=people["office"].id,
+    )
+    db.add(event)
+    db.commit()
+    db.expire_all()
+    seen = check(reading)
+    assert (seen.reading.do_mg_l, seen.reading.raw["do_mg_l"]) == (6.0, 7.0)
+    assert seen.deficit_mg_l == pytest.approx(seen.saturation_mg_l - 6.0)

@@ -309,6 +309,14 @@ def test_check_of_a_stored_reading_is_shown_again(crew, address, survey):
         assert words in answer.text
 
 
+def test_position_of_the_phone_is_stored_with_its_radius_and_survives_a_bad_field(crew, address, stored):
+    where = {"latitude": "48.123456", "longitude": "-16.5", "position_radius_m": "12"}
+    again = crew.post(address, a_form(**where, do_mg_l="much"))
+    assert value_of(again, "longitude") == "-16.5" and "Position noted, within 12 m." in again.text
+    crew.post(address, a_form(**where))
+    assert (stored()[0].latitude, stored()[0].longitude, stored()[0].position_radius_m) == (48.123456, -16.5, 12.0)
+
+
 def test_reading_without_a_complete_plan_says_what_is_missing(db, crew, survey, people, stored):
     put_plan(db, survey, people["lead"], tables={"reaches": [], "waters": [], "weirs": [], "access": [], "basis": [{}],
              "stations": [{"code": "D2", "distance_km": 3.4}]})  # fmt: skip

@@ -29,7 +29,7 @@ def save(db, survey, people, browser_as):
 
 
 @settings(
-    max_examples=100, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture], derandomize=True
+    max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture], derandomize=True
 )
 @given(
     odd=st.dictionaries(st.sampled_from(FIELDS), TEXTS, max_size=5),

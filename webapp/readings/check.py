@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from calc.errors import OutOfRangeError
 from calc.findings import Finding
 from calc.oxygen import salinity_psu, saturation_mg_l
-from webapp.readings.asking import findings_on_stored
+from webapp.readings.asking import OF_THE_RUN, findings_on_stored
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.meaning import ABOVE, FALLING, LOWEST, RISING, Facts, afterwards, sentence
 from webapp.readings.surroundings import Surroundings, distances_of, look_around
@@ -49,6 +49,12 @@ class OnSiteCheck:
     findings: tuple[Finding, ...]
     hazards: tuple[Finding, ...]
     kept: tuple[dict, ...]
+
+    @property
+    def unasked(self):
+        """Return the findings that nobody was asked about: of an import, or of what was read since."""
+        asked = {one["name"] for one in self.kept} | OF_THE_RUN
+        return tuple(one for one in self.findings if one.name not in asked)
 
 
 def on_site_check(survey, plan_version, settings, reading, readings):
