@@ -124,7 +124,7 @@ class Show:
 
 def plain_digits(value):
     """Return a number to ten digits as people type it, never as 8e-05."""
-    return format(Decimal(f"{round(float(value), 10):.10g}"), "f")
+    return format(Decimal(f"{round(float(value), 10) + 0.0:.10g}"), "f")
 
 
 def hours(value):

@@ -180,3 +180,8 @@ def written_head(column, show):
         return f"{column.label} ({place_words(show)})"
     unit = "" if column.quantity in WORDS else show.unit_label(column.quantity)
     return f"{column.label} ({unit})" if unit else column.label
+
+
+def shown_head(column, show):
+    """Return the Head of a column in the unit and distance rule that the survey shows, as in its forms."""
+    return _fitting(column, column.label, None, show)

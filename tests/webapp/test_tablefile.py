@@ -142,7 +142,7 @@ def test_missing_columns_stop_and_unknown_ones_are_named_as_ignored():
 def test_a_table_without_its_names_is_told_to_bring_them():
     table = read_table("Mill weir\t3.2\t1.1\n", WEIRS, SI)
     assert table.header_errors == (
-        "Its first row must name the columns; Bankside knows here: Name, Where, Drop, Water, Shape.",
+        "Its first row must name the columns; Bankside knows here: Name, Where, Drop, Water quality, Shape.",
     )
 
 

@@ -4,7 +4,7 @@ from sqlalchemy import select
 from sqlalchemy.orm import joinedload
 
 from webapp.errors import NotFound
-from webapp.models import PlanVersion, Station
+from webapp.models import PlanVersion, Reading, Station
 
 
 def current_plan(db, survey_id):
@@ -31,3 +31,9 @@ def stations_of(db, survey_id):
     """Return every station the survey ever had, by its code."""
     stations = db.scalars(select(Station).where(Station.survey_id == survey_id).order_by(Station.code))
     return {station.code: station for station in stations}
+
+
+def codes_with_readings(db, survey_id):
+    """Return the codes of the stations at which the survey holds readings."""
+    query = select(Station.code).join(Reading, Reading.station_id == Station.id).where(Station.survey_id == survey_id)
+    return set(db.scalars(query.distinct()))
