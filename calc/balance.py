@@ -42,19 +42,19 @@ def transfer_time_d(first_per_day, second_per_day, time_d):
 
 
 def falling_root(function, low, high):
-    """Return where a falling function crosses zero, elementwise, to the last digits.
+    """Return where a falling function crosses zero, elementwise, to 1e-14 of the bracket's upper end.
 
     function maps x to (value, derivative); it is positive at low and not positive at high. Newton's method, with
     bisection wherever a step would leave the bracket.
     """
-    root = (low + high) / 2
+    root, enough = (low + high) / 2, 1e-14 * high
     for _ in range(200):
         value, derivative = function(root)
         low, high = np.where(value > 0, root, low), np.where(value > 0, high, root)
         step = root - value / np.where(derivative == 0, -SMALLEST_RATE, derivative)
         closer = np.where((step >= low) & (step <= high), step, (low + high) / 2)
         moved, root = np.abs(closer - root), closer
-        if not (moved > 1e-15 * high).any():
+        if not (moved > enough).any():
             break
     return root
 
