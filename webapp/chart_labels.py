@@ -75,14 +75,19 @@ def without_collisions(labels, gap=5):
 def beside(x, y, radius, text, frame, taken, kind=""):
     """Return a Label next to a mark, where nothing is taken and the frame holds it; None where there is no such place.
 
-    taken are Boxes. Above is tried first, then below, then the sides.
+    taken are Boxes. Above is tried first, then below, the sides, and aslant.
     """
     clear = radius + 3
+    above, below, aslant = round(y - clear - 1, 1), round(y + clear + _ASCENT * TEXT_SIZE, 1), round(0.6 * clear, 1)
     for label in (
-        Label(x, round(y - clear - 1, 1), "middle", text, kind),
-        Label(x, round(y + clear + _ASCENT * TEXT_SIZE, 1), "middle", text, kind),
+        Label(x, above, "middle", text, kind),
+        Label(x, below, "middle", text, kind),
         Label(round(x + clear, 1), round(y + 4.5, 1), "start", text, kind),
         Label(round(x - clear, 1), round(y + 4.5, 1), "end", text, kind),
+        Label(round(x - aslant, 1), round(below - 2, 1), "end", text, kind),
+        Label(round(x + aslant, 1), round(above + 2, 1), "start", text, kind),
+        Label(round(x + aslant, 1), round(below - 2, 1), "start", text, kind),
+        Label(round(x - aslant, 1), round(above + 2, 1), "end", text, kind),
     ):
         if label.box.within(frame) and not any(label.box.hits(box) for box in taken):
             return label

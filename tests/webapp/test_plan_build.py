@@ -139,3 +139,8 @@ def test_what_cannot_be_predicted_is_said_in_plain_words(tables, sentence):
     missing = " ".join(missing_of(tables))
     assert sentence in missing
     assert "_" not in missing
+
+
+def test_elevation_beyond_the_equations_is_said():
+    with pytest.raises(NotReady, match="The survey's elevation is beyond"):
+        build(PLAN, 6000.0)

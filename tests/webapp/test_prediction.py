@@ -3,13 +3,17 @@ import time
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from calc.spread import band
 from tests.webapp.plans import PLAN, put_plan
+from webapp.charts import sag_chart
 from webapp.display import Show
 from webapp.errors import NotFound
 from webapp.plan import queries
 from webapp.plan.prediction import Unready, predict_plan, prediction_of
+from webapp.plan.tables import PLAN_TABLES
 
 
 @pytest.fixture(scope="module")
@@ -107,6 +111,36 @@ def test_incomplete_plan_is_unready_with_what_it_needs():
     unready = predict_plan({}, 210.0)
     assert isinstance(unready, Unready)
     assert "Add the outfall under Waters that meet." in unready.missing
+
+
+def _cells():
+    """Every number of the plan that a form lets in, as (table, row, key, lowest, highest)."""
+    return [
+        (name, row, column.key, column.low, column.high)
+        for name, rows in PLAN.items()
+        for row in range(len(rows))
+        for column in PLAN_TABLES[name].columns
+        if column.quantity not in ("text", "choice")
+    ]
+
+
+@settings(max_examples=40, deadline=None)
+@given(
+    st.lists(st.tuples(st.sampled_from(_cells()), st.sampled_from([None, 0.0, 0.001, 0.1, 0.5, 0.9, 1.0])), max_size=4),
+    st.sampled_from([-430.0, 210.0, 6000.0]),
+)
+def test_whatever_a_form_lets_in_is_predicted_or_answered_in_words(cells, elevation_m):
+    tables = copy.deepcopy(PLAN)
+    for (name, row, key, low, high), share in cells:
+        tables[name][row][key] = None if share is None else low + share * (high - low)
+    answer = predict_plan(tables, elevation_m)
+    if answer.ready:
+        assert np.isfinite(answer.do_mg_l).all()
+        assert (answer.low_mg_l >= 0).all()
+        assert sag_chart(Show(), answer).sentence
+    else:
+        assert answer.missing
+        assert "_" not in " ".join(answer.missing)
 
 
 def test_prediction_costs_little_more_than_its_band():

@@ -6,7 +6,7 @@ from math import inf
 
 from calc.demand import hydroscience_kd_per_day
 from calc.errors import CalcError
-from calc.oxygen import standard_pressure_mmhg
+from calc.oxygen import saturation_mg_l, standard_pressure_mmhg
 from calc.reaeration import FORMULAS, WEIR_QUALITY, WEIR_SHAPE, FormulaResult, all_formulas, ka20, range_warnings
 from calc.river import Reach, River, Weir
 from calc.travel import velocity_from_flow_m_s
@@ -78,7 +78,7 @@ def build(tables, elevation_m):
     """Return what the tables of a plan describe, as Built. Raises NotReady with a sentence for each thing to do."""
     missing, notes = [], []
     basis = (tables.get("basis") or [{}])[0]
-    pressure = float(standard_pressure_mmhg(elevation_m))
+    pressure = _pressure(elevation_m)
     rows = _reach_rows(tables.get("reaches") or [], missing)
     head, inflows = read_waters(tables.get("waters") or [], basis, pressure, missing, notes)
     weirs = _weirs(tables.get("weirs") or [], missing)
@@ -94,6 +94,19 @@ def build(tables, elevation_m):
     ends_km = basis.get("settling_ends_km")
     river = River(head, reaches, inflows, weirs, pressure, inf if ends_km is None else ends_km)
     return Built(river, rates, tuple(notes))
+
+
+def _pressure(elevation_m):
+    """Return the standard air pressure at the survey's elevation. [mmHg] Raises NotReady where no equation goes."""
+    try:
+        pressure = float(standard_pressure_mmhg(elevation_m))
+        saturation_mg_l(20.0, pressure)
+    except CalcError as error:
+        sentence = (
+            "The survey's elevation is beyond what the equations for oxygen hold for; check it under About this survey."
+        )
+        raise NotReady([sentence]) from error
+    return pressure
 
 
 def _reach_rows(rows, missing):
@@ -148,7 +161,9 @@ def _all_within(rows, inflows, weirs, missing):
         for feature in features:
             if not top <= feature.distance_km <= end:
                 where = "above the first reach" if feature.distance_km < top else "below the last reach"
-                missing.append(f"{table.title}, {feature.name}: it lies {where}; correct its place or add a reach.")
+                missing.append(
+                    f"{table.title}, {feature.name or table.one}: it lies {where}; correct its place or add a reach."
+                )
 
 
 def _flows(rows, head, inflows, missing, notes):
