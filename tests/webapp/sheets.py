@@ -4,8 +4,11 @@ from datetime import UTC, datetime, timedelta
 
 from tests.webapp.plans import put_plan
 from webapp.people.access import SignedIn
+from webapp.plan.queries import current_plan
+from webapp.readings.queries import readings_of
 from webapp.review import service
 from webapp.review.forms import Correction
+from webapp.review.rows import rows_of
 
 TAKEN = datetime(2026, 8, 12, 4, 30, tzinfo=UTC)
 ROWS = (
@@ -24,15 +27,15 @@ def put_readings(db, survey, people):
     """Store the plan and ROWS in a writing session, as the crew's; return the ids by station code."""
     put_plan(db, survey, people["lead"])
     service.import_readings(db, survey, ROWS, people["crew"].id)
-    return {row.final.station_code: row.final.id for row in rows(db, survey)}
+    ids = {row.final.station_code: row.final.id for row in rows(db, survey)}
+    db.rollback()  # the session must not go on reading the database as it was now
+    return ids
 
 
 def rows(db, survey):
-    """Return the survey's readings as the table shows them."""
-    from webapp.plan.queries import current_plan
-    from webapp.readings.queries import readings_of
-    from webapp.review.rows import rows_of
-
+    """Return the survey's readings as the table shows them, as they are stored now."""
+    db.rollback()
+    db.expire_all()
     return rows_of(survey, current_plan(db, survey.id), readings_of(db, survey.id))
 
 

@@ -60,8 +60,12 @@ def _page(text):
     return 1
 
 
-def parse_correction(source, show, final):
-    """Return (Correction, {}) or (None, {field: message}); final is the reading as it stands."""
+def parse_correction(source, show, final, decided):
+    """Return (Correction, {}) or (None, {field: message}).
+
+    final is the reading as it stands after so many decisions. What it says already is refused only to somebody who
+    knew of them all: to others it may be their own correction, sent twice.
+    """
     fields = Fields(source, show)
     name = fields.choice("field", "number to correct", CORRECTABLE)
     reason = _reason(fields)
@@ -74,7 +78,7 @@ def parse_correction(source, show, final):
         value = fields.number("value", label, column.low, column.high, column.quantity)
     elif fields.text("value", "value", 100, required=False):
         fields.refuse("value", "Either enter a value, or tick that there was none.")
-    if "value" not in fields.errors and _same(value, getattr(final, name)):
+    if "value" not in fields.errors and based_on(source) == decided and _same(value, getattr(final, name)):
         fields.refuse("value", "That is what it says already.")
     return (None, fields.errors) if fields.errors else (Correction(name, value, reason), {})
 

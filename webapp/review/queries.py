@@ -8,7 +8,7 @@ from sqlalchemy.orm import joinedload, selectinload
 from webapp.models import Person, Reading, ReadingEvent, Station
 from webapp.readings.queries import get_reading
 
-__all__ = ["authors_of", "count_matching", "get_reading", "lock_reading", "page_of", "stored_ids"]
+__all__ = ["authors_of", "count_matching", "get_reading", "page_of", "stored_ids"]
 
 _MINUTE = timedelta(minutes=1)
 
@@ -41,14 +41,8 @@ def stored_ids(db, survey_id, reading_ids):
     ids = list(reading_ids)
     for start in range(0, len(ids), 500):
         query = select(Reading.id).where(Reading.survey_id == survey_id, Reading.id.in_(ids[start : start + 500]))
-        found.update(db.scalars(query))
+        found |= set(db.scalars(query))
     return found
-
-
-def lock_reading(db, survey_id, reading_id):
-    """Return the reading, held against other writers until the transaction ends. Raises NotFound."""
-    db.execute(select(Reading.id).where(Reading.id == reading_id).with_for_update())
-    return get_reading(db, survey_id, reading_id)
 
 
 def _matching(query, survey_id, filters):

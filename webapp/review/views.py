@@ -65,7 +65,7 @@ def reading(survey_id, reading_id):
 def correct(survey_id, reading_id):
     """Store a correction as a new layer."""
     db, show, row = _found(survey_id, reading_id)
-    correction, errors = forms.parse_correction(request.form, show, row.final)
+    correction, errors = forms.parse_correction(request.form, show, row.final, len(row.reading.events))
     if errors:
         return _reading(survey_id, reading_id, 422, errors)
     return _decide(service.correct, survey_id, reading_id, correction)
