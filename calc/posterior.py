@@ -10,7 +10,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from calc.beliefs import Hypotheses
+from calc.beliefs import PLAN, Hypotheses
 from calc.evidence import covariances
 from calc.plausible import unfold
 
@@ -18,7 +18,8 @@ _STEP = 1e-4
 _FREEDOM = 8
 _LONGEST_STEP = 1.5
 _FARTHEST = 6.0
-_ITERATIONS = 7
+_FIRST_ROUND, _SECOND_ROUND = 7, 5
+_GAINED = 0.02
 _NEGLIGIBLE = 7.0
 
 
@@ -80,30 +81,47 @@ class Likelihood:
 
 
 def modes(likelihood, found):
-    """Return the Modes of all hypotheses, without those of negligible probability."""
-    z = np.zeros((len(found.errors), likelihood.latents.count))
+    """Return the Modes of all hypotheses, without those of negligible probability.
+
+    The plan's own come first; the others begin where it ended, which saves them half of their steps.
+    """
+    simple = found.structure == PLAN
+    plan = _climb(likelihood, found.rows(simple), np.zeros((simple.sum(), likelihood.latents.count)), _FIRST_ROUND)
+    start = np.repeat(plan.z[[plan.log_evidence.argmax()]], (~simple).sum(), axis=0)
+    others = _climb(likelihood, found.rows(~simple), start, _SECOND_ROUND)
+    both = Modes(
+        Hypotheses(*(np.concatenate(pair) for pair in zip(_parts(plan.found), _parts(others.found), strict=True))),
+        *(np.concatenate(pair) for pair in zip(_parts(plan)[1:], _parts(others)[1:], strict=True)),
+    )
+    kept = _not_negligible(both.log_evidence, _NEGLIGIBLE)
+    return Modes(both.found.rows(kept), *(part[kept] for part in _parts(both)[1:]))
+
+
+def _parts(one):
+    return tuple(vars(one).values())
+
+
+def _climb(likelihood, found, z, steps):
+    """Return the Modes of hypotheses from latents z (h, k) on, dropping on the way those that will not matter."""
     residual, slope = likelihood.linearised(z, found)
     objective, damping = _objective(z, residual), np.full(len(z), 0.1)
-    for iteration in range(_ITERATIONS):
-        step = _step(z, residual, slope, damping)
-        tried = np.clip(z + step, -_FARTHEST, _FARTHEST)
+    for step in range(steps if len(z) else 0):
+        tried = np.clip(z + _step(z, residual, slope, damping), -_FARTHEST, _FARTHEST)
         new_residual, new_slope = likelihood.linearised(tried, found)
         new_objective = _objective(tried, new_residual)
         better = new_objective < objective
-        gained = np.where(better, objective - new_objective, 0.0)
+        gained = np.where(better, objective - new_objective, 0.0).max()
         z, objective = np.where(better[:, None], tried, z), np.where(better, new_objective, objective)
         residual = np.where(better[:, None], new_residual, residual)
         slope = np.where(better[:, None, None], new_slope, slope)
         damping = np.where(better, damping / 8, np.maximum(damping, 0.05) * 8)
-        if iteration == 3:
-            kept = _not_negligible(_evidence(likelihood, found, objective, slope))
+        if step == 1:
+            kept = _not_negligible(_evidence(likelihood, found, objective, slope), 2 * _NEGLIGIBLE)
             found, z, residual, slope = found.rows(kept), z[kept], residual[kept], slope[kept]
             objective, damping = objective[kept], damping[kept]
-        if iteration > 3 and gained.max() < 0.01:
+        if step > 0 and better.any() and gained < _GAINED:
             break
-    log_evidence = _evidence(likelihood, found, objective, slope)
-    kept = _not_negligible(log_evidence, _NEGLIGIBLE)
-    return Modes(found.rows(kept), z[kept], residual[kept], slope[kept], objective[kept], log_evidence[kept])
+    return Modes(found, z, residual, slope, objective, _evidence(likelihood, found, objective, slope))
 
 
 def _objective(z, residual):
@@ -125,8 +143,8 @@ def _evidence(likelihood, found, objective, slope):
     return found.log_prior - objective - 0.5 * size - likelihood.log_size[found.errors]
 
 
-def _not_negligible(log_evidence, margin=2 * _NEGLIGIBLE):
-    return log_evidence > log_evidence.max() - margin
+def _not_negligible(log_evidence, margin):
+    return log_evidence > log_evidence.max(initial=-np.inf) - margin
 
 
 @lru_cache(maxsize=16)
