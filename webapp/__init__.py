@@ -9,7 +9,7 @@ from flask_limiter.util import get_remote_address
 from flask_wtf.csrf import CSRFError, CSRFProtect
 from werkzeug.middleware.proxy_fix import ProxyFix
 
-from webapp import db, display, errors, look, secret
+from webapp import compress, db, display, errors, look, secret
 from webapp.config import SHIPPED, read_config
 
 csrf = CSRFProtect()
@@ -51,6 +51,7 @@ def create_app(config=None, **flask_settings):
     csrf.init_app(app)
     limiter.init_app(app)
     app.teardown_appcontext(db.close_db)
+    app.after_request(compress.compress)
     app.after_request(_add_headers)
     errors.register(app)
     app.register_error_handler(CSRFError, errors.stale_form)

@@ -1,3 +1,4 @@
+import gzip
 import hashlib
 from importlib.resources import files
 
@@ -47,3 +48,19 @@ def test_an_upload_that_is_too_large_is_told_so(browser_as):
     answer = browser_as("office").post("/surveys/new", {"name": "x" * (6 * 1024 * 1024)})
     assert answer.status_code == 413
     assert "at most 5 MB" in answer.text
+
+
+def test_a_phone_that_takes_gzip_gets_pages_and_files_compressed(app):
+    client = app.test_client()
+    for path in ("/sign-in", "/htmx.js", "/static/app.css"):
+        plain, packed = client.get(path), client.get(path, headers={"Accept-Encoding": "gzip"})
+        assert packed.headers["Content-Encoding"] == "gzip"
+        assert len(packed.data) < len(plain.data) / 2
+        assert int(packed.headers["Content-Length"]) == len(packed.data)
+    assert gzip.decompress(packed.data) == plain.data
+
+
+def test_a_browser_without_gzip_gets_them_plain(app):
+    answer = app.test_client().get("/static/app.css")
+    assert "Content-Encoding" not in answer.headers
+    assert "Accept-Encoding" in answer.headers["Vary"]
