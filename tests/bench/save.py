@@ -20,8 +20,10 @@ import uuid
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 from urllib.parse import urlencode
+from zoneinfo import ZoneInfo
 
 CLIENTS = 20
+DEMO_ZONE = ZoneInfo("Atlantic/Azores")
 GOAL_P95_MS, GOAL_RATIO = 60.0, 3.0
 FORM = {"Content-Type": "application/x-www-form-urlencoded"}
 
@@ -133,7 +135,7 @@ class Client:
 
     def save(self, number):
         """Save one reading; return its server time in ms."""
-        taken = datetime.now() - timedelta(minutes=30 + number % 7)
+        taken = datetime.now(DEMO_ZONE) - timedelta(minutes=number % 7)
         form = {
             "csrf_token": self.token,
             "submission_id": str(uuid.uuid4()),
@@ -141,8 +143,6 @@ class Client:
             "do_mg_l": f"{4.0 + (number % 9) * 0.02:.2f}",
             "water_temp_c": "20.1",
             "depth_m": "0.7",
-            "kept": "[]",
-            "keep_all": "yes",
         }
         self.connection.request("POST", self.path, urlencode(form), {**self.headers, "HX-Request": "true"})
         answer = self.connection.getresponse()
