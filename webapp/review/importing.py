@@ -14,7 +14,7 @@ from webapp.plan.queries import stations_of
 from webapp.readings.asking import findings_on_new, to_ask
 from webapp.readings.columns import READINGS
 from webapp.readings.day import Day
-from webapp.readings.layers import NUMBERS
+from webapp.readings.layers import NUMBERS, final
 from webapp.readings.new import NewReading
 from webapp.readings.service import oxygen_of, put_reading, station_pressure_of, velocity_of
 from webapp.readings.surroundings import look_around
@@ -94,8 +94,9 @@ def import_readings(db, survey, rows, by_id, entered=None):
         raise Conflict("There is no plan yet, so there are no stations to read at. Make the plan first.")
     entered = entered or [_in_si(row) for row in rows]
     new, known = _new_readings(db, survey, rows, entered, day)
-    for one in new:
-        put_reading(db, survey, one, by_id, day.plan, day.now)
+    with db.no_autoflush:  # the ids are known to be new and unlike each other: one flush for all of them
+        for one in new:
+            put_reading(db, survey, one, by_id, day.plan, day.now)
     if new:
         remember(db, survey.id, by_id, "readings imported", particulars={"added": len(new), "known": known})
     db.commit()
@@ -214,11 +215,13 @@ def _findings(survey, new, near, day):
 
 
 def _as_stored(survey, new):
-    """Return a Reading for the others to be compared with; it belongs to no session and is never stored."""
+    """Return the FinalReading it would be, for the others to be compared with; no session ever sees it."""
     numbers = {name: getattr(new, name) for name in NUMBERS}
     numbers |= {
         "do_mg_l": oxygen_of(new, survey.elevation_m),
         "pressure_mmhg": station_pressure_of(new, survey.elevation_m),
         "velocity_m_s": velocity_of(new),
     }
-    return Reading(id=new.id, taken_at=new.taken_at, station=Station(code=new.station_code), events=[], **numbers)
+    return final(
+        Reading(id=new.id, taken_at=new.taken_at, station=Station(code=new.station_code), events=[], **numbers)
+    )
