@@ -44,7 +44,8 @@ def postgres_server():
             os.chown(folder, person["user"], person["group"])
         run_as = {**person, "cwd": folder, "stdout": subprocess.DEVNULL, "stderr": subprocess.STDOUT}
         data = f"{folder}/data"
-        subprocess.run([initdb, "-D", data, "-U", "app", "-A", "trust", "--no-sync", "-E", "UTF8"], check=True, **run_as)
+        make = [initdb, "-D", data, "-U", "app", "-A", "trust", "--no-sync", "-E", "UTF8"]
+        subprocess.run(make, check=True, **run_as)
         process = subprocess.Popen(
             [server, "-D", data, "-k", folder, "-c", "listen_addresses=", "-c", "fsync=off"], **run_as
         )

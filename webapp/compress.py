@@ -17,14 +17,9 @@ QUICK, BEST = 5, 9
 def compress(response):
     """Compress the answer when that is worth it; files, which carry an entity tag, are compressed once and kept."""
     response.vary.add("Accept-Encoding")
-    if (
-        response.mimetype not in TEXTS
-        or response.status_code != 200 and response.status_code < 400
-        or "gzip" not in request.accept_encodings
-        or response.headers.get("Content-Encoding")
-        or request.method == "HEAD"
-        or "Range" in request.headers
-    ):
+    whole = response.status_code == 200 or response.status_code >= 400
+    wanted = "gzip" in request.accept_encodings and request.method != "HEAD" and "Range" not in request.headers
+    if not (whole and wanted) or response.mimetype not in TEXTS or response.headers.get("Content-Encoding"):
         return response
     response.direct_passthrough = False
     body = response.get_data()
