@@ -12,6 +12,7 @@ import numpy as np
 from calc.errors import OutOfRangeError
 from calc.oxygen import salinity_psu, saturation_mg_l
 from calc.sag import predict
+from calc.unmeasured import completed
 
 
 @dataclass(frozen=True)
@@ -43,7 +44,8 @@ class Evidence:
 
 
 def gather(plan, stations_km, do_mg_l, *, water_temp_c=None, meters=None, visits=None, used=None, bod=None, settings):
-    """Return the warmed plan and the Evidence of readings; the arguments are those of calc.fit.refine."""
+    """Return the plan completed and warmed, and the Evidence; the arguments are those of calc.fit.refine."""
+    plan = completed(plan)
     distance, do = (np.atleast_1d(np.asarray(values, dtype=float)) for values in (stations_km, do_mg_l))
     if distance.shape != do.shape or distance.ndim != 1:
         raise OutOfRangeError(f"do_mg_l must have the shape of stations_km {distance.shape}, got {do.shape}")

@@ -11,6 +11,7 @@ from calc.outlook import new_places, outlook
 
 HELD, OPEN_ABOVE, OPEN_BELOW, FLAT, NOT_YET = "held", "open above", "open below", "flat", "not yet"
 _NARROWS = 0.10
+_OUT_OF_REACH = 0.10
 
 
 @dataclass(frozen=True)
@@ -62,6 +63,8 @@ def verdict(plan, stations_km, do_mg_l, *, estimate=None, access_km=(), spread=N
     between = 1 - p_above - p_below
     missing = _missing(estimate, settings, do_half, place_half, between)
     word = _word(estimate, missing, access_km)
+    if word == OPEN_BELOW:
+        missing |= _out_of_reach(estimate, access_km)
     leave = bracket.bracketed or (word == FLAT and bracket.flat)
     disagrees = (word in (HELD, FLAT)) != leave
     return Answer(
@@ -129,6 +132,16 @@ def _open_side(estimate, missing):
     if "between" in missing and len(read) > 1:
         return "above" if estimate.p_in_gap[0] > estimate.p_in_gap[-1] else "below"
     return None
+
+
+def _out_of_reach(estimate, access_km):
+    """Return the warning that the low point may lie where the crew cannot read, if so."""
+    access = np.asarray(access_km, dtype=float)
+    reach_km = max([*access[np.isfinite(access)], estimate.stations_km[-1]])
+    chance = float(estimate.weight @ (estimate.place_km > reach_km))
+    if not len(access) or chance < _OUT_OF_REACH:
+        return {}
+    return {"reach": f"The low point may lie below your last access point ({100 * chance:.0f} % probability)."}
 
 
 def _lowest_row(estimate):

@@ -269,6 +269,21 @@ def test_arguments_of_different_length_are_refused():
         refine(PLAN, STATIONS, readings(PLAN), meters=["a", "b"])
 
 
+def test_a_tributary_that_nobody_measured_is_taken_as_an_ordinary_one():
+    nan = float("nan")
+    unknown = replace(PLAN, inflows=(*PLAN.inflows, Inflow(9.0, Water(nan, nan, nan, nan, nan))))
+    estimate = refine(unknown, STATIONS, readings(PLAN))
+    assert np.isfinite(numbers(estimate)).all()
+    assert estimate.fit.word == "fits"
+
+
+def test_a_plan_that_is_not_complete_or_not_single_is_refused():
+    with pytest.raises(OutOfRangeError, match="every number its prediction needs"):
+        refine(replace(PLAN, head=replace(PLAN.head, do_mg_l=float("nan"))), STATIONS, readings(PLAN))
+    with pytest.raises(OutOfRangeError, match="plan must be a single river"):
+        refine(ensemble(PLAN, n=4), STATIONS, readings(PLAN))
+
+
 def test_every_setting_of_the_estimate_changes_something():
     assert {field.name for field in fields(FitSettings)} >= {"noise_mg_l", "bias_mg_l", "do_stretch", "draws"}
     do = readings(scaled(PLAN, 1.3, 0.8), noise=0.15)

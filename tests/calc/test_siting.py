@@ -150,5 +150,6 @@ def test_a_sag_that_ends_beyond_the_last_access_point_stays_open_below():
     places = np.array([1.0, 2.0, 3.0, 4.0, 5.0])
     answer = verdict(PLAN, places, readings(places), access_km=[1.5, 2.5])
     assert answer.word == "open below"
+    assert any("below your last access point" in sentence for sentence in answer.missing)
     found = next_station(PLAN, places, readings(places), [1.5, 2.5])
     assert {one.distance_km for one in found} <= {1.5, 2.5}
