@@ -13,7 +13,7 @@ import pytest
 from frictionless import Package
 
 from tests.conftest import SURVEY_FORM
-from tests.webapp.plans import PLAN
+from tests.webapp.plans import PLAN, put_plan
 from tests.webapp.sheets import TAKEN, correct, put_readings, set_aside
 from webapp.dataset import service
 from webapp.dataset.fields import decimal, harmless
@@ -254,6 +254,27 @@ def test_only_the_office_exports_and_only_its_surveys(browser_as, survey, addres
 @pytest.mark.parametrize(("name", "slug"), [("Älder  Brook!", "alder-brook"), ("河", "survey"), ("../x\r\ny", "x-y")])
 def test_file_name_is_safe_everywhere(name, slug):
     assert service.slug(name) == slug
+
+
+@pytest.mark.parametrize("note", ['5" pipe, "mud"', "a\r\nb", "a\rb\n", "ä;ß,漢", "\x00x", "\x1a", "NaN", " padded "])
+def test_awkward_text_survives_and_the_package_stays_valid(db, survey, people, tmp_path, note):
+    ids = put_readings(db, survey, people)
+    set_aside(db, survey, people, ids["D3"], reason=note)
+    dataset = service.dataset_of(db, survey)
+    for name, content in dataset.files.items():
+        (tmp_path / name).write_bytes(content)
+    assert Package(str(tmp_path / "datapackage.json")).validate().valid
+    (decision,) = rows_in(dataset.files, "corrections.csv")
+    assert decision["reason"] == note.replace("\r\n", "\n").replace("\r", "\n").replace("\x00", "")
+
+
+def test_station_left_out_of_the_newest_plan_is_still_listed(db, filled, people):
+    put_plan(db, filled, people["lead"], {**PLAN, "stations": PLAN["stations"][:3]}, number=2)
+    files = service.dataset_of(db, filled).files
+    states = {row["code"]: row["state"] for row in rows_in(files, "stations.csv")}
+    assert states["D1"] == "planned" and states["D5"] == "not_in_plan"
+    assert reading_at(files, "D5")["plan_version"] == "1"
+    assert rows_in(files, "survey.csv")[0]["plan_version"] == "2"
 
 
 def test_five_thousand_readings_are_exported_in_seconds(db, filled, people):

@@ -86,11 +86,11 @@ def moment(name, title, says="", **more):
     return Field(name, title, "datetime", "", says, **more)
 
 
-def from_column(column, name=None, limits=True):
-    """Return the field that a column of webapp.columns becomes."""
+def from_column(column):
+    """Return the field that a column of webapp.columns becomes, with the limits that its forms hold it to."""
     kind = _TYPES.get(column.quantity, "number")
     constraints = {"required": True} if column.required else {}
-    if kind == "number" and limits:
+    if kind == "number":
         if math.isfinite(column.low):
             constraints["minimum"] = column.low
         if math.isfinite(column.high):
@@ -98,7 +98,7 @@ def from_column(column, name=None, limits=True):
     says = column.help
     if column.quantity == "place":
         says = f"{says} Distance downstream of the outfall; negative above it.".strip()
-    return Field(name or column.key, column.label, kind, unit_of(column), says, constraints, column.choices)
+    return Field(column.key, column.label, kind, unit_of(column), says, constraints, column.choices)
 
 
 def unit_of(column):

@@ -39,7 +39,7 @@ def layers_of(name):
     column = CORRECTABLE[name]
     unit, title = unit_of(column), column.label
     # A percent typed alone gives oxygen beyond what a form takes for mg/L, so oxygen has no limits here.
-    limits = from_column(column, limits=name != "do_mg_l").constraints
+    limits = {} if name == "do_mg_l" else from_column(column).constraints
     return (
         text(f"{name}_as_typed", f"{title}, as typed", _TYPED.get(name, _AS_TYPED)),
         text(f"{name}_typed_unit", f"{title}, unit typed in", "UCUM code."),

@@ -1,8 +1,10 @@
 """The tables of a dataset that say what was planned and by which rules: survey, plan, prediction, settings, history."""
 
+from dataclasses import replace
+
 from calc.settings import SETTINGS
 from calc.units import UNITS
-from webapp.dataset.fields import DataTable, Field, from_column, moment, number, text, whole
+from webapp.dataset.fields import DataTable, from_column, moment, number, text, whole
 from webapp.plan.tables import ACCESS, BASIS, LISTS, PLAN_TABLES
 
 # What stays out wherever it stands, and why. The keys are those of plan columns, survey facts and history particulars.
@@ -74,8 +76,8 @@ def plan_tables(plan, known_codes):
 
 def _plan_table(table, plan):
     columns = [column for column in table.columns if not column.private]
-    # A name may stand twice and a limit may have moved since: what was planned is told as it is.
-    fields = (_VERSION, _ROW, *(from_column(column, limits=False) for column in columns))
+    # A limit may have moved since, or a row be unfinished: what was planned is told as it is.
+    fields = (_VERSION, _ROW, *(replace(from_column(column), constraints={}) for column in columns))
     rows = [
         {"plan_version": plan.number, "row": number, **{column.key: row.get(column.key) for column in columns}}
         for number, row in enumerate((plan.tables.get(table.key) or []) if plan else [], start=1)
@@ -85,18 +87,12 @@ def _plan_table(table, plan):
 
 def _station_table(plan, known_codes):
     table = PLAN_TABLES["stations"]
-    fields = [from_column(column, limits=False) for column in table.columns]
     states = {**table.column("state").choices, "not_in_plan": "left out of the newest plan"}
-    fields = [
-        Field(one.name, one.title, one.type, one.unit, one.says, {}, states if one.name == "state" else one.choices)
-        if one.name != "code"
-        else one
-        for one in fields
-    ]
+    fields = [replace(from_column(column), constraints={}) for column in table.columns]
+    fields = [replace(one, choices=states) if one.name == "state" else one for one in fields]
+    fields = [replace(one, constraints={"required": True}) if one.name == "code" else one for one in fields]
     planned = {row["code"]: row for row in (plan.tables.get("stations") or []) if row.get("code")} if plan else {}
-    rows = [{"state": "planned", **{key: value for key, value in row.items() if value}} for row in planned.values()]
-    for row, source in zip(rows, planned.values(), strict=True):
-        row["distance_km"] = source.get("distance_km")
+    rows = [{**row, "state": row.get("state") or "planned"} for row in planned.values()]
     rows += [{"code": code, "state": "not_in_plan"} for code in sorted(known_codes) if code not in planned]
     return DataTable("stations", table.title, table.says, tuple(fields), ("code",), rows)
 
