@@ -198,6 +198,37 @@ class ReadingEvent(Base):
     made_by: Mapped[Person] = relationship()
 
 
+class Decision(Base):
+    """What somebody decided on site, why, and what was on the screen: screen holds its numbers (SI) and sentences.
+
+    kind is "leave" for leaving the river, "station" for where to read next; chosen is what was chosen, in a word or by
+    a station's code.
+    """
+
+    __tablename__ = "decision"
+    id: Mapped[str] = _id()
+    survey_id: Mapped[str] = _to("survey.id", index=True)
+    plan_version_id: Mapped[str] = _to("plan_version.id")
+    kind: Mapped[str] = mapped_column(String(12))
+    chosen: Mapped[str] = mapped_column(String(100))
+    reason: Mapped[str] = mapped_column(Text, default="")
+    screen: Mapped[dict] = mapped_column(JSON, default=dict)
+    made_by_id: Mapped[str] = _to("person.id")
+    made_at: Mapped[datetime] = mapped_column(UtcDateTime, default=now)
+    made_by: Mapped[Person] = relationship()
+
+
+class Seen(Base):
+    """What of a survey's field sheet a person was shown last: against it a newer plan or release time is news."""
+
+    __tablename__ = "seen"
+    survey_id: Mapped[str] = _to("survey.id", primary_key=True)
+    person_id: Mapped[str] = _to("person.id", primary_key=True)
+    plan_number: Mapped[int] = mapped_column(Integer)
+    release_at: Mapped[datetime | None] = mapped_column(UtcDateTime)
+    at: Mapped[datetime] = mapped_column(UtcDateTime, default=now)
+
+
 class History(Base):
     """Every change to a survey or a person, in the order it happened: who, when, what, and the particulars."""
 

@@ -31,13 +31,17 @@ def test_a_database_that_is_up_to_date_is_left_alone(url, tmp_path):
     assert (tmp_path / "bankside.sqlite3").read_bytes() == before
 
 
+def newest():
+    return sorted(path.name for path in (migrate.MIGRATIONS / "versions").glob("0*.py"))[-1][:4]
+
+
 def further(tmp_path, monkeypatch, body):
-    """Put a second migration beside a copy of the real ones."""
+    """Put a further migration after a copy of the real ones."""
     folder = tmp_path / "migrations"
     shutil.copytree(migrate.MIGRATIONS, folder)
-    (folder / "versions" / "0002_more.py").write_text(
+    (folder / "versions" / "9999_more.py").write_text(
         "import sqlalchemy as sa\nfrom alembic import op\n"
-        f'revision, down_revision = "0002", "0001"\n\n\ndef upgrade():\n{body}'
+        f'revision, down_revision = "9999", "{newest()}"\n\n\ndef upgrade():\n{body}'
     )
     monkeypatch.setattr(migrate, "MIGRATIONS", folder)
 
@@ -79,7 +83,7 @@ def test_a_failed_upgrade_changes_nothing(url, tmp_path, monkeypatch):
     connection = sqlite3.connect(tmp_path / "bankside.sqlite3")
     columns = [row[1] for row in connection.execute("PRAGMA table_info(person)")]
     assert "phone" not in columns
-    assert connection.execute("SELECT version_num FROM alembic_version").fetchone() == ("0001",)
+    assert connection.execute("SELECT version_num FROM alembic_version").fetchone() == (newest(),)
     connection.close()
 
 
