@@ -13,7 +13,7 @@ def test_a_pasted_table_is_shown_before_it_replaces_the_old_one(browser_as, plan
     lead = browser_as("lead")
     checked = lead.post(f"{plan}/weirs/import", {"text": WEIRS, "based_on": "1"})
     assert checked.status_code == 200 and "All of it can be taken" in checked.text
-    assert "3.50 km below the outfall" in checked.text and "Low weir;3,5;0,4" in checked.text
+    assert "<td>3.50 km</td>" in checked.text and "Low weir;3,5;0,4" in checked.text
     assert now().number == 1
     saved = lead.post(f"{plan}/weirs/import/save", {"text": WEIRS, "based_on": "1", "version_reason": "From the sheet"})
     assert saved.status_code == 303

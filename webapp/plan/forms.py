@@ -130,7 +130,7 @@ def _shown(column, value, show):
     if column.quantity == "text":
         return value
     if column.quantity == "place":
-        return show.place(value)
+        return show.text("place", value) if show.distance_rule == "downstream" else show.place(value)
     if column.quantity == "plain":
         return show.typed("plain", value)
     return show.text(column.quantity, value)
