@@ -1,6 +1,6 @@
 """Rows of a plan's tables: their order, what they are called, and what one row may not be beside the others."""
 
-from webapp.plan.tables import KINDS, PLAN_TABLES
+from webapp.plan.tables import ALL_TABLES, KINDS, PLAN_TABLES
 
 # Rows closer than this are at one place: what rounding of a typed distance may leave. [km]
 SAME_PLACE_KM = 0.05
@@ -9,10 +9,10 @@ NAMED_ONCE = {"access", "stations"}
 
 def in_order(key, rows):
     """Return the rows of a table in the order people read them: down the river."""
-    if key == "basis":
+    if key in ("basis", "day"):
         return list(rows)
     first = list(KINDS)
-    order = PLAN_TABLES[key].order
+    order = ALL_TABLES[key].order
 
     def place(row):
         kind = row.get("kind")

@@ -6,7 +6,7 @@ from webapp.errors import Conflict
 from webapp.models import PlanVersion, Station
 from webapp.plan import queries
 from webapp.plan.rows import SAME_PLACE_KM, in_order
-from webapp.plan.tables import EMPTY_PLAN, PLAN_TABLES
+from webapp.plan.tables import ALL_TABLES, EMPTY_PLAN
 from webapp.surveys.queries import count_readings
 from webapp.surveys.service import remember
 
@@ -45,7 +45,7 @@ def save_tables(db, survey, tables, reason, by_id, based_on=None):
         after["stations"] = _with_known_codes(db, survey, after["stations"], before["stations"])
     version = PlanVersion(survey_id=survey.id, number=number + 1, tables=after, reason=reason, made_by_id=by_id)
     db.add(version)
-    changed = [PLAN_TABLES[key].title for key in PLAN_TABLES if after[key] != before[key]]
+    changed = [table.title for key, table in ALL_TABLES.items() if after.get(key) != before.get(key)]
     particulars = {"number": number + 1, "reason": reason, "tables": changed}
     try:
         db.flush()
@@ -59,7 +59,7 @@ def save_tables(db, survey, tables, reason, by_id, based_on=None):
 
 def _kept(key, row):
     """Return a row without what is empty, and without what is no column."""
-    columns = {column.key for column in PLAN_TABLES[key].columns}
+    columns = {column.key for column in ALL_TABLES[key].columns}
     return {name: value for name, value in row.items() if name in columns and value is not None and value != ""}
 
 

@@ -152,6 +152,8 @@ STATIONS = Table(
         Column("state", "State", "choice", choices=STATION_STATES, also=("status",)),
         Column("reason", "Reason", longest=200, also=("why",),
                help="Needed when a station is added on site or dropped."),
+        Column("crew", "For whom", longest=100, also=("crew", "assigned to", "who"),
+               help="The name of the person who goes there, as they sign in here; empty: whoever comes by."),
     ),
     "code",
     "distance_km",
@@ -179,6 +181,56 @@ BASIS = Table(
     "bod_bottle_rate_per_day",
 )  # fmt: skip
 
+DAY = Table(
+    "day",
+    "What the day showed",
+    "day",
+    "What was measured on the day, against what was planned; and how long the crew may stay.",
+    (
+        Column("river_flow_m3_s", "River flow above the outfall", "flow", False, 0.0001, 100000),
+        Column("river_temp_c", "River temperature above the outfall", "temperature", False, 0, 40),
+        Column("outfall_flow_m3_s", "Flow of the outfall", "flow", False, 0, 100000),
+        Column("outfall_bod5_mg_l", "BOD5 of the outfall", "demand", False, 0, 50000),
+        Column("outfall_do_mg_l", "Oxygen in the outfall", "oxygen", False, 0, 30),
+        Column("outfall_temp_c", "Temperature of the outfall", "temperature", False, 0, 40),
+        Column("crew_until", "The crew works until", "time"),
+        Column("bottles_until", "Bottles must be at the laboratory by", "time"),
+        Column("drive_to_lab_min", "Minutes to drive to the laboratory", "plain", False, 0, 2880),
+        Column("lab_margin_min", "Minutes to hand over bottles there", "plain", False, 0, 600, help="Empty takes 30."),
+        Column("off_water_before_sunset_min", "Minutes off the water before sunset", "plain", False, 0, 600,
+               help="Empty takes 30."),
+        Column("closeout_min", "Minutes to close out", "plain", False, 0, 600,
+               help="Meter checks, bottles, gear, people. Empty takes 45."),
+        Column("latitude", "Latitude", "plain", False, -90, 90, help="For the sunset, where no access point has it."),
+        Column("longitude", "Longitude", "plain", False, -180, 180, help="East positive, west with a minus."),
+        Column("reachable_anywhere", "The crew has a boat", "yes_no",
+               help="Then every place on the river can be a station."),
+    ),
+    "river_flow_m3_s",
+    "river_flow_m3_s",
+)  # fmt: skip
+
+DAY_REACHES = Table(
+    "day_reaches",
+    "What the day showed, reach by reach",
+    "reach",
+    "What was measured in a reach on the day; it stands before what the plan or the flow says.",
+    (
+        Column("reach", "Reach", longest=80),
+        _place("from_km", "From"),
+        Column("velocity_m_s", "Mean velocity", "velocity", False, 0.002, 6),
+        Column("travel_time_h", "Dye time through the reach, in hours", "plain", False, 0.01, 2000,
+               help="From the dye's peak at its head to the peak at its end; it stands before a velocity."),
+        Column("depth_m", "Mean depth", "depth", False, 0.02, 60),
+        Column("water_temp_c", "Water temperature", "temperature", False, 0, 40),
+    ),
+    "reach",
+    "from_km",
+)  # fmt: skip
+
 PLAN_TABLES = {table.key: table for table in (REACHES, WATERS, WEIRS, ACCESS, STATIONS, BASIS)}
+DAY_TABLES = {table.key: table for table in (DAY, DAY_REACHES)}
+# Every table that a plan version may hold: those made at the desk, and what the day showed.
+ALL_TABLES = PLAN_TABLES | DAY_TABLES
 LISTS = ("reaches", "waters", "weirs", "access", "stations")
 EMPTY_PLAN = {"reaches": [], "waters": [], "weirs": [], "access": [], "stations": [], "basis": [{}]}
