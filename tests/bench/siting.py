@@ -1,8 +1,8 @@
 """Compares ways of siting stations on simulated rivers, all on the same rivers in one run.
 
 Run it from the top of the checkout: `python -m tests.bench.siting --rivers 300 --seed 1 --workers 2`. The rivers are
-those of siting_rivers, the strategies those of siting_strategies. Times are wall time: run with one worker, on an idle
-machine, when they matter. `--world other` runs instead through worlds that differ from what the estimate assumes.
+those of siting_rivers, the strategies those of siting_strategies. Times are processor time of one thread, so that what
+else runs on the machine adds little. `--world other` runs instead through worlds unlike what the estimate assumes.
 """
 
 import argparse

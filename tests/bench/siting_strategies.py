@@ -7,7 +7,7 @@ outfall to the first station and from each station to the next, in the order the
 
 from dataclasses import dataclass, replace
 from math import nan
-from time import perf_counter
+from time import process_time
 
 import numpy as np
 
@@ -38,7 +38,8 @@ class Outcome:
     """What a strategy gave at one river with n stations. Errors are estimate less truth; place is a share of the truth.
 
     do_inside and place_inside tell whether the 90 % interval holds the truth, NaN without an interval; word is the
-    verdict's, where one was asked; fit is the estimate's word on itself. Times are milliseconds of the last step.
+    verdict's, where one was asked; fit is the estimate's word on itself. Times are milliseconds of processor
+    time of the last step.
     """
 
     strategy: str
@@ -110,9 +111,9 @@ def _adaptive(sim, strategy, sizes):
             order.append(halving(sim, order))
             continue
         estimate = estimate or refine(plan.river, sim.access_km[order], sim.readings_mg_l[order])
-        began = perf_counter()
+        began = process_time()
         order.append(_where_next(sim, plan, order, estimate, free_to_drive=strategy == UNRESTRAINED))
-        spent_ms = 1e3 * (perf_counter() - began)
+        spent_ms = 1e3 * (process_time() - began)
 
 
 def _where_next(sim, plan, order, estimate, *, free_to_drive):
@@ -164,14 +165,14 @@ def _closest(access_km, free, target_km):
 def _estimated(sim, strategy, plan, order, *, suggest_ms=nan, asks=False):
     """Return the Outcome of readings taken in an order, and the estimate made of them."""
     stations_km, readings = sim.access_km[order], sim.readings_mg_l[order]
-    began = perf_counter()
+    began = process_time()
     estimate = refine(plan.river, stations_km, readings)
-    done = perf_counter()
+    done = process_time()
     word, verdict_ms = "", nan
     if asks:
         left = np.delete(sim.access_km, order)
         word = verdict(plan.river, stations_km, readings, estimate=estimate, access_km=left).word
-        verdict_ms = 1e3 * (perf_counter() - done)
+        verdict_ms = 1e3 * (process_time() - done)
     do, place = estimate.critical_do_mg_l, estimate.critical_km
     outcome = _outcome(
         sim,
