@@ -277,6 +277,19 @@ def test_station_left_out_of_the_newest_plan_is_still_listed(db, filled, people)
     assert rows_in(files, "survey.csv")[0]["plan_version"] == "2"
 
 
+def test_what_the_day_showed_is_in_it_with_units_and_times(db, filled, people, tmp_path):
+    day = {"river_flow_m3_s": 1.65, "crew_until": "2026-08-12T18:30:00+00:00", "drive_to_lab_min": 50.0}
+    put_plan(db, filled, people["lead"], {**PLAN, "day": [day], "day_reaches": []}, number=2)
+    files = service.dataset_of(db, filled).files
+    for name, content in files.items():
+        (tmp_path / name).write_bytes(content)
+    assert Package(str(tmp_path / "datapackage.json")).validate().valid
+    assert rows_in(files, "day.csv")[0]["crew_until"] == "2026-08-12T20:30:00+02:00"
+    units = {(row["table"], row["column"]): row["unit"] for row in rows_in(files, "dictionary.csv")}
+    assert units["day", "drive_to_lab_min"] == units["access", "drive_min"] == "min"
+    assert (units["day_reaches", "travel_time_h"], units["day", "river_flow_m3_s"]) == ("h", "m3/s")
+
+
 def test_five_thousand_readings_are_exported_in_seconds(db, filled, people):
     station, plan = stations_of(db, filled.id)["D3"], current_plan(db, filled.id)
     db.add_all(

@@ -16,7 +16,8 @@ from webapp.display import QUANTITIES
 PLAIN_NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)")
 FORMULA_STARTS = tuple("=+-@\t\r\uff1d\uff0b\uff0d\uff20")
 # Plain numbers that have a unit all the same.
-_UNITS = {"latitude": "deg", "longitude": "deg", "drive_min": "min"}
+_UNITS = {"latitude": "deg", "longitude": "deg"}
+_ENDINGS = {"min": "min", "h": "h"}
 _DECIMALS = 9
 _TYPES = {"text": "string", "choice": "string", "yes_no": "boolean", "time": "datetime"}
 
@@ -106,7 +107,9 @@ def unit_of(column):
     if column.quantity in _TYPES:
         return ""
     code = QUANTITIES[column.quantity][0]
-    return _UNITS.get(column.key, "" if code == "1" else code)
+    if code != "1":
+        return code
+    return _UNITS.get(column.key) or _ENDINGS.get(column.key.rsplit("_", 1)[-1], "")
 
 
 def written(value, zone):

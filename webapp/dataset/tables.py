@@ -1,11 +1,12 @@
 """The tables of a dataset that say what was planned and by which rules: survey, plan, prediction, settings, history."""
 
 from dataclasses import replace
+from datetime import datetime
 
 from calc.settings import SETTINGS
 from calc.units import UNITS
 from webapp.dataset.fields import DataTable, from_column, moment, number, text, whole
-from webapp.plan.tables import ACCESS, BASIS, LISTS, PLAN_TABLES
+from webapp.plan.tables import ACCESS, ALL_TABLES, STATIONS
 
 # What stays out wherever it stands, and why. The keys are those of plan columns, survey facts and history particulars.
 LEFT_OUT = (
@@ -14,7 +15,7 @@ LEFT_OUT = (
     ("person", "sign_in", "Names stand beside what people did; how they sign in is nobody's business."),
 )
 _PRIVATE = frozenset(key for _, key, _ in LEFT_OUT) | {
-    column.key for table in PLAN_TABLES.values() for column in table.columns if column.private
+    column.key for table in ALL_TABLES.values() for column in table.columns if column.private
 }
 _ROW = whole("row", "Row", "Counts the rows of the plan's table.", constraints={"required": True})
 _VERSION = whole("plan_version", "Plan version", constraints={"required": True})
@@ -70,7 +71,7 @@ def plan_version_table(versions):
 
 def plan_tables(plan, known_codes):
     """Return the plan's tables in its newest version; known_codes are all stations the survey ever had."""
-    made = [_plan_table(PLAN_TABLES[key], plan) for key in (*LISTS, BASIS.key) if key != "stations"]
+    made = [_plan_table(table, plan) for key, table in ALL_TABLES.items() if key != STATIONS.key]
     return [*made, _station_table(plan, known_codes)]
 
 
@@ -79,14 +80,22 @@ def _plan_table(table, plan):
     # A limit may have moved since, or a row be unfinished: what was planned is told as it is.
     fields = (_VERSION, _ROW, *(replace(from_column(column), constraints={}) for column in columns))
     rows = [
-        {"plan_version": plan.number, "row": number, **{column.key: row.get(column.key) for column in columns}}
+        {"plan_version": plan.number, "row": number, **{column.key: _planned(column, row) for column in columns}}
         for number, row in enumerate((plan.tables.get(table.key) or []) if plan else [], start=1)
     ]
     return DataTable(table.key, table.title, table.says, fields, ("row",), rows, _TO_VERSION)
 
 
+def _planned(column, row):
+    """Return a value of a plan; its times are kept as text in ISO 8601."""
+    value = row.get(column.key)
+    if column.quantity == "time" and isinstance(value, str) and value:
+        return datetime.fromisoformat(value)
+    return value
+
+
 def _station_table(plan, known_codes):
-    table = PLAN_TABLES["stations"]
+    table = STATIONS
     states = {**table.column("state").choices, "not_in_plan": "left out of the newest plan"}
     fields = [replace(from_column(column), constraints={}) for column in table.columns]
     fields = [replace(one, choices=states) if one.name == "state" else one for one in fields]
