@@ -1,6 +1,6 @@
 """The refusals a service may raise, and the page each one becomes."""
 
-from flask import render_template
+from flask import abort, render_template, request
 from werkzeug.exceptions import HTTPException
 
 
@@ -49,8 +49,14 @@ WORDS = {
 
 def register(app):
     """Turn refusals and HTTP errors into pages."""
+    app.before_request(_no_nul_in_address)
     app.register_error_handler(Refusal, lambda error: _page(error.status, error.title, error.message))
     app.register_error_handler(HTTPException, _http_page)
+
+
+def _no_nul_in_address():
+    if "\x00" in request.path or "\x00" in request.query_string.decode("latin-1") or "%00" in request.full_path:
+        abort(404)  # no database takes it as text
 
 
 def _http_page(error):

@@ -23,7 +23,7 @@ def test_no_page_allows_inline_script_or_style(app):
 
 
 @pytest.mark.parametrize(
-    "path", ["/nothing", "/surveys/%00", "/surveys/x/y/z", "/people/../../etc/passwd", "/static/no"]
+    "path", ["/nothing", "/surveys/%00/about", "/surveys/x/about?a=%00", "/people/../../etc/passwd", "/static/no"]
 )
 def test_addresses_that_lead_nowhere_say_so_kindly(browser_as, path):
     answer = browser_as("crew").get(path)
