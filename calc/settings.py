@@ -13,6 +13,7 @@ COMMON = "common practice"
 PLANNING = "planning default"
 BAROMETER = "computed from the US Standard Atmosphere 1976; ordinary weather moves pressure by about 15 mmHg"
 FIELD_MANUAL = "after the USGS National Field Manual, chapters A6 and A9"
+SIMULATED = "chosen on simulated rivers"
 COLD = "common cold-water guidance: caution below 70 °F, immersion clothing below 60 °F"
 
 
@@ -114,6 +115,18 @@ class Settings:
     wading_depth_m: float = _setting(0.9, "m", "Wading: project limit of depth", PLANNING)
     cold_water_c: float = _setting(21.0, "°C", "Cold water: caution below", COLD)
     very_cold_water_c: float = _setting(15.0, "°C", "Cold water: dress for immersion below", COLD)
+
+    estimate_error_mg_l: float = _setting(0.12, "mg/L", "Estimate: error of one reading", PLANNING)
+    estimate_bias_mg_l: float = _setting(0.10, "mg/L", "Estimate: error that one meter's readings share", PLANNING)
+    leave_stations: float = _setting(4.0, "stations", "May we leave: fewest stations read", SIMULATED)
+    leave_between_percent: float = _setting(
+        95.0, "%", "May we leave: least chance that the low point lies between stations", SIMULATED
+    )
+    leave_oxygen_mg_l: float = _setting(0.30, "mg/L", "May we leave: lowest oxygen known to within", SIMULATED)
+    leave_place_percent: float = _setting(20.0, "%", "May we leave: place of the low point known to within", SIMULATED)
+    leave_regret_mg_l: float = _setting(
+        0.04, "mg/L", "May we leave: or oxygen elsewhere lower by no more than", SIMULATED
+    )
 
     def __post_init__(self):
         for key, value in self.as_dict().items():

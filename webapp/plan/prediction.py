@@ -176,7 +176,7 @@ def predict_plan(tables, elevation_m):
     """Return the Prediction for the tables of a plan, or Unready with what they still need."""
     try:
         built = build(tables, elevation_m)
-        return _predict(built, (tables.get("basis") or [{}])[0])
+        return _predict(built, basis_of(tables))
     except NotReady as error:
         return Unready(error.missing)
     except CalcError:
@@ -189,7 +189,7 @@ def _predict(built, basis):
     river = built.river
     grid_km = _grid(river)
     state = predict(river, grid_km)
-    spread = _spread_of(basis)
+    spread = spread_of(basis)
     around = band(river, grid_km, spread)
     critical = critical_point(river)
     along = {
@@ -215,7 +215,12 @@ def _predict(built, basis):
     )
 
 
-def _spread_of(basis):
+def basis_of(tables):
+    """Return the row of rates and doubts that hold for the whole river."""
+    return (tables.get("basis") or [{}])[0]
+
+
+def spread_of(basis):
     """Return the PlanSpread of the plan's own doubts, calc's where one is empty. Raises NotReady."""
     given = {name: basis[key] for key, name in DOUBTS.items() if basis.get(key) is not None}
     try:

@@ -24,6 +24,9 @@ class FinalReading:
     id: str
     station_code: str
     taken_at: object
+    position: str
+    meter: str
+    replicate: bool
     do_mg_l: float | None
     water_temp_c: float | None
     depth_m: float | None
@@ -73,6 +76,9 @@ def final(reading):
         id=reading.id,
         station_code=reading.station.code,
         taken_at=reading.taken_at,
+        position=reading.position,
+        meter=reading.meter,
+        replicate=reading.replicate,
         raw=raw,
         set_aside=set_aside,
         reason=reason,
