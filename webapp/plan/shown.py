@@ -30,6 +30,11 @@ class ShownPlan:
         """Every table of the plan, empty ones too."""
         return {**EMPTY_PLAN, **(self.version.tables if self.version else {})}
 
+    def reaches(self):
+        """Return the ReachRates of the plan as planned; none where it can't be predicted."""
+        prediction = prediction_of(self.survey, self.version)
+        return prediction.reach_rates if prediction.ready else ()
+
     def outlook(self, tables=None):
         """Return what a page needs to draw the sag of the plan, or of other tables in its place."""
         if tables is None and self.version is not None:

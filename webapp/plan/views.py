@@ -10,7 +10,9 @@ from webapp.db import get_db, reads_only
 from webapp.errors import Conflict, NotFound
 from webapp.htmx import page_or_part
 from webapp.people.access import needs
-from webapp.plan import forms, proposal, queries, service
+from webapp.plan import day_forms, forms, proposal, queries, service
+from webapp.plan.day import day_changes, predict_today
+from webapp.plan.day_words import effect
 from webapp.plan.rows import in_order, row_title, with_row
 from webapp.plan.shown import find_again, open_plan
 from webapp.plan.tables import LISTS, PLAN_TABLES
@@ -158,6 +160,41 @@ def save_proposal(survey_id):
     return _plan_after(plan, PLAN_TABLES["stations"])
 
 
+@bp.get(f"{PLAN}/day")
+@needs("plan")
+def day_form(survey_id):
+    """Show what the day showed, beside what was planned, with what it changes."""
+    plan = _open(survey_id)
+    return _day_page(plan, day_forms.typed_day(plan.tables, plan.reaches(), plan.show), plan.tables)
+
+
+@bp.post(f"{PLAN}/day/look")
+@needs("plan")
+@reads_only
+def day_look(survey_id):
+    """Show what the day as typed changes; nothing is saved."""
+    plan = _open(survey_id)
+    tables, errors = day_forms.parse_day(request.form, plan.reaches(), plan.show)
+    return _day_page(plan, request.form, plan.tables | tables, errors, 422 if errors else 200)
+
+
+@bp.post(f"{PLAN}/day")
+@needs("plan")
+def save_day(survey_id):
+    """Store what the day showed as a new version of the plan, which every field sheet follows."""
+    plan = _open(survey_id)
+    tables, errors = day_forms.parse_day(request.form, plan.reaches(), plan.show)
+    reason, more = forms.parse_reason(request.form, plan.needs_reason)
+    if errors or more or plan.version is None:
+        return _day_page(plan, request.form, plan.tables | tables, errors | more, 422)
+    based_on = forms.parse_based_on(request.form)
+    try:
+        service.save_tables(get_db(), plan.survey, tables, reason, current_user.id, based_on)
+    except Conflict as conflict:
+        return _day_page(plan, request.form, plan.tables | tables, {}, 409, conflict.message)
+    return redirect(url_for("fieldsheet.sheet", survey_id=plan.survey.id), code=303)
+
+
 @dataclass(frozen=True)
 class _Edit:
     """A row that is being changed: where it stands in the table as it is now, None for a new one."""
@@ -222,6 +259,7 @@ def _plan_page(plan, versions, may_change, old=False):
         "plan/plan.html",
         **plan.context(),
         **plan.outlook(),
+        day=day_forms.shown_day(plan.tables, plan.show),
         shown={key: forms.shown_rows(key, plan.tables[key], plan.show) for key in PLAN_TABLES},
         plan_tables=PLAN_TABLES,
         lists=LISTS,
@@ -253,6 +291,27 @@ def _row_page(plan, edit, form, errors=None, status=200, read=None, message=""):
         unfolded=any(field.folded and (form.get(field.key) or (errors or {}).get(field.key)) for field in fields),
         form=form,
         errors=errors or {},
+        message=message,
+    )
+
+
+def _day_page(plan, form, tables, errors=None, status=200, message=""):
+    """Return the page of what the day showed, or for htmx what it changes."""
+    errors, elevation_m = errors or {}, plan.survey.elevation_m
+    planned = plan.outlook()["prediction"]
+    words = effect(plan.survey, plan.show, planned, predict_today(tables, elevation_m)) if day_changes(tables) else ()
+    return page_or_part(
+        "plan/day.html",
+        "plan/_day_effect.html",
+        status,
+        **plan.context(),
+        planned=planned,
+        effect=words,
+        groups=day_forms.day_groups(plan.tables, plan.show),
+        times=day_forms.time_fields(plan.show),
+        reaches=day_forms.reach_fields(plan.reaches(), plan.show, form, errors),
+        form=form,
+        errors=errors,
         message=message,
     )
 

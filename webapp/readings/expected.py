@@ -1,9 +1,9 @@
-"""What the plan expects at each of its stations, kept beside the prediction: a day asks for it with every reading."""
+"""What is expected at each station under the conditions of the day, kept beside the prediction: every reading asks."""
 
 from dataclasses import dataclass, field
 from functools import lru_cache
 
-from webapp.plan.prediction import prediction_of
+from webapp.plan.day import today_of
 
 
 @dataclass(frozen=True)
@@ -25,7 +25,7 @@ def prediction_or_reasons(survey, plan_version):
     """Return (Prediction, ()), or (None, why there is none) in sentences."""
     if plan_version is None:
         return None, ("There is no plan yet.",)
-    prediction = prediction_of(survey, plan_version)
+    prediction = today_of(survey, plan_version)
     return (prediction, ()) if prediction.ready else (None, prediction.missing)
 
 
