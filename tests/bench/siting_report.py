@@ -184,8 +184,16 @@ def print_stops(found, largest):
     for n in SIZES:
         rows = found.at(NEXT, n)
         counts = {word: sum(row.word == word for row in rows) for word in sorted({row.word for row in rows})}
-        fits = {word: sum(row.fit == word for row in rows) for word in sorted({row.fit for row in rows})}
-        print(f"  {n} stations: {counts}; fit {fits}")
+        print(f"  {n} stations: {counts}")
+        for word in sorted({row.fit for row in rows}):
+            print_coverage(f"    {word}", [row for row in rows if row.fit == word])
+
+
+def print_coverage(label, rows):
+    """Print how often the 90 % intervals of some outcomes hold the truth, and their errors."""
+    do, place = np.mean(values(rows, "do_inside")), np.mean(values(rows, "place_inside"))
+    error, regret = rms(values(rows, "do_error_mg_l")), np.mean(values(rows, "regret_mg_l"))
+    print(f"{label}: {len(rows)}, covers DO {do:.0%}, place {place:.0%}, DO rms {error:.3f}, regret {regret:.4f}")
 
 
 def print_times(found):
@@ -211,9 +219,4 @@ def print_worst(found, n, count):
             f"{'between' if row.between else 'outside'}, {row.word}, {row.fit}"
         )
     for kind in sorted({row.kind for row in rows}):
-        part = [row for row in rows if row.kind == kind]
-        print(
-            f"  {kind}: DO rms {rms(values(part, 'do_error_mg_l')):.3f}, bias "
-            f"{np.mean(values(part, 'do_error_mg_l')):+.3f}, regret {np.mean(values(part, 'regret_mg_l')):.4f}, covers "
-            f"DO {np.mean(values(part, 'do_inside')):.0%}, place {np.mean(values(part, 'place_inside')):.0%}"
-        )
+        print_coverage(f"  {kind}", [row for row in rows if row.kind == kind])

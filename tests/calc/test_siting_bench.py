@@ -79,4 +79,4 @@ def test_the_bench_compares_strategies_on_the_same_rivers(capsys):
     printed = capsys.readouterr().out
     for strategy in (LOWEST, EVEN, HALVE, NEXT):
         assert sum(line.startswith(strategy) for line in printed.splitlines()) >= 2
-    assert "stations: {" in printed
+    assert "4 stations: {" in printed
