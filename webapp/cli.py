@@ -1,4 +1,4 @@
-"""The `bankside` commands: serve, demo, person, password."""
+"""The `bankside` commands: serve, demo, backup, password."""
 
 import socket
 import sys
@@ -77,6 +77,21 @@ def password(data_dir, sign_in, password):
             raise click.ClickException(errors["password"])
         service.change_password(db, person.id, checked, person.id)
     click.echo(f"{person.name} has a new password; their open sessions have ended.")
+
+
+@main.command()
+@click.option("--data", "data_dir", help="Folder of the database file. [BANKSIDE_DATA, else bankside-data]")
+@click.argument("target")
+def backup(data_dir, target):
+    """Copy database, secret key and all else of the data folder to the new folder TARGET, also while it is served."""
+    from webapp import backup as copies
+
+    try:
+        made = copies.backup(_config(data_dir=data_dir), target)
+    except copies.NoBackup as trouble:
+        raise click.ClickException(str(trouble)) from trouble
+    click.echo(f"Copied to {made.folder}: {made.readings} readings, {made.size_mb:.1f} MB, checked.")
+    click.echo("It is a data folder itself, with passwords' hashes and keys in it: keep it as you keep the server.")
 
 
 def _config(**overrides):
