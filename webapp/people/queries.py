@@ -8,7 +8,7 @@ from webapp.models import Person, Survey, SurveyMember
 
 def find_person(db, person_id):
     """Return the person or None."""
-    return db.get(Person, person_id)
+    return None if "\x00" in person_id else db.get(Person, person_id)  # PostgreSQL takes no NUL
 
 
 def get_person(db, person_id):
@@ -20,7 +20,7 @@ def get_person(db, person_id):
 
 def find_by_sign_in(db, sign_in):
     """Return the person with this sign-in name, however it is capitalised, or None."""
-    return db.scalar(select(Person).where(Person.sign_in == sign_in.strip().lower()))
+    return db.scalar(select(Person).where(Person.sign_in == sign_in.replace("\x00", "").strip().lower()))
 
 
 def people(db):
