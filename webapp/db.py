@@ -99,6 +99,11 @@ def get_db():
     return g.db
 
 
+def write_aside():
+    """Return a session of its own for the little that a GET may write; close it with a with statement."""
+    return current_app.extensions["bankside_database"].writing()
+
+
 def close_db(_error=None):
     """Close this request's session, if it had one."""
     if (db := g.pop("db", None)) is not None:

@@ -122,7 +122,7 @@ def test_plan_without_stations_says_so(db, survey, people, browser_as):
     assert "The plan has no stations yet" in browser_as("crew").get(f"/surveys/{survey.id}/sheet").text
 
 
-@pytest.mark.parametrize(("role", "says"), [("crew", "The lead or the office sets it"), ("lead", "Set it on the")])
+@pytest.mark.parametrize(("role", "says"), [("crew", "The lead or the office sets it"), ("lead", "Set it at the end")])
 def test_missing_release_time_says_who_sets_it(db, survey, version, browser_as, role, says):
     db.merge(survey).release_at = None
     db.commit()

@@ -10,7 +10,10 @@ from webapp.readings.layers import FinalReading, final
 
 @dataclass(frozen=True)
 class Stop:
-    """One station of the day. arrives_at is when the released parcel's peak is there, leads_at its leading edge."""
+    """One station of the day. arrives_at is when the released parcel's peak is there, leads_at its leading edge.
+
+    crew is the name of the person it is for, empty where it is for whoever comes by.
+    """
 
     code: str
     distance_km: float
@@ -22,6 +25,7 @@ class Stop:
     drive_from: str
     state: str
     reason: str
+    crew: str
     travel_time_h: float | None
     arrives_at: datetime | None
     leads_at: datetime | None
@@ -50,8 +54,8 @@ class Sheet:
     cold_c: float | None
 
 
-def sheet_of(survey, plan_version, readings):
-    """Return the Sheet of a survey; readings are all of the survey."""
+def sheet_of(survey, plan_version, readings, person_name=""):
+    """Return the Sheet of a survey for a person; readings are all of the survey."""
     if plan_version is None:
         return Sheet((), (), None, ("There is no plan yet.",), None)
     _, missing = prediction_or_reasons(survey, plan_version)
@@ -68,19 +72,23 @@ def sheet_of(survey, plan_version, readings):
     going = tuple(stop for stop in stops if stop.state != "dropped")
     dropped = tuple(stop for stop in stops if stop.state == "dropped")
     temperatures = [one.water_temp_c for one in finals if one.water_temp_c is not None]
-    return Sheet(going, dropped, _next(going, finals), missing, min(temperatures, default=None))
+    return Sheet(going, dropped, _next(going, finals, person_name), missing, min(temperatures, default=None))
 
 
-def next_stop(survey, plan_version, readings):
-    """Return the Stop to do next: the first without a reading below the one read last, else the first without any."""
-    return sheet_of(survey, plan_version, readings).next
+def next_stop(survey, plan_version, readings, person_name=""):
+    """Return the Stop to do next: the first without a reading below the one read last, else the first without any.
+
+    A station that is for somebody else comes after all others.
+    """
+    return sheet_of(survey, plan_version, readings, person_name).next
 
 
-def _next(stops, finals):
+def _next(stops, finals, person_name):
     places = {stop.code: stop.distance_km for stop in stops}
     read = [(one.taken_at, at, one.station_code) for at, one in enumerate(finals) if not one.set_aside]
     *_, latest = max(read, default=("",))
     to_do = [stop for stop in stops if not stop.last]
+    to_do = [stop for stop in to_do if stop.crew in ("", person_name)] or to_do
     below = [stop for stop in to_do if latest in places and stop.distance_km > places[latest]]
     return next(iter(below or to_do), None)
 
@@ -102,6 +110,7 @@ def _stop(survey, row, access, expected, finals, before):
         drive_from=before["code"] if drive_min is not None else "",
         state=row.get("state") or "planned",
         reason=row.get("reason") or "",
+        crew=row.get("crew") or "",
         travel_time_h=travel_h,
         arrives_at=survey.release_at + timedelta(hours=travel_h) if follows else None,
         leads_at=survey.release_at + timedelta(hours=LEADING_EDGE_SHARE * travel_h) if follows else None,

@@ -127,6 +127,6 @@ def _check_page(day, reading):
         reading=reading,
         check=check,
         chart=prediction and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l),
-        next=fieldsheet.next_stop(survey, day.plan, day.readings),
+        next=fieldsheet.next_stop(survey, day.plan, day.readings, current_user.name),
         now=day.now,
     )

@@ -1,0 +1,21 @@
+"""What the field sheet asks often: has anything changed, and what was this person shown."""
+
+from sqlalchemy import func, select
+
+from webapp.models import PlanVersion, Reading, ReadingEvent, Seen
+
+
+def counts_of(db, survey_id):
+    """Return (number of the newest plan version, readings, decisions about readings) of a survey, in one query."""
+    newest = select(func.max(PlanVersion.number)).where(PlanVersion.survey_id == survey_id)
+    readings = select(func.count(Reading.id)).where(Reading.survey_id == survey_id)
+    events = select(func.count(ReadingEvent.id)).join(Reading).where(Reading.survey_id == survey_id)
+    number, *others = db.execute(
+        select(newest.scalar_subquery(), readings.scalar_subquery(), events.scalar_subquery())
+    ).one()
+    return (number or 0, *others)
+
+
+def find_seen(db, survey_id, person_id):
+    """Return what of the field sheet a person was shown last, or None."""
+    return db.get(Seen, (survey_id, person_id))
