@@ -6,6 +6,7 @@ import threading
 import uuid
 import zipfile
 from datetime import UTC, datetime
+from functools import partial
 
 import pytest
 from alembic.autogenerate import compare_metadata
@@ -162,7 +163,7 @@ def test_two_copies_that_save_one_reading_at_once_store_it_once(at, survey, coun
     crews = [at("crew", copy) for copy in (0, 1)]
     for _ in range(6):
         form = reading(note="sent twice")
-        answers = at_once(*(lambda crew=crew: save(crew, survey, "D6", form) for crew in crews))
+        answers = at_once(*(partial(save, crew, survey, "D6", form) for crew in crews))
         assert [answer.status_code for answer in answers] == [303, 303]
         assert {answer.headers["X-Stored-Id"] for answer in answers} == {form["submission_id"]}
         assert count(Reading, Reading.id == form["submission_id"]) == 1
@@ -173,7 +174,7 @@ def test_two_copies_that_change_the_plan_at_once_make_one_version(at, survey, co
     number = count(PlanVersion)
     form = {"based_on": str(number), "name": "Side arm", "distance_km": "24", "drop_m": "0.3", "quality": "slight",
             "shape": "vertical", "version_reason": "seen today"}  # fmt: skip
-    answers = at_once(*(lambda lead=lead: lead.post(f"{survey}/plan/weirs/new", form) for lead in leads))
+    answers = at_once(*(partial(lead.post, f"{survey}/plan/weirs/new", form) for lead in leads))
     assert sorted(answer.status_code for answer in answers) == [303, 409]
     assert count(PlanVersion) == number + 1
 
