@@ -73,9 +73,10 @@ def _register_features(app):
     from webapp.review.views import bp as review
     from webapp.sag.views import bp as sag
     from webapp.surveys.views import bp as surveys
+    from webapp.trust.views import bp as trust
 
     login_manager.init_app(app)
-    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset):
+    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset, trust):
         app.register_blueprint(blueprint)
 
 

@@ -1,7 +1,7 @@
 """The `bankside` commands: serve, demo, backup, password."""
 
-import socket
 import sys
+from dataclasses import replace
 from datetime import UTC, datetime
 
 import click
@@ -21,6 +21,10 @@ def listening(command):
         click.option("--data", "data_dir", help="Folder of the database file. [BANKSIDE_DATA, else bankside-data]"),
         click.option("--host", help="Address to listen on. [BANKSIDE_HOST, else 0.0.0.0: every address]"),
         click.option("--port", type=click.IntRange(1, 65535), help="Port. [BANKSIDE_PORT, else 8080]"),
+        click.option("--https", is_flag=True, help="Serve HTTPS with a certificate made here, as phones need it."),
+        click.option(
+            "--http-port", type=click.IntRange(1, 65535), help="Plain port beside HTTPS. [the next after --port]"
+        ),
     ):
         command = option(command)
     return command
@@ -31,18 +35,18 @@ def listening(command):
 @click.option("--office-name", help="Name of the first office account, at the first start.")
 @click.option("--office-sign-in", help="Its sign-in name.")
 @click.option("--office-password", envvar="BANKSIDE_OFFICE_PASSWORD", help="Its password. [BANKSIDE_OFFICE_PASSWORD]")
-def serve(data_dir, host, port, office_name, office_sign_in, office_password):
+def serve(data_dir, host, port, https, http_port, office_name, office_sign_in, office_password):
     """Serve Bankside. The first start makes the database and the first office account."""
     config = _config(data_dir=data_dir, host=host, port=port)
     database = _open(config)
     _first_office(database, office_name, office_sign_in, office_password)
     database.engine.dispose()
-    _serve(config)
+    _serve_https(config, http_port) if https else _serve(config)
 
 
 @main.command()
 @listening
-def demo(data_dir, host, port):
+def demo(data_dir, host, port, https, http_port):
     """Load the demo survey into a data folder of its own, then serve it."""
     config = _config(data_dir=data_dir or "bankside-demo", host=host, port=port)
     from webapp import demo as demo_survey
@@ -55,7 +59,7 @@ def demo(data_dir, host, port):
     click.echo("Sign in as one of:")
     for sign_in, password, role in demo_survey.SIGN_INS:
         click.echo(f"  {role:7} {sign_in:8} password {password}")
-    _serve(config)
+    _serve_https(config, http_port) if https else _serve(config)
 
 
 @main.command()
@@ -148,29 +152,51 @@ def _serve(config):
     waitress_serve(app, host=config.host, port=config.port, threads=config.threads, ident=None)
 
 
-def welcome(config, network_address=None):
+def _serve_https(config, http_port):
+    """Serve HTTPS with a certificate of the data folder's own authority, and the trust page on a plain port."""
+    from webapp import authority as authorities
+    from webapp import create_app, https, reach
+
+    config = replace(config, secure_cookies=True)
+    http_port = http_port or (config.port + 1 if config.port < 65535 else config.port - 1)
+    if http_port == config.port:
+        raise click.ClickException("--http-port must differ from --port.")
+    names = reach.machine_names(config.host)
+    authority = authorities.read_or_make(config.data_dir, names)
+    certificate = authorities.server_certificate(authority, config.data_dir, names)
+    app = create_app(config, AUTHORITY=authority, PLAIN_PORT=http_port)
+    for line in [*welcome(config, scheme="https"), *_trust_lines(config, http_port, authority, certificate)]:
+        click.echo(line)
+    try:
+        https.serve(app, config, certificate, http_port, authority)
+    except OSError as taken:
+        raise click.ClickException(f"Cannot listen on ports {config.port} and {http_port}: {taken}") from taken
+
+
+def _trust_lines(config, http_port, authority, certificate):
+    from webapp import reach
+
+    left_out = ", ".join(certificate.left_out)
+    lines = [f"The authority was not made for {left_out}: see README, HTTPS."] if left_out else []
+    if (address := reach.address_for_phones(config.host)) is not None:
+        url = f"http://{address}:{http_port}/trust"
+        lines += [f"A phone that warns of the certificate is helped by {url}", _qr(url)]
+    return [*lines, "The fingerprint to compare on the phone:", f"  {authority.fingerprint}"]
+
+
+def welcome(config, network_address=None, scheme="http"):
     """Return the lines that say where Bankside is reached, with a QR code for phones."""
-    lines = [f"On this machine: http://127.0.0.1:{config.port}/"]
-    address = network_address or _network_address(config.host)
+    from webapp.reach import address_for_phones
+
+    lines = [f"On this machine: {scheme}://127.0.0.1:{config.port}/"]
+    address = network_address or address_for_phones(config.host)
     if address is None:
         lines.append("For phones: this machine listens to itself only, or is on no network.")
     else:
-        url = f"http://{address}:{config.port}/"
+        url = f"{scheme}://{address}:{config.port}/"
         lines += [f"For phones on the same network: {url}", _qr(url)]
     lines.append("Stop with Ctrl+C.")
     return lines
-
-
-def _network_address(host):
-    if host not in {"0.0.0.0", "::"}:
-        return None if host in {"127.0.0.1", "localhost", "::1"} else host
-    with socket.socket(socket.AF_INET, socket.SOCK_DGRAM) as probe:
-        try:
-            probe.connect(("192.0.2.1", 9))  # a documentation address: no packet is sent, only a route looked up
-        except OSError:
-            return None
-        address = probe.getsockname()[0]
-    return None if address.startswith("127.") else address
 
 
 def _qr(url):
