@@ -65,6 +65,7 @@ def create_app(config=None, **flask_settings):
 
 def _register_features(app):
     from webapp.dataset.views import bp as dataset
+    from webapp.fieldpack.views import bp as fieldpack
     from webapp.fieldsheet.views import bp as fieldsheet
     from webapp.people.access import login_manager
     from webapp.people.views import bp as people
@@ -76,7 +77,7 @@ def _register_features(app):
     from webapp.trust.views import bp as trust
 
     login_manager.init_app(app)
-    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset, trust):
+    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset, fieldpack, trust):
         app.register_blueprint(blueprint)
 
 

@@ -6,7 +6,7 @@ from importlib.resources import files
 from pathlib import Path
 from urllib.parse import urlsplit
 
-from flask import current_app, redirect, request, url_for
+from flask import current_app, redirect, request, send_from_directory, url_for
 
 LOOKS = ("light", "dark")
 
@@ -14,6 +14,7 @@ LOOKS = ("light", "dark")
 def register(app):
     """Add the switch, and what every page needs to draw itself."""
     app.add_url_rule("/look", "look", _switch, methods=["POST"])
+    app.add_url_rule("/scripts/<mark>/<name>", "script", _script)
     app.context_processor(lambda: {"look": _look(), "asset": asset})
 
 
@@ -21,7 +22,22 @@ def asset(name):
     """Return a static file's address with a mark of its content, so that a new version is fetched at once."""
     if name == "htmx.js":
         return url_for("htmx", v=_mark(str(files("js_lib_htmx") / "static/htmx/htmx.min.js")))
+    if name.endswith(".js"):
+        return url_for("script", mark=scripts_mark(current_app.static_folder), name=name)
     return url_for("static", filename=name, v=_mark(str(Path(current_app.static_folder) / name)))
+
+
+@lru_cache(maxsize=4)
+def scripts_mark(folder):
+    """Return the mark of all scripts: they import one another, so they must be of one version."""
+    whole = b"".join(path.read_bytes() for path in sorted(Path(folder).glob("*.js")))
+    return hashlib.sha256(whole).hexdigest()[:10]
+
+
+def _script(mark, name):
+    """Send a script; under another version's mark it is sent too, but not to be kept."""
+    current = mark == scripts_mark(current_app.static_folder)
+    return send_from_directory(current_app.static_folder, name, max_age=31536000 if current else 0)
 
 
 @lru_cache(maxsize=64)

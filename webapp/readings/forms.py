@@ -207,7 +207,7 @@ def with_suggestion(source, findings, show):
 def suggested_texts(finding, show):
     """Return what a finding suggests, as somebody would type it into the form."""
     texts = {}
-    for key, value in finding.suggestion.items():
+    for key, value in (finding.suggestion or {}).items():
         name = FIELD_OF.get(key, key)
         if key in ("pressure_source", "pressure_unit"):
             texts[name] = value

@@ -19,6 +19,10 @@ from webapp.readings.surroundings import where
 from webapp.surveys import queries as survey_queries
 
 bp = Blueprint("readings", __name__)
+NOT_YOURS = (
+    "Somebody else recorded this reading, and it is stored under their name only. It waits on this phone until they "
+    "sign in here."
+)
 OPTIONS = {
     "pressure_sources": columns.PRESSURE_SOURCES,
     "pressure_units": columns.PRESSURE_UNITS,
@@ -49,6 +53,8 @@ def save(survey_id, code):
     queries.get_station(db, survey_id, code)
     day = Day(db, survey)
     form = request.form.to_dict()
+    if form.get("author_id", current_user.id) != current_user.id:
+        return _belongs_to_another(survey, code, day.plan, form)
     show = forms.show_of_form(form, Show.of(survey))
     reading, errors = forms.parse_reading(form, show, code, day.now)
     asks = day.asks(reading)
@@ -89,6 +95,13 @@ def _stored(day, reading):
     return response
 
 
+def _belongs_to_another(survey, code, plan, form):
+    """Answer a reading that somebody else recorded on this phone: it waits for them, under their name."""
+    response = _form_page(survey, Show.of(survey), code, plan, form, 409, conflict=NOT_YOURS)
+    response.headers["X-Belongs-To"] = "another"
+    return response
+
+
 def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(), conflict="", fresh=False):
     kept, keep = forms.answers(asks, form)
     station, place = where(plan, code)
@@ -104,7 +117,7 @@ def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(),
         place=place,
         form=form,
         errors=errors or {},
-        asks=[(one, forms.suggestion_words(one, show)) for one in asks],
+        asks=[(one, forms.suggestion_words(one, show), forms.suggested_texts(one, show)) for one in asks],
         kept=kept,
         keep=keep,
         conflict=conflict,

@@ -1,0 +1,48 @@
+// The page about this phone: every reading it keeps, what became of it, and what to do about it.
+import { records } from "./waiting_store.js";
+import { clock, person, plural } from "./phone.js";
+import { send } from "./sending.js";
+
+const main = document.querySelector("main");
+const part = (name) => main.querySelector(`[data-${name}]`);
+
+function state(record) {
+  if (record.state === "sent") return `On the server since ${clock(record.sentAt)}.`;
+  if (record.state === "refused") return `The server did not take it: ${record.reason}`;
+  if (record.author !== person) return `Waits until ${record.authorName} signs in on this phone.`;
+  return `Waits since ${clock(record.keptAt)}.`;
+}
+
+function card(record) {
+  const item = document.querySelector("#waiting-record").content.firstElementChild.cloneNode(true);
+  const { do_mg_l: oxygen, do_percent: percent, taken_at: taken } = record.fields;
+  const read = oxygen ? `${oxygen} mg/L` : `${percent} %`;
+  item.querySelector("[data-title]").textContent = `${record.code}, ${taken.replace("T", " ")}: ${read}, ${record.surveyName}`;
+  item.querySelector("[data-state]").textContent = state(record);
+  const open = item.querySelector("[data-open]");
+  open.hidden = record.author !== person;
+  open.textContent = record.state === "sent" ? "See its check" : record.state === "refused" ? "Correct and save again" : "Open it";
+  open.href = record.state === "sent"
+    ? `/surveys/${record.survey}/readings/${record.id}/check` : `${record.url}#waiting=${record.id}`;
+  return item;
+}
+
+async function show() {
+  const kept = await records();
+  const unsent = kept.filter((one) => one.state !== "sent");
+  const sent = kept.filter((one) => one.state === "sent" && one.author === person).reverse();
+  part("nothing").hidden = unsent.length > 0;
+  part("unsent").replaceChildren(...unsent.map(card));
+  part("send-now").hidden = unsent.length === 0;
+  part("sent-part").hidden = sent.length === 0;
+  part("sent").replaceChildren(...sent.map(card));
+}
+
+part("send-now").addEventListener("click", async () => {
+  part("outcome").textContent = "Asking the server…";
+  await send(true);
+  const left = (await records()).filter((one) => one.state === "waiting" && one.author === person).length;
+  part("outcome").textContent = left ? `${plural(left, "reading", "readings")} could not be sent yet.` : "All sent.";
+});
+document.addEventListener("bankside:waiting", show);
+show();

@@ -1,0 +1,73 @@
+// A reading is written on this phone first and sent after: the server's answer says whether it may be let go.
+import { changeRecord, keepRecord } from "./waiting_store.js";
+import { person, phone } from "./phone.js";
+import { judge, send } from "./sending.js";
+import { cannotKeep, draftKey, fieldsOf, fill } from "./typing.js";
+
+// The form's own request gives up before the sender takes the reading over.
+const SENDER_LATER_MS = 20000;
+let saving;
+
+function recordOf(it, button) {
+  const { survey, surveyName, code } = it.dataset;
+  const fields = fieldsOf(it, button);
+  return {
+    v: 1,
+    id: fields.submission_id,
+    url: it.getAttribute("action"),
+    survey,
+    surveyName,
+    code,
+    fields,
+    author: fields.author_id || person,
+    authorName: phone.dataset.name,
+    keptAt: Date.now(),
+    state: "waiting",
+    reason: "",
+    tries: 0,
+    nextAt: Date.now() + SENDER_LATER_MS,
+  };
+}
+
+async function keepFirst(event) {
+  const it = event.target;
+  if (!it.matches?.("form[data-waiting]")) return;
+  event.preventDefault();
+  if (saving) return;
+  const button = event.detail.triggeringEvent?.submitter;
+  if (button?.dataset.sets) fill(it, JSON.parse(button.dataset.sets));
+  saving = recordOf(it, button);
+  await keepRecord(saving, draftKey(it)).catch(() => {
+    saving.lost = true;
+    cannotKeep();
+  });
+  event.detail.issueRequest(true);
+}
+
+async function answered({ detail: { requestConfig, xhr } }) {
+  if (!saving || !requestConfig.elt.matches("form[data-waiting]")) return;
+  const record = saving;
+  saving = undefined;
+  if (record.lost) return;
+  const verdict = xhr.status ? judge(record, {
+    status: xhr.status,
+    stored: xhr.getResponseHeader("X-Stored-Id"),
+    owner: xhr.getResponseHeader("X-Belongs-To"),
+    address: xhr.responseURL,
+    html: xhr.responseText,
+    wait: Number(xhr.getResponseHeader("Retry-After")) || 0,
+  }) : { changes: {} };
+  await changeRecord(record, { nextAt: 0, ...verdict.changes });
+  if (verdict.changes.state) return;
+  document.dispatchEvent(new CustomEvent("bankside:kept", { detail: record }));
+  send();
+}
+
+if (person) {
+  document.addEventListener("htmx:confirm", keepFirst);
+  document.addEventListener("htmx:afterRequest", answered);
+  // A sign-in page is no answer to a reading.
+  document.addEventListener("htmx:beforeSwap", (event) => {
+    if (event.detail.xhr.responseURL.includes("/sign-in")) event.detail.shouldSwap = false;
+  });
+}
