@@ -1,6 +1,7 @@
 """Places for text on a chart, so that no two overlap. Sizes are those of the viewBox."""
 
 from dataclasses import dataclass
+from functools import cached_property, lru_cache
 
 TEXT_SIZE = 13
 # Letters of ordinary sans-serif faces are narrower than this share of the text's size, on average.
@@ -45,7 +46,7 @@ class Label:
     text: str
     kind: str = ""
 
-    @property
+    @cached_property
     def box(self):
         """Return the rectangle the text takes."""
         width = text_width(self.text, bold=self.kind == "code")
@@ -113,8 +114,9 @@ class _Place:
         return self.row >= other.row and other.box.left - 2 < self.leader_x < other.box.right + 2
 
 
+@lru_cache(maxsize=128)
 def in_rows(marks, left, right, top, row_height, most_rows):
-    """Return {index: (Label, row)} for marks (x, text) under an axis, in rows, each with a leader down to it.
+    """Return {index: (Label, row)} for a tuple of marks (x, text) under an axis, in rows, each with a leader to it.
 
     No label overlaps another or is crossed by a leader, and there are as few rows as that takes. Where most_rows do not
     suffice, or the marks are too many to try every way, some are left out.

@@ -7,20 +7,32 @@ from webapp.display import hours, signed
 
 @dataclass(frozen=True)
 class Row:
-    """A row of the chart's table, as text; what names the row's kind."""
+    """A row of the chart's table, as text; what names the row's kind, today is empty without an estimate."""
 
     what: str
     place: str
     travel_time: str
     predicted: str
     band: str
+    today: str
     reading: str
     difference: str
 
 
-def sentence_of(show, prediction, readings):
+def sentence_of(show, prediction, readings, today=None):
     """Return the chart's numbers in a few words."""
-    return f"{_predicted_words(show, prediction)} {_lowest_words(show, readings)}".strip()
+    said = [_today_words(show, today)] if today is not None else []
+    return " ".join([*said, _predicted_words(show, prediction), _lowest_words(show, readings)]).strip()
+
+
+def _today_words(show, today):
+    lowest, place = today.estimate.critical_do_mg_l, today.estimate.critical_km
+    further = " or further" if today.interval_is_open_below else ""
+    return (
+        f"Today's sag is lowest with {show.text('oxygen', lowest.median, 1)} at {show.place(place.median)} (90 %: "
+        f"{show.number('oxygen', lowest.low, 1)} to {show.text('oxygen', lowest.high, 1)}, "
+        f"{between(show, place.low, place.high)}{further})."
+    )
 
 
 def _predicted_words(show, prediction):
@@ -64,12 +76,14 @@ def _lowest_words(show, readings):
     return f"Lowest reading so far {show.text('oxygen', lowest.do_mg_l, 1)} at {lowest.label}." if lowest else ""
 
 
-def description(show, prediction, readings, criterion):
+def description(show, prediction, readings, criterion, today=None):
     """Return what the picture shows, for a screen reader."""
     words = [
         f"Oxygen in mg/L along the river from {show.place(prediction.river.from_km)} to "
         f"{show.place(prediction.river.to_km)}, as the plan predicts it, with a 90 % band."
     ]
+    if today is not None:
+        words.append("Today's sag, estimated from the readings, is drawn over it with its own 90 % band.")
     if readings:
         words.append(f"{len(readings)} {'reading' if len(readings) == 1 else 'readings'}.")
     if criterion is not None:
@@ -78,30 +92,46 @@ def description(show, prediction, readings, criterion):
     return " ".join(words)
 
 
-def rows_of(show, prediction, readings, marked, axis_km):
-    """Return the table's Rows, down the river: the places of the axis, the critical point, and every reading."""
+def rows_of(show, prediction, readings, marked, axis_km, today=None, candidates=()):
+    """Return the table's Rows, down the river: the places of the axis, the lowest points, where next, every reading."""
     rows = [(km, 0, "along the river", None) for km, _ in axis_km]
     rows.append((prediction.critical.distance_km, 1, "predicted lowest", None))
+    if today is not None:
+        rows.append((today.estimate.critical_km.median, 1, "today's lowest", None))
+    rows += [(one.distance_km, 3, f"where next, {number}", None) for number, one in enumerate(candidates, start=1)]
     for one in readings:
         what = f"reading at {one.label}" + (", set aside" if one.state != "used" else "")
         what += ", this one" if marked is not None and getattr(one, "id", None) == marked else ""
         rows.append((one.distance_km, 2, what, one.do_mg_l))
     rows.sort(key=lambda row: row[:3])
     predicted = prediction.along([row[0] for row in rows])
-    return tuple(_row(show, here, km, what, do) for here, (km, _, what, do) in zip(predicted, rows, strict=True))
+    return tuple(
+        _row(show, here, today and today.at(km), km, what, do)
+        for here, (km, _, what, do) in zip(predicted, rows, strict=True)
+    )
 
 
-def _row(show, here, km, what, do_mg_l):
+def _row(show, here, now, km, what, do_mg_l):
     place = show.number("place", km)
     reading = show.number("oxygen", do_mg_l)
+    today = _with_band(show, now) if now else ""
     if here is None:
-        return Row(what, place, "–", "–", "–", reading, "–")
+        return Row(what, place, "–", "–", "–", today, reading, "–")
     return Row(
         what=what,
         place=place,
         travel_time=("\u2212" if here.travel_time_h < 0 else "") + hours(here.travel_time_h),
         predicted=show.number("oxygen", here.do_mg_l),
-        band=f"{show.number('oxygen', here.low_mg_l, 1)} to {show.number('oxygen', here.high_mg_l, 1)}",
+        band=_band(show, here),
+        today=today,
         reading=reading,
         difference="–" if do_mg_l is None else signed(do_mg_l - here.do_mg_l),
     )
+
+
+def _with_band(show, point):
+    return f"{show.number('oxygen', point.do_mg_l)} ({_band(show, point)})"
+
+
+def _band(show, point):
+    return f"{show.number('oxygen', point.low_mg_l, 1)} to {show.number('oxygen', point.high_mg_l, 1)}"

@@ -3,18 +3,22 @@
 A chart holds tuples of Bands and Lines: a further line, as of a fitted sag, is one more of each.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
+
+import numpy as np
 
 from webapp.chart_axes import Scale, Tick, hour_step, multiples, plain, round_step
 from webapp.chart_labels import Box, Label, beside, in_rows, shortened, text_width, without_collisions
-from webapp.chart_words import Row, description, rows_of, sentence_of
+from webapp.chart_lines import corners, points_text
+from webapp.chart_words import description, rows_of, sentence_of
 
 WIDTH = 360
 LEFT, RIGHT, TOP, BOTTOM = 30, 350, 24, 214
 ROW_HEIGHT, MOST_ROWS = 17, 6
 LONGEST_NAME = 18
-# How far a drawn line may lie from its points.
-_NEAR = 0.25
+# The numbered mark of a candidate, and how far below its line it stands.
+MARK, STEM = 18, 26
 FEATURE_WORDS = {
     "outfall": "the outfall",
     "tributary": "water joins",
@@ -25,7 +29,7 @@ FEATURE_WORDS = {
 
 @dataclass(frozen=True)
 class Line:
-    """A line through points, by its kind ("plan")."""
+    """A line through points, by its kind ("plan" or "today")."""
 
     kind: str
     points: str
@@ -44,12 +48,23 @@ class Dot:
 
 @dataclass(frozen=True)
 class Critical:
-    """The predicted lowest point and the bar of its interval along the river."""
+    """A lowest point and the bar of its interval along the river, by its kind ("plan" or "today")."""
 
+    kind: str
     x: float
     y: float
     left: float
     right: float
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """A place for the next station: a numbered mark, on a stem down from the line that today's sag has there."""
+
+    x: float
+    line_y: float
+    y: float
+    number: int
 
 
 @dataclass(frozen=True)
@@ -74,46 +89,52 @@ class SagChart:
     hour_ticks: tuple[Label, ...]
     bands: tuple[Line, ...]
     lines: tuple[Line, ...]
-    critical: Critical | None
+    criticals: tuple[Critical, ...]
     criterion_y: float | None
     dots: tuple[Dot, ...]
+    candidates: tuple[Candidate, ...]
     features: tuple[Feature, ...]
     labels: tuple[Label, ...]
     legend: tuple[tuple[str, str], ...]
     sentence: str
     description: str
-    rows: tuple[Row, ...]
+    table: Callable
     width: int = WIDTH
     left: int = LEFT
     right: int = RIGHT
     top: int = TOP
     bottom: int = BOTTOM
 
+    @property
+    def has_today(self):
+        """Return whether today's sag is drawn."""
+        return len(self.lines) > 1
 
-def sag_chart(show, prediction, readings=(), marked=None, criterion=None, features=True):
+    @property
+    def rows(self):
+        """Return the Rows of the table, worked out when they are asked for: not every page prints them."""
+        return self.table()
+
+
+def sag_chart(show, prediction, readings=(), marked=None, criterion=None, features=True, today=None, candidates=()):
     """Return the SagChart of a Prediction.
 
     readings have distance_km, do_mg_l, state ("used" or "set aside") and label, their station's code, and an id or not;
     marked is the id of the one to make stand out, criterion the oxygen to keep above [mg/L], features whether to draw
-    what joins the river, what is taken out, and its weirs.
+    what joins the river, what is taken out, and its weirs; today the sag estimated from readings, a sag.estimate.Today,
+    drawn beside the plan's; candidates have distance_km, in the order they are offered.
     """
     readings = [one for one in readings if one.do_mg_l is not None]
     along = _distance_scale(prediction, readings)
-    oxygen = _oxygen_scale(prediction, readings, criterion)
-    curve = _points(along, oxygen, prediction.grid_km, prediction.do_mg_l)
+    oxygen = _oxygen_scale(prediction, readings, criterion, today)
     marks, names, strip_height = _features(prediction, along) if features else ((), (), 0)
     distance_y = BOTTOM + strip_height + (6 if strip_height else 0)
     hours_y = distance_y + 42
     dots = tuple(_dot(one, along, oxygen, marked) for one in readings)
-    critical = _critical(prediction, along, oxygen)
+    bands, lines, criticals = _sags(prediction, today, along, oxygen)
+    next_marks = _candidates(candidates, today, prediction, along, oxygen)
     criterion_y = None if criterion is None else oxygen.at(criterion)
-    taken = [*_boxes(curve), *(_around(dot) for dot in dots), _around(critical), _interval_box(critical)]
-    labels = _criterion_label(show, criterion, criterion_y, taken)
-    labels += _codes(dots, [*taken, *(label.box for label in labels)])
-    edge = [
-        *_points(along, oxygen, prediction.grid_km, prediction.high_mg_l),
-        *reversed(_points(along, oxygen, prediction.grid_km, prediction.low_mg_l)),
-    ]
+    labels = _labels(show, criterion, criterion_y, lines, dots, criticals, next_marks)
     return SagChart(
         height=hours_y + 36,
         strip_y=distance_y,
@@ -122,18 +143,66 @@ def sag_chart(show, prediction, readings=(), marked=None, criterion=None, featur
         oxygen_ticks=tuple(Tick(oxygen.at(value), plain(value, 1)) for value in _oxygen_values(oxygen)),
         distance_ticks=_distance_ticks(show, along, distance_y + 16),
         hour_ticks=_hour_ticks(prediction, along, hours_y + 16),
-        bands=(Line("plan", _text(edge)),),
-        lines=(Line("plan", _text(curve)),),
-        critical=critical,
+        bands=tuple(Line(kind, points_text(points)) for kind, points in bands),
+        lines=tuple(Line(kind, points_text(points)) for kind, points in lines),
+        criticals=criticals,
         criterion_y=criterion_y,
         dots=dots,
+        candidates=next_marks,
         features=marks,
         labels=(*labels, *names),
-        legend=_legend(criterion, dots, marks),
-        sentence=sentence_of(show, prediction, readings),
-        description=description(show, prediction, readings, criterion),
-        rows=rows_of(show, prediction, readings, marked, _kilometres(show, along)),
+        legend=_legend(criterion, dots, marks, today, next_marks),
+        sentence=sentence_of(show, prediction, readings, today),
+        description=description(show, prediction, readings, criterion, today),
+        table=lambda: rows_of(show, prediction, readings, marked, _kilometres(show, along), today, candidates),
     )  # fmt: skip
+
+
+def _sags(prediction, today, along, oxygen):
+    """Return bands and lines as (kind, points), and the Criticals: the plan's, and today's over it."""
+    sags = [("plan", prediction.grid_km, (prediction.low_mg_l, prediction.do_mg_l, prediction.high_mg_l))]
+    point, interval = prediction.critical, prediction.critical_interval
+    places = [("plan", point.distance_km, point.do_mg_l, interval.low_km, interval.high_km)]
+    if today is not None:
+        estimate = today.estimate
+        sags.append(("today", estimate.grid_km, today.bands))
+        place = estimate.critical_km
+        places.append(("today", place.median, estimate.critical_do_mg_l.median, place.low, place.high))
+    bands, lines = [], []
+    for kind, grid_km, values in sags:
+        low, middle, high = (corners(grid_km, one, along, oxygen) for one in values)
+        bands.append((kind, [*high, *reversed(low)]))
+        lines.append((kind, middle))
+    criticals = tuple(
+        Critical(kind, along.at(km), oxygen.at(do), along.at(low), along.at(high)) for kind, km, do, low, high in places
+    )
+    return bands, lines, criticals
+
+
+def _candidates(offers, today, prediction, along, oxygen):
+    """Return the Candidates of the places offered, below today's line, else the plan's; none covers another."""
+    found = []
+    for number, offer in enumerate(offers, start=1):
+        here = (today and today.at(offer.distance_km)) or prediction.at(offer.distance_km)
+        if here is None:
+            continue
+        x, line_y = along.at(offer.distance_km), oxygen.at(here.do_mg_l)
+        y = line_y + STEM
+        while any(abs(one.x - x) < MARK + 3 and abs(one.y - y) < MARK + 3 for one in found):
+            y += MARK + 4
+        if y > BOTTOM - MARK / 2:
+            y = line_y - STEM - (y - line_y - STEM)
+        found.append(Candidate(x, line_y, round(y, 1), number))
+    return tuple(found)
+
+
+def _labels(show, criterion, criterion_y, lines, dots, criticals, candidates):
+    """Return the Labels of the criterion and of the stations, clear of everything drawn."""
+    taken = [box for _, points in lines for box in _boxes(points)]
+    taken += [_around(mark) for mark in (*dots, *criticals, *candidates)]
+    taken += [_interval_box(one) for one in criticals]
+    labels = _criterion_label(show, criterion, criterion_y, taken)
+    return labels + _codes(dots, [*taken, *(label.box for label in labels)])
 
 
 def _distance_title(show):
@@ -147,8 +216,10 @@ def _distance_scale(prediction, readings):
     return Scale(min(places), max(places), LEFT, RIGHT)
 
 
-def _oxygen_scale(prediction, readings, criterion):
+def _oxygen_scale(prediction, readings, criterion, today):
     highest = max([float(prediction.high_mg_l.max()), criterion or 0, *(one.do_mg_l for one in readings)])
+    if today is not None:
+        highest = max(highest, float(today.bands[2].max()))
     step = round_step(max(highest, 4), 6)
     return Scale(0, step * -(-highest * 1.02 // step), BOTTOM, TOP)
 
@@ -157,41 +228,9 @@ def _oxygen_values(oxygen):
     return multiples(0, oxygen.to_value, max(round_step(oxygen.to_value, 6), 1))
 
 
-def _points(along, oxygen, distances_km, values_mg_l):
-    """Return the corners of a line: no more than it takes to stay within a quarter of a unit of all its points."""
-    pairs = zip(distances_km.tolist(), values_mg_l.tolist(), strict=True)
-    points = [(along.at(km), oxygen.at(value)) for km, value in pairs]
-    kept, waiting = points[:1], []
-    for point in points[1:]:
-        if any(_off_line(kept[-1], point, passed) > _NEAR for passed in waiting):
-            kept.append(waiting[-1])
-            waiting = []
-        waiting.append(point)
-    return [*kept, points[-1]]
-
-
-def _off_line(start, end, point):
-    """Return how far above or below the line between two points a third one lies."""
-    if end[0] == start[0]:
-        return abs(point[0] - start[0]) + (0 if min(start[1], end[1]) <= point[1] <= max(start[1], end[1]) else 1)
-    return abs(start[1] + (end[1] - start[1]) * (point[0] - start[0]) / (end[0] - start[0]) - point[1])
-
-
-def _text(points):
-    """Return points as SVG wants them, always with a decimal dot."""
-    return " ".join(f"{x:.1f},{y:.1f}" for x, y in points)
-
-
 def _dot(reading, along, oxygen, marked):
     is_marked = marked is not None and getattr(reading, "id", None) == marked
     return Dot(along.at(reading.distance_km), oxygen.at(reading.do_mg_l), reading.state, is_marked, reading.label)
-
-
-def _critical(prediction, along, oxygen):
-    point, interval = prediction.critical, prediction.critical_interval
-    return Critical(
-        along.at(point.distance_km), oxygen.at(point.do_mg_l), along.at(interval.low_km), along.at(interval.high_km)
-    )
 
 
 def _kilometres(show, along):
@@ -207,23 +246,15 @@ def _distance_ticks(show, along, y):
 
 def _hour_ticks(prediction, along, y):
     """Return the round hours of travel, where along the river they are; slow reaches stretch them."""
-    hours, places = prediction.travel_time_h.tolist(), prediction.grid_km.tolist()
-    step = hour_step(hours[-1], 6)
+    last = float(prediction.travel_time_h[-1])
+    step = hour_step(last, 6)
+    hours = multiples(0, last, step)
+    places = np.interp(hours, prediction.travel_time_h, prediction.grid_km).tolist()
     labels = [
-        Label(along.at(_place_of(value, hours, places)), y, "middle", plain(value, min(step, 1) if step < 1 else 1))
-        for value in multiples(0, hours[-1], step)
+        Label(along.at(km), y, "middle", plain(value, min(step, 1) if step < 1 else 1))
+        for value, km in zip(hours, places, strict=True)
     ]
     return tuple(without_collisions(labels))
-
-
-def _place_of(hour, hours, places):
-    """Return where the water is after so many hours, between points of the grid. [km]"""
-    for (h1, p1), (h2, p2) in zip(
-        zip(hours, places, strict=True), zip(hours[1:], places[1:], strict=True), strict=False
-    ):
-        if h1 <= hour <= h2:
-            return p1 if h2 == h1 else p1 + (p2 - p1) * (hour - h1) / (h2 - h1)
-    return places[-1]
 
 
 def _features(prediction, along):
@@ -234,7 +265,7 @@ def _features(prediction, along):
     marks = [
         (along.at(km), shortened("outfall" if kind == "outfall" else name, LONGEST_NAME)) for km, kind, name in found
     ]
-    placed = in_rows(marks, LEFT, WIDTH - 1, BOTTOM + 8, ROW_HEIGHT, MOST_ROWS)
+    placed = in_rows(tuple(marks), LEFT, WIDTH - 1, BOTTOM + 8, ROW_HEIGHT, MOST_ROWS)
     rows = 1 + max((row for _, row in placed.values()), default=-1)
     features = tuple(
         Feature(x, kind, placed[index][0].y if index in placed else BOTTOM)
@@ -297,12 +328,17 @@ def _codes(dots, taken):
     return labels
 
 
-def _legend(criterion, dots, features):
+def _legend(criterion, dots, features, today, candidates):
     """Return (symbol, words) for what the chart shows and no more."""
-    lines = [("plan", "predicted"), ("band", "its 90 % band"), ("critical", "predicted lowest, with its 90 % interval")]
+    plan = "planned" if today is not None else "predicted"
+    lines = []
+    if today is not None:
+        lines += [("today", "today's sag"), ("today band", "its 90 % band"), ("today critical", "its lowest, 90 %")]
+    lines += [("plan", plan), ("band", "its 90 % band"), ("critical", f"{plan} lowest, with its 90 % interval")]
     states = {dot.state for dot in dots}
     lines += [("used", "reading")] * ("used" in states) + [("aside", "reading set aside")] * ("set aside" in states)
     lines += [("marked", "this reading")] * any(dot.marked for dot in dots)
+    lines += [("candidate", "where next, by rank")] * bool(candidates)
     lines += [("criterion", "criterion")] * (criterion is not None)
     kinds = {feature.kind for feature in features}
     return tuple(lines + [(kind, words) for kind, words in FEATURE_WORDS.items() if kind in kinds])

@@ -5,7 +5,6 @@ from datetime import timedelta
 
 from calc.sag import predict
 from demo_survey import make
-from webapp.models import Survey
 from webapp.plan import service as plan_service
 from webapp.readings.new import NewReading
 from webapp.readings.service import add_reading

@@ -69,22 +69,23 @@ def test_before_the_first_reading_the_plot_shows_the_prediction_alone(sag_text, 
     assert 'class="mark-used"' not in text
 
 
-def test_lowest_reading_is_told_first_with_its_difference_and_the_criterion(sag_text, read):
+def test_answer_comes_first_then_the_lowest_reading_and_the_criterion(sag_text, read):
     read("D3", 4.4)
     read("D5", 3.0, 4)
     read("D6", 3.6, 6)
-    text = sag_text()
-    assert "3.00 <span" in text.split("<svg")[0]
-    assert "lower than predicted there" in text
-    assert "Below the criterion of 5.0 mg/L" in text
-    assert "Stations above and below it were read" in text
+    before_the_plot = sag_text().split("<svg")[0]
+    assert before_the_plot.index('class="notice answer') < before_the_plot.index("3.00 <span")
+    assert "Below the criterion of 5.0 mg/L" in " ".join(before_the_plot.replace("</strong>", "").split())
 
 
 @pytest.mark.parametrize(
     ("oxygen", "says"),
     [
-        ((4.0, 3.5, 3.0), "D5 is the last station read downstream"),
-        ((3.0, 3.5, 4.0), "D3 is the first station read below the outfall"),
+        (
+            (4.0, 3.5, 3.0),
+            "Open below: the lowest reading, 3.0 mg/L at D5, is your last station. Go on downstream.",
+        ),
+        ((3.0, 3.5, 4.0), "Open above: the lowest reading, 3.0 mg/L at D3, is your first station. Read further up."),
     ],
 )
 def test_lowest_at_an_end_leaves_that_side_open(sag_text, read, oxygen, says):
@@ -93,9 +94,11 @@ def test_lowest_at_an_end_leaves_that_side_open(sag_text, read, oxygen, says):
     assert says in sag_text()
 
 
-def test_single_station_leaves_all_open(sag_text, read):
+def test_single_station_is_not_enough(sag_text, read):
     read("D4", 3.4)
-    assert "Nothing else was read below the outfall yet" in sag_text()
+    text = sag_text()
+    assert "Not yet: 1 of at least 4 stations with a reading that counts." in text
+    assert 'class="line-today"' not in text
 
 
 def test_reading_above_the_outfall_is_no_low_point(sag_text, read):

@@ -1,7 +1,7 @@
 """Today's sag: calc's estimate from the readings that count, kept while neither plan nor readings change."""
 
 from dataclasses import dataclass, field
-from functools import lru_cache
+from functools import cached_property, lru_cache
 
 import numpy as np
 
@@ -26,7 +26,7 @@ class SagPoint:
 
 @dataclass(frozen=True)
 class Today:
-    """Today's sag: what counted, calc's Estimate, and the Prediction under the day's conditions that it started from."""
+    """Today's sag: what counted, calc's Estimate, and the Prediction of the day that it started from."""
 
     prediction: Prediction
     counted: tuple[Counted, ...]
@@ -37,6 +37,12 @@ class Today:
     def stations_read(self):
         """Return how many stations below the outfall count."""
         return len(self.estimate.stations_km)
+
+    @cached_property
+    def bands(self):
+        """Return the low end, the middle and the high end of today's sag along the estimate's grid_km. [mg/L]"""
+        found = self.estimate.do_at(self.estimate.grid_km)
+        return found.low, found.median, found.high
 
     @property
     def enough(self):

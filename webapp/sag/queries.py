@@ -1,0 +1,23 @@
+"""Decisions of a survey. Whoever asks has shown by surveys.queries.get_survey that they are on it."""
+
+from sqlalchemy import select
+from sqlalchemy.orm import joinedload
+
+from webapp.models import Decision, PlanVersion
+
+
+def decisions_of(db, survey_id):
+    """Return the survey's decisions with who made them, in the order they were made."""
+    query = select(Decision).where(Decision.survey_id == survey_id).options(joinedload(Decision.made_by))
+    return db.scalars(query.order_by(Decision.made_at, Decision.id)).all()
+
+
+def find_decision(db, decision_id):
+    """Return the decision with this id, of whatever survey, or None."""
+    return db.get(Decision, decision_id)
+
+
+def plan_numbers(db, survey_id):
+    """Return the number of each plan version of a survey, by its id."""
+    query = select(PlanVersion.id, PlanVersion.number).where(PlanVersion.survey_id == survey_id)
+    return dict(db.execute(query).tuples().all())
