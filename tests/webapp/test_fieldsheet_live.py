@@ -156,7 +156,7 @@ def test_moved_release_reaches_the_open_sheet_with_both_times(app, survey, phone
     set_survey(app, survey, release_at=RELEASE + timedelta(minutes=40))
     page = phone.poll().text
     assert "Release: Wed 12 Aug 06:40, before: Wed 12 Aug 06:00." in page
-    assert "The parcel&#39;s times changed" in page
+    assert "The parcel comes 40 min later at D1, 40 min later at D8." in page
     assert MARK in card(page, "D3") and "it was Wed 12 Aug" in card(page, "D3")
     assert MARK not in card(page, "U1")
 
@@ -167,6 +167,16 @@ def test_measured_flow_moves_the_parcels_times_on_the_open_sheet(phone, change):
     page = phone.poll().text
     assert "Why the plan changed: gauged at dawn" in page and "it was" in card(page, "D6")
     assert card(page, "D6") != before
+    assert "Times follow what the day showed." in page and "later at D8" in page
+
+
+def test_new_time_is_not_marked_where_the_station_is_read_already(app, survey, people, phone, change):
+    with app.extensions["bankside_database"].writing() as session:
+        new = NewReading("8e7f2d3c-0000-4000-8000-000000000002", "D6", RELEASE + timedelta(hours=2), do_mg_l=6.42)
+        add_reading(session, survey, new, people["lead"].id, current_plan(session, survey.id), new.taken_at)
+    change("gauged at dawn", day=[{"river_flow_m3_s": 0.9}])
+    page = phone.poll().text
+    assert MARK not in card(page, "D6") and MARK in card(page, "D7")
 
 
 def test_station_given_to_a_person_says_so_to_them_and_to_others(phone, change, people, browser_as, sheet):

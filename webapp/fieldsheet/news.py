@@ -10,6 +10,7 @@ from datetime import timedelta
 
 from sqlalchemy.exc import IntegrityError
 
+from webapp.display import hours
 from webapp.fieldsheet import queries
 from webapp.models import Seen, now
 from webapp.plan.queries import get_version
@@ -41,7 +42,7 @@ def news_of(db, survey, show, plan_version, seen, person_name):
         before = show.day_clock(seen.release_at) if seen.release_at else "not set"
         lines.insert(0, f"Release: {show.day_clock(survey.release_at)}, before: {before}.")
     if was_at:
-        lines.append("The parcel's times changed; each station shows the new one.")
+        lines.append(_shift_words(survey, plan_version, was_at))
     if number != seen.plan_number and plan_version.reason:
         lines.append(f"Why the plan changed: {plan_version.reason}")
     return News(tuple(lines), marks, was_at)
@@ -109,3 +110,15 @@ def _moved_times(survey, old_release_at, old, new):
         if abs(survey.release_at + timedelta(hours=after[code].travel_time_h) - was) >= _A_SHIFT:
             moved[code] = was
     return moved
+
+
+def _shift_words(survey, plan_version, was_at):
+    """Return how much later or earlier the parcel comes, at the first and the last station where that moved."""
+    expected = expected_at_stations(survey, plan_version)
+    codes = sorted(was_at, key=lambda code: expected[code].distance_km)
+    words = []
+    for code in dict.fromkeys((codes[0], codes[-1])):
+        shift = survey.release_at + timedelta(hours=expected[code].travel_time_h) - was_at[code]
+        late = "later" if shift > timedelta() else "earlier"
+        words.append(f"{hours(shift.total_seconds() / 3600)} {late} at {code}")
+    return f"The parcel comes {', '.join(words)}."

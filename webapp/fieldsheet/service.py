@@ -4,6 +4,7 @@ from dataclasses import dataclass
 from datetime import datetime, timedelta
 
 from calc.travel import LEADING_EDGE_SHARE
+from webapp.plan.day import day_changes
 from webapp.readings.expected import expected_at_stations, prediction_or_reasons
 from webapp.readings.layers import FinalReading, final
 
@@ -45,13 +46,17 @@ class Stop:
 
 @dataclass(frozen=True)
 class Sheet:
-    """The day: stops in their order, the dropped ones apart, the next to do; missing says why no time can be told."""
+    """The day: stops in their order, the dropped ones apart, the next to do.
+
+    missing says why no time can be told; by_the_day whether times follow what the day showed.
+    """
 
     stops: tuple[Stop, ...]
     dropped: tuple[Stop, ...]
     next: Stop | None
     missing: tuple[str, ...]
     cold_c: float | None
+    by_the_day: bool = False
 
 
 def sheet_of(survey, plan_version, readings, person_name=""):
@@ -72,7 +77,10 @@ def sheet_of(survey, plan_version, readings, person_name=""):
     going = tuple(stop for stop in stops if stop.state != "dropped")
     dropped = tuple(stop for stop in stops if stop.state == "dropped")
     temperatures = [one.water_temp_c for one in finals if one.water_temp_c is not None]
-    return Sheet(going, dropped, _next(going, finals, person_name), missing, min(temperatures, default=None))
+    by_the_day = day_changes(plan_version.tables)
+    return Sheet(
+        going, dropped, _next(going, finals, person_name), missing, min(temperatures, default=None), by_the_day
+    )
 
 
 def next_stop(survey, plan_version, readings, person_name=""):

@@ -11,17 +11,8 @@ GROUPS = (
     ("The river above the outfall", ("river_flow_m3_s", "river_temp_c")),
     ("The outfall", ("outfall_flow_m3_s", "outfall_bod5_mg_l", "outfall_do_mg_l", "outfall_temp_c")),
 )
-TIME_GROUP = (
-    "crew_until",
-    "bottles_until",
-    "drive_to_lab_min",
-    "lab_margin_min",
-    "off_water_before_sunset_min",
-    "closeout_min",
-    "latitude",
-    "longitude",
-    "reachable_anywhere",
-)
+OFTEN = ("crew_until", "bottles_until", "drive_to_lab_min", "reachable_anywhere")
+SELDOM = ("lab_margin_min", "off_water_before_sunset_min", "closeout_min", "latitude", "longitude")
 REACH_KEYS = ("velocity_m_s", "travel_time_h", "depth_m", "water_temp_c")
 _PLANNED_AS = {
     "river_flow_m3_s": ("upstream", "flow_m3_s"),
@@ -49,6 +40,15 @@ class ReachFields:
 
     title: str
     fields: tuple[DayField, ...]
+    unfolded: bool
+
+
+@dataclass(frozen=True)
+class TimeFields:
+    """The fields of how long the crew may stay: those asked each day, and those that seldom change."""
+
+    often: tuple[DayField, ...]
+    seldom: tuple[DayField, ...]
     unfolded: bool
 
 
@@ -103,11 +103,13 @@ def day_groups(tables, show):
     return [(title, tuple(_day_field(key, waters, show) for key in keys)) for title, keys in GROUPS]
 
 
-def time_fields(show):
-    """Return the DayFields of how long the crew may stay."""
-    return tuple(
-        DayField(column, column.key, _unit(column, show), column.help) for column in map(DAY.column, TIME_GROUP)
+def time_fields(show, form, errors):
+    """Return the TimeFields of how long the crew may stay."""
+    often, seldom = (
+        tuple(DayField(column, column.key, _unit(column, show), column.help) for column in map(DAY.column, keys))
+        for keys in (OFTEN, SELDOM)
     )
+    return TimeFields(often, seldom, any(form.get(one.name) or errors.get(one.name) for one in seldom))
 
 
 def reach_fields(reaches, show, form, errors):

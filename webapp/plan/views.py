@@ -308,7 +308,7 @@ def _day_page(plan, form, tables, errors=None, status=200, message=""):
         planned=planned,
         effect=words,
         groups=day_forms.day_groups(plan.tables, plan.show),
-        times=day_forms.time_fields(plan.show),
+        times=day_forms.time_fields(plan.show, form, errors),
         reaches=day_forms.reach_fields(plan.reaches(), plan.show, form, errors),
         form=form,
         errors=errors,
