@@ -67,6 +67,7 @@ def _register_features(app):
     from webapp.dataset.views import bp as dataset
     from webapp.fieldpack.views import bp as fieldpack
     from webapp.fieldsheet.views import bp as fieldsheet
+    from webapp.invitations.views import bp as invitations
     from webapp.people.access import login_manager
     from webapp.people.views import bp as people
     from webapp.plan.views import bp as plan
@@ -77,7 +78,7 @@ def _register_features(app):
     from webapp.trust.views import bp as trust
 
     login_manager.init_app(app)
-    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset, fieldpack, trust):
+    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset, fieldpack, trust, invitations):
         app.register_blueprint(blueprint)
 
 

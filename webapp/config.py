@@ -20,7 +20,8 @@ class Config:
     BANKSIDE_DATABASE_URL: another database, for example postgresql+psycopg://name@host/bankside (default: a SQLite
     file in the data folder). BANKSIDE_HOST, BANKSIDE_PORT: where to listen (all addresses, 8080).
     BANKSIDE_THREADS: requests served at once (4). BANKSIDE_PROXIES: trusted proxies in front (0).
-    BANKSIDE_SECURE_COOKIES: yes when phones reach it by HTTPS (no).
+    BANKSIDE_SECURE_COOKIES: yes when phones reach it by HTTPS (no). BANKSIDE_INVITATION_MINUTES: how long an invitation
+    can be used (15).
     """
 
     data_dir: Path
@@ -30,6 +31,7 @@ class Config:
     threads: int = 4
     proxies: int = 0
     secure_cookies: bool = False
+    invitation_minutes: int = 15
 
     @property
     def sqlite_path(self):
@@ -51,6 +53,7 @@ def read_config(environ=None, **overrides):
         "threads": _whole(env, "BANKSIDE_THREADS", 4, 1, 64),
         "proxies": _whole(env, "BANKSIDE_PROXIES", 0, 0, 5),
         "secure_cookies": _yes_no(env, "BANKSIDE_SECURE_COOKIES", False),
+        "invitation_minutes": _whole(env, "BANKSIDE_INVITATION_MINUTES", 15, 1, 1440),
     }
     return Config(data_dir=data_dir, **{**values, **given})
 

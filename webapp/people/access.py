@@ -33,8 +33,9 @@ class SignedIn:
     is_active = True
     is_anonymous = False
 
-    def __init__(self, person):
+    def __init__(self, person, phone_id=None):
         self.id, self.name, self.role = person.id, person.name, person.role
+        self.phone_id = phone_id  # of a phone that an invitation signed in
         self.session_key = person.session_key
 
     def get_id(self):
@@ -50,13 +51,15 @@ class SignedIn:
 def load(session_id):
     """Return the signed-in person, or None where the session ended or was ended."""
     person_id, _, key = session_id.partition(":")
-    until = session.get("until")
-    if not isinstance(until, (int, float)) or datetime.now(UTC).timestamp() > until:
+    until, phone_id, now = session.get("until"), session.get("phone"), datetime.now(UTC)
+    if not isinstance(until, (int, float)) or now.timestamp() > until:
         return None
     person = queries.find_person(get_db(), person_id)
     if person is None or not person.active or person.session_key != key:
         return None
-    return SignedIn(person)
+    if phone_id is not None and not queries.phone_is_signed_in(get_db(), phone_id, person.id, now):
+        return None
+    return SignedIn(person, phone_id)
 
 
 def start_session(person):
@@ -65,6 +68,12 @@ def start_session(person):
     session.permanent = True
     session["until"] = (datetime.now(UTC) + STAYS[person.role]).timestamp()
     login_user(SignedIn(person))
+
+
+def start_phone_session(person, phone):
+    """Sign the person in on a phone that used an invitation; its PhoneSession is asked at every request."""
+    start_session(person)
+    session["until"], session["phone"] = phone.until.timestamp(), phone.id
 
 
 def end_session():

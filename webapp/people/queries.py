@@ -3,7 +3,7 @@
 from sqlalchemy import func, select
 
 from webapp.errors import NotFound
-from webapp.models import Person, Survey, SurveyMember
+from webapp.models import Person, PhoneSession, Survey, SurveyMember
 
 
 def find_person(db, person_id):
@@ -43,3 +43,11 @@ def members_of(db, survey_id):
     """Return the people on a survey, by name."""
     query = select(Person).join(SurveyMember).where(SurveyMember.survey_id == survey_id)
     return db.scalars(query.order_by(func.lower(Person.name))).all()
+
+
+def phone_is_signed_in(db, phone_id, person_id, now):
+    """Return whether a phone signed in by invitation still is: not ended, in its time, its person on the survey."""
+    on_survey = (SurveyMember.survey_id == PhoneSession.survey_id) & (SurveyMember.person_id == PhoneSession.person_id)
+    query = select(PhoneSession.id).join(SurveyMember, on_survey)
+    query = query.where(PhoneSession.id == phone_id, PhoneSession.person_id == person_id)
+    return db.scalar(query.where(PhoneSession.ended_at.is_(None), PhoneSession.until > now)) is not None

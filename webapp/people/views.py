@@ -7,7 +7,8 @@ from flask_login import current_user, login_required
 
 from webapp import limiter
 from webapp.db import get_db, reads_only
-from webapp.errors import Conflict
+from webapp.errors import Conflict, NotAllowed
+from webapp.invitations.service import sign_out as sign_out_phone
 from webapp.people import queries, service
 from webapp.people.access import ROLES, end_session, needs, start_session
 from webapp.people.forms import parse_password, parse_person
@@ -41,9 +42,10 @@ def do_sign_in():
 
 
 @bp.post("/sign-out")
-@reads_only
 def sign_out():
     """End this session."""
+    if (phone_id := getattr(current_user, "phone_id", None)) is not None:
+        sign_out_phone(get_db(), phone_id)
     end_session()
     return redirect(url_for("people.sign_in"), code=303)
 
@@ -100,6 +102,8 @@ def change_password(person_id):
 
 
 def _own_or_managed(person_id):
+    if current_user.phone_id is not None:
+        raise NotAllowed("This phone was signed in by an invitation. Sign in with your password to change it.")
     if person_id != current_user.id and not current_user.may("manage"):
         person_id = ""  # for anybody else, nobody has this id
     return queries.get_person(get_db(), person_id)

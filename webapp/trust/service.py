@@ -29,6 +29,12 @@ class Connection:
         """Whether browsers allow everything here: work without signal, position."""
         return self.scheme == "https" or self.is_this_machine
 
+    def base_for_phones(self, port, listening_host):
+        """Return the address to begin a link with that phones are to open: the one in use, unless it is localhost."""
+        if self.is_this_machine:
+            return self.for_phones(self.scheme, port, listening_host)
+        return f"{self.scheme}://{self.host}"
+
     def for_phones(self, scheme, port, listening_host):
         """Return the address that reaches the same server from a phone."""
         name = (address_for_phones(listening_host) or self.name) if self.is_this_machine else self.name
