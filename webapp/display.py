@@ -113,6 +113,10 @@ class Show:
         """Return day and time, for example Fri 14 Aug 05:42."""
         return self.local(instant).strftime("%a %-d %b %H:%M") if instant else "–"
 
+    def when(self, instant, now):
+        """Return the time of day of an instant, with its day where that is not the day of now."""
+        return self.clock(instant) if self.local(instant).date() == self.local(now).date() else self.day_clock(instant)
+
     def typed_time(self, instant):
         """Return an instant as a datetime-local field takes it."""
         return self.local(instant).strftime("%Y-%m-%dT%H:%M") if instant else ""

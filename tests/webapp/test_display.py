@@ -58,3 +58,9 @@ def test_time_is_shown_in_the_survey_zone_across_a_clock_change():
     before = datetime(2026, 10, 25, 0, 30, tzinfo=UTC)
     assert show.iso(before) == "2026-10-25T02:30:00+02:00"
     assert show.iso(before + timedelta(hours=1)) == "2026-10-25T02:30:00+01:00"
+
+
+def test_when_names_the_day_only_where_it_is_another_one_in_the_survey_zone():
+    show, now = Show(time_zone="Europe/Vienna"), datetime(2026, 8, 12, 20, 0, tzinfo=UTC)
+    assert show.when(datetime(2026, 8, 12, 21, 59, tzinfo=UTC), now) == "23:59"
+    assert show.when(datetime(2026, 8, 12, 22, 1, tzinfo=UTC), now) == "Thu 13 Aug 00:01"

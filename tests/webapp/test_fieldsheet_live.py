@@ -161,13 +161,21 @@ def test_moved_release_reaches_the_open_sheet_with_both_times(app, survey, phone
     assert MARK not in card(page, "U1")
 
 
-def test_measured_flow_moves_the_parcels_times_on_the_open_sheet(phone, change):
+def test_measured_flow_moves_the_parcels_times_on_the_open_sheet(phone, change, people):
     before = card(phone.page().text, "D6")
     change("gauged at dawn", day=[{"river_flow_m3_s": 0.9}])
     page = phone.poll().text
-    assert "Why the plan changed: gauged at dawn" in page and "it was" in card(page, "D6")
+    assert f"{people['lead'].name}: gauged at dawn" in page and "it was" in card(page, "D6")
     assert card(page, "D6") != before
     assert "Times follow what the day showed." in page and "later at D8" in page
+
+
+def test_every_reason_since_the_look_is_told_once_with_who_gave_it(phone, change, people):
+    for reason, flow in (("gauged at dawn", 0.9), ("gauged at dawn", 1.0), ("", 1.1), ("gate opened", 1.2)):
+        change(reason, day=[{"river_flow_m3_s": flow}])
+    page, name = phone.page().text, people["lead"].name
+    assert page.count("gauged at dawn") == 1
+    assert page.index(f"{name}: gauged at dawn") < page.index(f"{name}: gate opened")
 
 
 def test_new_time_is_not_marked_where_the_station_is_read_already(app, survey, people, phone, change):

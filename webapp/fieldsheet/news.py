@@ -43,8 +43,8 @@ def news_of(db, survey, show, plan_version, seen, person_name):
         lines.insert(0, f"Release: {show.day_clock(survey.release_at)}, before: {before}.")
     if was_at:
         lines.append(_shift_words(survey, plan_version, was_at))
-    if number != seen.plan_number and plan_version.reason:
-        lines.append(f"Why the plan changed: {plan_version.reason}")
+    reasons = queries.reasons_since(db, survey.id, seen.plan_number) if number != seen.plan_number else ()
+    lines.extend(dict.fromkeys(f"{name}: {reason}" for name, reason in reasons))
     return News(tuple(lines), marks, was_at)
 
 

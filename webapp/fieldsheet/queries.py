@@ -2,7 +2,7 @@
 
 from sqlalchemy import func, select
 
-from webapp.models import PlanVersion, Reading, ReadingEvent, Seen
+from webapp.models import Person, PlanVersion, Reading, ReadingEvent, Seen
 
 
 def counts_of(db, survey_id):
@@ -19,3 +19,10 @@ def counts_of(db, survey_id):
 def find_seen(db, survey_id, person_id):
     """Return what of the field sheet a person was shown last, or None."""
     return db.get(Seen, (survey_id, person_id))
+
+
+def reasons_since(db, survey_id, number):
+    """Return (name of who made it, reason) of every plan version after a number that has a reason, oldest first."""
+    query = select(Person.name, PlanVersion.reason).join(Person, PlanVersion.made_by_id == Person.id)
+    query = query.where(PlanVersion.survey_id == survey_id, PlanVersion.number > number, PlanVersion.reason != "")
+    return db.execute(query.order_by(PlanVersion.number)).all()

@@ -45,7 +45,7 @@ def time_budget(survey, plan_version, now):
     limit, why = min(limits, key=lambda one: one[0])
     until = limit - timedelta(minutes=closeout_min)
     remaining_min = (until - now).total_seconds() / 60
-    because = f"Begin to close out by {_when(show, until, now)}: {why}, and closing out takes {_minutes(closeout_min)}."
+    because = f"Begin to close out by {show.when(until, now)}: {why}, and closing out takes {_minutes(closeout_min)}."
     return Budget(remaining_min, until, because, sun, show)
 
 
@@ -56,7 +56,7 @@ def fits(budget, now, drive_min, parcel_at, station_minutes=STATION_MIN):
     """
     there = now + timedelta(minutes=drive_min or 0.0)
     done = max(there, parcel_at or there) + timedelta(minutes=station_minutes)
-    words = f"done by {_when(budget.show, done, now)}"
+    words = f"done by {budget.show.when(done, now)}"
     if drive_min is None:
         words += ", without the drive, which is not known"
     if budget.until is None:
@@ -66,7 +66,7 @@ def fits(budget, now, drive_min, parcel_at, station_minutes=STATION_MIN):
         return True, f"{words}, {_minutes(minutes)} before closing out must begin"
     return (
         False,
-        f"{words}, {_minutes(minutes)} after closing out must begin, at {_when(budget.show, budget.until, now)}",
+        f"{words}, {_minutes(minutes)} after closing out must begin, at {budget.show.when(budget.until, now)}",
     )
 
 
@@ -106,11 +106,6 @@ def _deadlines(show, day):
         by = datetime.fromisoformat(day["crew_until"])
         limits.append((by, f"the crew works until {show.day_clock(by)}"))
     return limits
-
-
-def _when(show, instant, now):
-    same_day = show.local(instant).date() == show.local(now).date()
-    return show.clock(instant) if same_day else show.day_clock(instant)
 
 
 def _minutes(minutes):
