@@ -3,6 +3,8 @@
 import math
 from dataclasses import dataclass
 
+import numpy as np
+
 HOUR_STEPS = (0.25, 0.5, 1, 2, 3, 6, 12, 24, 48, 96, 240, 480)
 
 
@@ -19,6 +21,11 @@ class Scale:
         """Return the coordinate of a value, to a tenth; values beyond the ends are drawn at the end."""
         share = (value - self.from_value) / (self.to_value - self.from_value)
         return round(self.from_place + min(max(share, 0.0), 1.0) * (self.to_place - self.from_place), 1)
+
+    def each(self, values):
+        """Return the coordinates of an array of values, as a list."""
+        share = np.clip((values - self.from_value) / (self.to_value - self.from_value), 0.0, 1.0)
+        return np.round(self.from_place + share * (self.to_place - self.from_place), 1).tolist()
 
 
 @dataclass(frozen=True)

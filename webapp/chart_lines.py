@@ -28,7 +28,7 @@ def corners(grid_km, values, along, across):
     """
     unit = abs(across.to_place - across.from_place) / (across.to_value - across.from_value)
     kept = _corners(_Same(grid_km), _Same(values), unit)
-    return [(along.at(km), across.at(value)) for km, value in zip(grid_km[kept], values[kept], strict=True)]
+    return list(zip(along.each(grid_km[kept]), across.each(values[kept]), strict=True))
 
 
 @lru_cache(maxsize=256)

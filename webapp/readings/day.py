@@ -2,12 +2,15 @@
 
 from datetime import UTC, datetime
 
+from webapp.display import Show
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import findings_on_new, thresholds, to_ask
 from webapp.readings.check import on_site_check
 from webapp.readings.layers import final, placed
 from webapp.readings.queries import readings_of
-from webapp.readings.surroundings import look_around
+from webapp.readings.surroundings import distances_of, look_around
+from webapp.sag.estimate import estimate_of
+from webapp.sag.moved import against_today
 from webapp.surveys.queries import current_settings
 
 
@@ -38,6 +41,19 @@ class Day:
     def check(self, reading):
         """Return the OnSiteCheck of a stored reading."""
         return on_site_check(self.survey, self.plan, self.settings, reading, self.readings)
+
+    def today(self):
+        """Return today's sag from all readings, or why there is none."""
+        return estimate_of(self.survey, self.plan, self.settings, self.readings)
+
+    def against_today(self, reading):
+        """Return what a stored reading says against today's sag; None where it does not count or has no place."""
+        now, distances = final(reading), distances_of(self.plan)
+        if now.set_aside or now.do_mg_l is None or now.station_code not in distances:
+            return None
+        others = [one for one in self.readings if one.id != now.id]
+        before = estimate_of(self.survey, self.plan, self.settings, others)
+        return against_today(Show.of(self.survey), before, self.today(), now, distances[now.station_code])
 
     def placed(self):
         """Return the readings that a chart can draw."""

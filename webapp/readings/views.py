@@ -130,7 +130,8 @@ def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(),
 def _check_page(day, reading):
     survey, show = day.survey, Show.of(day.survey)
     check = day.check(reading)
-    prediction = check.around.prediction
+    prediction, against = check.around.prediction, day.against_today(reading)
+    today = day.today() if against is not None and against.expected is not None else None
     return page_or_part(
         "readings/check.html",
         "readings/_check.html",
@@ -139,7 +140,9 @@ def _check_page(day, reading):
         tab="fieldsheet",
         reading=reading,
         check=check,
-        chart=prediction and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l),
+        against=against,
+        chart=prediction
+        and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l, today=today),
         next=fieldsheet.next_stop(survey, day.plan, day.readings, current_user.name),
         now=day.now,
     )

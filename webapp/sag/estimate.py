@@ -8,6 +8,8 @@ import numpy as np
 from calc.beliefs import FitSettings
 from calc.errors import CalcError
 from calc.fit import Estimate, refine
+from calc.oxygen import salinity_psu, saturation_mg_l
+from calc.sag import predict
 from webapp.plan.day import today_of
 from webapp.plan.prediction import Prediction, Unready, basis_of, spread_of
 from webapp.sag.evidence import Counted, counted
@@ -54,15 +56,26 @@ class Today:
         """Return whether nothing bounds the low point from below: it may lie where the plan ends, or beyond."""
         return self.estimate.critical_km.high >= self.estimate.plan.to_km - 0.01
 
-    def at(self, distance_km):
-        """Return the SagPoint of one place, or None outside the plan's river."""
+    def at(self, distance_km, water_temp_c=None):
+        """Return the SagPoint of one place, or None outside the plan's river.
+
+        With the temperature that the water had there, oxygen is that of the same deficit in water so warm.
+        """
         river = self.estimate.plan
-        if distance_km is None or not river.from_km <= distance_km <= river.to_km:
+        if distance_km is None or not max(river.from_km, self.estimate.grid_km[0]) <= distance_km <= river.to_km:
             return None
-        if distance_km < self.estimate.grid_km[0]:
-            return None
-        found = self.estimate.do_at(distance_km)
-        return SagPoint(float(found.median), float(found.low), float(found.high))
+        low, median, high = (float(np.interp(distance_km, self.estimate.grid_km, band)) for band in self.bands)
+        shift = self._warmth_mg_l(distance_km, water_temp_c)
+        return SagPoint(*(max(0.0, value + shift) for value in (median, low, high)))
+
+    def _warmth_mg_l(self, distance_km, water_temp_c):
+        """Return by how much more oxygen water of a temperature holds than the estimate's water there."""
+        if water_temp_c is None or not 0 <= water_temp_c <= 40:
+            return 0.0
+        river = self.estimate.plan
+        here = predict(river, distance_km)
+        salinity = salinity_psu(np.nan_to_num(here.conductance_us_cm))
+        return float(saturation_mg_l(water_temp_c, river.pressure_mmhg, salinity) - here.saturation_mg_l)
 
 
 @dataclass(frozen=True)
@@ -107,7 +120,7 @@ def estimate_of(survey, plan_version, settings, readings):
     return _kept(key)
 
 
-@lru_cache(maxsize=24)
+@lru_cache(maxsize=32)
 def _kept(key):
     rows = key.counted
     try:

@@ -131,6 +131,8 @@ def _used_by_code(readings, finals):
 
 def _lines(plan, prediction, today, check, used):
     rows = sorted(plan.tables.get("stations") or [] if plan else [], key=lambda row: row["distance_km"])
+    places = [row["distance_km"] for row in rows]
+    expected = prediction.along(places) if prediction.ready else [None] * len(rows)
     return [
         StationLine(
             code=row["code"],
@@ -138,12 +140,12 @@ def _lines(plan, prediction, today, check, used):
             access=row.get("access") or "",
             state=row.get("state") or "planned",
             crew=row.get("crew") or "",
-            expected=prediction.at(row["distance_km"]) if prediction.ready else None,
+            expected=planned,
             today=today.at(row["distance_km"]) if today.ready and today.enough else None,
             check=check(used[row["code"]][-1][1]) if row["code"] in used else None,
             count=len(used.get(row["code"], [])),
         )
-        for row in rows
+        for row, planned in zip(rows, expected, strict=True)
     ]
 
 
