@@ -76,9 +76,6 @@ LEAD = {
     "import refused": sent("plan/weirs/import", "Check", "Nothing is imported", text=WEIRS.format(drop="high")),
     "import checked": sent("plan/weirs/import", "Check", "All of it", text=WEIRS.format(drop="0,9")),
     "proposal": at("plan/stations/proposal"),
-    "day": at("plan/day"),
-    "day refused": sent("plan/day", "Save as version", "Nothing was saved", river_flow_m3_s="a lot"),
-    "field sheet": at("sheet"),
     "sag": at("sag"),
     "new survey": at("/surveys/new"),
     "new survey refused": sent("/surveys/new", "Make the survey", "Nothing was saved", name="Alder"),
@@ -153,5 +150,5 @@ def test_a_bad_page_is_found_out(page_as):
     wrong = "; ".join(what_is_wrong(page))
     page.evaluate("document.querySelector('h1').style.color = '#444444'")
     wrong += "; ".join(look.barriers_in_the_dark(page))
-    for one in ("px wide", "px high", "written in", "label: ", "color-contrast: <h1", "in the dark look, "):
+    for one in ("px wide", "px high", "written in", "label: ", "color-contrast-enhanced: <h1", "in the dark look, "):
         assert one in wrong
