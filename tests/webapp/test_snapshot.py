@@ -102,3 +102,4 @@ def test_sheet_of_a_snapshot_says_until_when_and_warns(app, db, survey, people, 
     page = crew.get(f"/surveys/{survey.id}/sheet").text
     assert "3 h 18 min so far" in page and "stations hardly compare" in page
     assert "Parcel" not in page and "Read the last station by" not in page
+    assert "stations hardly compare" in browser_as("lead").get(f"/surveys/{survey.id}/sag").text

@@ -3,6 +3,7 @@
 import hashlib
 from dataclasses import dataclass
 
+from webapp.fieldsheet.snapshot import window_of
 from webapp.plan.prediction import prediction_of
 from webapp.plan.queries import current_plan, stations_of
 from webapp.readings.asking import thresholds
@@ -42,7 +43,7 @@ class Sag:
     """All of the sag page. placed are the readings a chart draws; leave, where and budget are None without an estimate.
 
     below_criterion tells of the lowest reading; decisions are those made on site; mark changes with whatever a decision
-    rests on, and screen is what a decision keeps of the page.
+    rests on, and screen is what a decision keeps of the page. window is the run of a snapshot survey.
     """
 
     plan: object
@@ -57,6 +58,7 @@ class Sag:
     decisions: list
     mark: str
     screen: dict
+    window: object
 
     @property
     def chosen(self):
@@ -105,6 +107,7 @@ def sag_of(db, survey, show, now):
         decisions=decisions,
         mark=mark_of(plan, counted(finals, plan) if plan else ()),
         screen=screen_of(plan, today, leave, where, budget, now),
+        window=window_of(survey, plan, settings, finals),
     )
 
 
