@@ -4,9 +4,11 @@ import pytest
 
 from tests.webapp.planning import set_survey
 from tests.webapp.plans import PLAN, put_plan
+from webapp.display import Show
 from webapp.plan import queries
 from webapp.plan.day import day_changes, predict_today, today_of, today_tables
 from webapp.plan.prediction import predict_plan, prediction_of
+from webapp.plan.service import replace_table
 
 ELEVATION_M = 210.0
 # U2 = U1 (Q2/Q1)^0.34, H2 = H1 (Q2/Q1)^0.40, W2 = W1 (Q2/Q1)^0.26 (Leopold & Maddock 1953), above the outfall halved.
@@ -128,6 +130,14 @@ def test_today_is_the_plan_itself_where_nothing_was_entered(db, survey, people):
     assert not today_of(survey, None).ready
 
 
+def test_reach_measured_and_then_taken_out_of_the_plan_is_said_to_be_unused():
+    gone = {"reach": "Old channel", "from_km": 3.3, "velocity_m_s": 0.2}
+    today = predict_today(with_day(reaches=[gone]), ELEVATION_M)
+    said = [note.said(Show()) for note in today.warnings]
+    assert "What the day showed in reach Old channel is not used: no reach begins there any more." in said
+    assert (today.do_mg_l == predict_plan(PLAN, ELEVATION_M).do_mg_l).all()
+
+
 @pytest.fixture
 def plan(db, survey, people):
     return put_plan(db, survey, people["lead"])
@@ -167,6 +177,13 @@ def test_saved_day_is_a_new_version_with_its_reason_and_the_planned_tables_uncha
         assert value in form
     page = lead.get(address.removesuffix("/day")).text
     assert "1.200 m³/s" in page and "Wed 12 Aug 19:30" in page
+
+
+def test_day_stays_when_another_table_of_the_plan_changes(db, plan, stored, survey, people, address, browser_as):
+    browser_as("lead").post(address, TYPED)
+    kept = stored().tables["day"]
+    replace_table(db, survey, "weirs", [], "the weir was taken out", people["lead"].id)
+    assert (stored().number, stored().tables["day"]) == (3, kept)
 
 
 def test_emptied_day_is_the_plan_again(plan, stored, address, browser_as, survey):

@@ -13,7 +13,7 @@ from functools import lru_cache
 from calc.errors import CalcError
 from calc.travel import KM_PER_HOUR, depth_at_flow_m, velocity_at_flow_m_s, width_at_flow_m
 from webapp.plan.build import build
-from webapp.plan.notes import NotReady
+from webapp.plan.notes import Note, NotReady
 from webapp.plan.prediction import Unready, predict_plan, prediction_of
 from webapp.plan.waters import SAME_PLACE_KM
 
@@ -28,6 +28,7 @@ _OF_OUTFALL = {
 _MAKES_VOID = {"bod5_mg_l": "cbod_ultimate_mg_l", "do_mg_l": "do_percent"}
 _MEASURED = (*_OF_RIVER, *_OF_OUTFALL)
 _REACH_MEASURED = ("velocity_m_s", "travel_time_h", "depth_m", "water_temp_c")
+UNUSED = "measured reach is gone"
 _COLDEST_C, _WARMEST_C = 0.0, 40.0
 
 
@@ -86,7 +87,21 @@ def predict_today(tables, elevation_m):
     if not prediction.ready:
         return prediction
     rates = tuple(replace(one, velocity_why=_why(tables, one.from_km)) for one in prediction.reach_rates)
-    return replace(prediction, reach_rates=rates)
+    return replace(prediction, reach_rates=rates, warnings=(*prediction.warnings, *_unused(tables)))
+
+
+def _unused(tables):
+    """Return a Note for each measured reach that the plan no longer has."""
+    heads = [row["from_km"] for row in tables["reaches"]]
+    return tuple(
+        Note(
+            UNUSED,
+            "What the day showed in reach {} is not used: no reach begins there any more.",
+            (("", row["reach"]),),
+        )
+        for row in tables.get("day_reaches") or []
+        if all(abs(row["from_km"] - head) > SAME_PLACE_KM for head in heads)
+    )
 
 
 def today_tables(tables, elevation_m):

@@ -3,6 +3,7 @@
 from datetime import timedelta
 
 from webapp.display import hours
+from webapp.plan.day import UNUSED
 
 
 def effect(survey, show, planned, today):
@@ -14,6 +15,7 @@ def effect(survey, show, planned, today):
     words = [
         f"As planned: {_lowest(show, planned)}.",
         f"With the day's conditions: {_lowest(show, today)}.",
+        *(note.said(show) for note in today.warnings if note.name == UNUSED),
     ]
     place, before = planned.critical.distance_km, planned.critical.travel_time_h
     now = today.at(place).travel_time_h
