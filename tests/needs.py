@@ -1,4 +1,4 @@
-"""What some tests need from the machine: a browser, a PostgreSQL. Without it they skip, except where CI forbids it."""
+"""What some tests need from the machine: a browser, certutil, a PostgreSQL. Without it they skip, but not in CI."""
 
 import os
 import pwd
@@ -24,6 +24,11 @@ def chromium_path():
         if (path := shutil.which(name)) is not None:
             return path
     return missing("Chromium")
+
+
+def certutil_path():
+    """Return the program that puts an authority into the store of a Chromium on Linux."""
+    return shutil.which("certutil") or missing("certutil (libnss3-tools)")
 
 
 def _postgres_command(name):

@@ -26,7 +26,7 @@ CONNECTIONS = 64  # threads, most of them waiting for a slow phone
 SECONDS_OF_SILENCE = 15
 SECONDS_BETWEEN_LOOKS = 30
 FIRST_BYTE_OF_TLS = b"\x16"
-PLAIN_PATHS = ("/trust", "/static/", "/htmx.js")
+PLAIN_PATHS = ("/trust", "/static/", "/scripts/", "/htmx.js")
 
 
 class LazyAdapter(Adapter):
@@ -153,11 +153,20 @@ def serve(app, config, certificate, plain_port, authority):
 
 
 def _follow_networks(adapter, config, authority, certificate):
-    """Renew the certificate when the hotspot starts, an address changes, or its last month begins."""
     while True:
         time.sleep(SECONDS_BETWEEN_LOOKS)
-        names = reach.machine_names(config.host)
-        newer = authorities.server_certificate(authority, config.data_dir, names)
-        if newer.serial != certificate.serial:
-            adapter.renew(newer.path)
-            certificate = newer
+        try:
+            certificate = renewed(adapter, config, authority, certificate)
+        except OSError:  # a full disk: the old certificate serves on
+            logging.getLogger(__name__).exception("The certificate could not be renewed.")
+
+
+def renewed(adapter, config, authority, certificate):
+    """Return the certificate for the machine's names as they are now, in use when it is not the one before.
+
+    The names change when the hotspot starts or the laptop joins another network; and its last month begins one day.
+    """
+    newer = authorities.server_certificate(authority, config.data_dir, reach.machine_names(config.host))
+    if newer.serial != certificate.serial:
+        adapter.renew(newer.path)
+    return newer

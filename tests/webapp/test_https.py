@@ -21,7 +21,7 @@ from tests.browser.conftest import free_port
 from tests.conftest import PASSWORD
 from webapp import authority as authorities
 from webapp import create_app, reach
-from webapp.https import HttpsServer, plain_side
+from webapp.https import HttpsServer, plain_side, renewed
 
 NAMES = ("fieldlaptop", "fieldlaptop.local", "localhost", "127.0.0.1", "10.42.0.1")
 NOW = datetime(2026, 8, 12, 6, tzinfo=UTC)
@@ -127,7 +127,7 @@ def https_server(app, config, authority):
     thread = threading.Thread(target=server.serve, daemon=True)
     thread.start()
     try:
-        yield port
+        yield port, server
     finally:
         server.stop()
         thread.join(5)
@@ -139,7 +139,7 @@ def served(config, people):
     authority = authorities.read_or_make(config.data_dir, NAMES)
     app = create_app(config, TESTING=True, RATELIMIT_ENABLED=False, AUTHORITY=authority, PLAIN_PORT=8081)
     trusting = ssl.create_default_context(cadata=authority.der)
-    with https_server(app, config, authority) as port:
+    with https_server(app, config, authority) as (port, _):
         yield port, trusting
     app.extensions["bankside_database"].engine.dispose()
 
@@ -207,6 +207,24 @@ def test_plain_http_on_the_https_port_is_led_to_the_trust_page(served):
     assert answer.status == 302
     assert answer.getheader("Location") == "http://127.0.0.1:8081/trust"
     connection.close()
+
+
+def test_a_hotspot_that_starts_later_is_in_the_certificate_of_the_next_connection(config, people, monkeypatch):
+    monkeypatch.setattr(reach, "machine_names", lambda host: NAMES)
+    authority = authorities.read_or_make(config.data_dir, NAMES)
+    made = authorities.server_certificate(authority, config.data_dir, NAMES)
+    app = create_app(config, TESTING=True, AUTHORITY=authority, PLAIN_PORT=8081)
+    with https_server(app, config, authority) as (port, server):
+        assert renewed(server.ssl_adapter, config, authority, made).serial == made.serial == serial_at(port)
+        monkeypatch.setattr(reach, "machine_names", lambda host: (*NAMES, "192.168.137.1"))
+        newer = renewed(server.ssl_adapter, config, authority, made)
+        assert newer.serial == serial_at(port) != made.serial
+    app.extensions["bankside_database"].engine.dispose()
+
+
+def serial_at(port):
+    given = ssl.get_server_certificate(("127.0.0.1", port))
+    return x509.load_pem_x509_certificate(given.encode()).serial_number
 
 
 @pytest.fixture
