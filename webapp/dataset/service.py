@@ -18,6 +18,7 @@ from webapp.plan.prediction import prediction_of
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.queries import readings_of
 from webapp.review.derived import Derived, derive
+from webapp.sag.queries import decisions_of
 from webapp.surveys.queries import current_settings, history_of
 
 _DEFAULTS = {one.key: one.default for one in SETTINGS}
@@ -107,6 +108,7 @@ def _tables(db, survey, history):
         tables.prediction_table(plan, prediction),
         tables.settings_table(settings),
         equations_table(),
+        tables.decisions_table(decisions_of(db, survey.id), {version.id: version.number for version in versions}),
         tables.audit_table(history, who),
         tables.left_out_table(),
     ]

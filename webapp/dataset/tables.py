@@ -190,6 +190,39 @@ def audit_table(history, who):
     return DataTable("audit", "History", says, fields, ("line",), rows)
 
 
+def decisions_table(decisions, numbers):
+    """Return what was decided on site, with what was on the screen; numbers are those of plan versions by id."""
+    fields = (
+        text("decision_id", "Decision's id", constraints={"required": True}),
+        moment("made_at", "When"),
+        text("made_by", "Who"),
+        text(
+            "kind",
+            "What about",
+            "station: where to read next; declined, offered: a place refused or offered again; leave: left or stayed.",
+        ),
+        text("chosen", "What was chosen", "A station's code, a place, or whether the crew left or stayed."),
+        text("reason", "Reason"),
+        whole("plan_version", "Plan version then", constraints={"required": True}),
+        text("screen", "What was on the screen", "As JSON: numbers in SI, sentences as they were read."),
+    )
+    rows = [
+        {
+            "decision_id": one.id,
+            "made_at": one.made_at,
+            "made_by": one.made_by.name,
+            "kind": one.kind,
+            "chosen": one.chosen,
+            "reason": one.reason,
+            "plan_version": numbers.get(one.plan_version_id),
+            "screen": public(one.screen) or "",
+        }
+        for one in decisions
+    ]
+    says = "What was decided on site, in the order it was."
+    return DataTable("decisions", "Decisions on site", says, fields, ("decision_id",), rows, _TO_VERSION)
+
+
 def public(value):
     """Return particulars without what stays out of a dataset."""
     if isinstance(value, dict):

@@ -3,7 +3,7 @@
 from sqlalchemy import select
 from sqlalchemy.orm import joinedload
 
-from webapp.models import Decision, PlanVersion
+from webapp.models import Decision
 
 
 def decisions_of(db, survey_id):
@@ -15,9 +15,3 @@ def decisions_of(db, survey_id):
 def find_decision(db, decision_id):
     """Return the decision with this id, of whatever survey, or None."""
     return db.get(Decision, decision_id)
-
-
-def plan_numbers(db, survey_id):
-    """Return the number of each plan version of a survey, by its id."""
-    query = select(PlanVersion.id, PlanVersion.number).where(PlanVersion.survey_id == survey_id)
-    return dict(db.execute(query).tuples().all())
