@@ -12,6 +12,7 @@ import socket
 import ssl
 import threading
 import time
+from contextlib import suppress
 
 import waitress
 from cheroot.server import HTTPConnection
@@ -140,16 +141,17 @@ def plain_side(app):
 
 def serve(app, config, certificate, plain_port, authority):
     """Serve HTTPS on the config's port and the plain side on another, until somebody stops it."""
-    server = HttpsServer(app, config.host, config.port, plain_port, certificate.path, config.threads)
-    server.prepare()  # both ports are taken here, or the start says which one is not free
     plain = waitress.create_server(plain_side(app), host=config.host, port=plain_port, threads=4, ident=None)
+    server = HttpsServer(app, config.host, config.port, plain_port, certificate.path, config.threads)
+    server.prepare()  # takes its port before it starts a thread, so that a port in use ends the start
     threading.Thread(target=plain.run, daemon=True).start()
     watch = (server.ssl_adapter, config, authority, certificate)
     threading.Thread(target=_follow_networks, args=watch, daemon=True).start()
-    try:
-        server.serve()
-    finally:
-        server.stop()
+    with suppress(KeyboardInterrupt):  # Ctrl+C is how people stop it
+        try:
+            server.serve()
+        finally:
+            server.stop()
 
 
 def _follow_networks(adapter, config, authority, certificate):

@@ -13,6 +13,7 @@ from http.client import HTTPConnection, HTTPSConnection
 from urllib.parse import urlencode
 
 import pytest
+from click.testing import CliRunner
 from cryptography import x509
 from cryptography.hazmat.primitives import hashes
 from cryptography.x509.oid import ExtendedKeyUsageOID
@@ -20,7 +21,7 @@ from cryptography.x509.oid import ExtendedKeyUsageOID
 from tests.browser.conftest import free_port
 from tests.conftest import PASSWORD
 from webapp import authority as authorities
-from webapp import create_app, reach
+from webapp import cli, create_app, https, reach
 from webapp.https import HttpsServer, plain_side, renewed
 
 NAMES = ("fieldlaptop", "fieldlaptop.local", "localhost", "127.0.0.1", "10.42.0.1")
@@ -290,3 +291,41 @@ def test_without_https_the_page_says_how_to_get_it(app):
 def test_sign_in_page_names_what_plain_http_lacks(app, base, linked):
     answer = app.test_client().get("/sign-in", base_url=base)
     assert ('href="/trust"' in answer.text) is linked
+
+
+OFFICE = ["--office-name", "Olive Reed", "--office-sign-in", "olive", "--office-password", "heron under willow"]
+
+
+def started(tmp_path, *more):
+    return CliRunner().invoke(cli.main, ["serve", "--https", "--data", str(tmp_path), *OFFICE, *more])
+
+
+def test_serve_https_prints_both_addresses_and_the_fingerprint(tmp_path, monkeypatch):
+    served = []
+    monkeypatch.setattr(https, "serve", lambda *given: served.append(given))
+    monkeypatch.setattr(reach, "network_addresses", lambda: ["10.42.0.1"])
+    answer = started(tmp_path, "--port", "8443")
+    assert answer.exit_code == 0, answer.output
+    assert "https://10.42.0.1:8443/" in answer.output
+    assert "http://10.42.0.1:8444/trust" in answer.output
+    assert authorities.read_or_make(tmp_path).fingerprint in answer.output
+    app, config, _, plain_port, _ = served[0]
+    assert app.config["SESSION_COOKIE_SECURE"] is config.secure_cookies is True
+    assert plain_port == 8444
+
+
+@pytest.mark.parametrize("taken_is", ["--port", "--http-port"])
+def test_a_port_in_use_ends_the_start_with_a_reason(tmp_path, taken_is):
+    with socket.socket() as taken:
+        taken.bind(("127.0.0.1", 0))
+        taken.listen()
+        ports = {"--port": free_port(), "--http-port": free_port(), taken_is: taken.getsockname()[1]}
+        answer = started(tmp_path, "--host", "127.0.0.1", *(str(one) for pair in ports.items() for one in pair))
+    assert answer.exit_code == 1
+    assert "Cannot listen" in answer.output
+
+
+def test_both_ports_the_same_is_refused(tmp_path):
+    answer = started(tmp_path, "--port", "8443", "--http-port", "8443")
+    assert answer.exit_code == 1
+    assert "must differ" in answer.output
