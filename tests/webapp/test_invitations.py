@@ -2,12 +2,14 @@
 
 import logging
 import re
+from dataclasses import replace
 from datetime import UTC, datetime, timedelta
 from types import SimpleNamespace
 
 import pytest
 
 from tests.conftest import Browser
+from webapp import create_app
 from webapp.invitations import service
 from webapp.models import History, Invitation, PhoneSession, SurveyMember
 from webapp.people.forms import NewPerson
@@ -112,6 +114,42 @@ def test_a_withdrawn_invitation_is_refused(browser_as, phone, link, address, db)
     assert lead.post(f"{address}/{invitation.id}/withdraw").status_code == 303
     assert phone.get(link).status_code == 410
     assert "withdrawn" in phone.get(link).text
+
+
+def test_an_invitation_that_was_used_is_not_withdrawn_but_its_phone_signed_out(browser_as, phone, link, address, db):
+    phone.join(link)
+    invitation = db.query(Invitation).one()
+    db.rollback()
+    answer = browser_as("lead").post(f"{address}/{invitation.id}/withdraw")
+    assert answer.status_code == 409
+    assert "sign that phone out" in answer.text
+
+
+def test_an_invitation_ends_with_the_account_and_with_the_place_on_the_survey(browser_as, phone, link, survey, people):
+    office, crew = browser_as("office"), people["crew"].id
+    office.post(f"/people/{crew}/active", {"active": "no"})
+    assert phone.get(link).status_code == 410
+    office.post(f"/people/{crew}/active", {"active": "yes"})
+    assert phone.get(link).status_code == 200
+    office.post(f"/surveys/{survey.id}/people/{crew}/remove")
+    assert "not on this survey any more" in phone.get(link).text
+
+
+def test_nobody_is_invited_to_a_closed_account(browser_as, address, people):
+    browser_as("office").post(f"/people/{people['crew'].id}/active", {"active": "no"})
+    lead = browser_as("lead")
+    assert lead.post(address, {"person_id": people["crew"].id}).status_code == 409
+    assert "nobody you may invite" in lead.get(address).text
+
+
+def test_an_invitation_lasts_as_long_as_the_office_has_set(config, people, survey, db):
+    app = create_app(replace(config, invitation_minutes=40), TESTING=True, RATELIMIT_ENABLED=False)
+    lead = Browser(app)
+    lead.sign_in(people["lead"])
+    made(lead, f"/surveys/{survey.id}/invitations", people["crew"])
+    invitation = db.query(Invitation).one()
+    assert invitation.expires_at - invitation.made_at == timedelta(minutes=40)
+    app.extensions["bankside_database"].engine.dispose()
 
 
 def test_a_new_invitation_for_the_same_person_ends_the_one_before(browser_as, phone, link, address, people):

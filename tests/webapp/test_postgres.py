@@ -179,6 +179,17 @@ def test_two_copies_that_change_the_plan_at_once_make_one_version(at, survey, co
     assert count(PlanVersion) == number + 1
 
 
+def test_two_phones_that_use_one_invitation_at_once_sign_one_in(apps, at, survey):
+    lead = at("lead")
+    for _ in range(4):
+        made = lead.post(f"{survey}/invitations", {"person_id": at.people["crew"].id})
+        link = re.search(r"(/join/[\w-]+)\"", made.text)[1]
+        phones = [Browser(one) for one in apps]
+        assert [phone.get(link).status_code for phone in phones] == [200, 200]
+        answers = at_once(*(partial(phone.post, link) for phone in phones))
+        assert sorted(answer.status_code for answer in answers) == [303, 410]
+
+
 def test_nul_characters_are_no_trouble_of_ours(at, survey):
     office, nul = at("office"), "a\x00b"
     for address in ("/surveys/%00/sheet", f"{survey}/readings/a%00b", f"{survey}/stations/D%00/reading",
@@ -189,6 +200,7 @@ def test_nul_characters_are_no_trouble_of_ours(at, survey):
         ("/people", {"name": nul, "sign_in": nul, "role": "crew", "password": "a\x00b heron under willow"}),
         (f"{survey}/people", {"person_id": nul}),
         (f"{survey}/people/%00/remove", {}),
+        (f"{survey}/invitations", {"person_id": nul}),
         ("/surveys/new", SURVEY_FORM | {"name": nul, "purpose": nul}),
         (f"{survey}/stations/D4/reading", reading(note=nul, meter=nul, submission_id=nul)),
         (f"{survey}/plan/weirs/import", {"text": nul, "based_on": nul}),
