@@ -1,6 +1,9 @@
 // What stands in place of the form once a reading is on this phone, until the server's own answer takes its place.
+import { changeRecord, get } from "./waiting_store.js";
 import { parsed } from "./phone.js";
 import { form, freshen, untouched } from "./typing.js";
+import { checkOnPhone } from "./check.js";
+import { age, facts, sentence } from "./check_words.js";
 
 const template = document.querySelector("#kept");
 let shown;
@@ -12,13 +15,32 @@ function put(section) {
   window.scrollTo(0, 0);
 }
 
-function showKept({ detail: record }) {
+async function showKept({ detail: record }) {
   const view = template.content.firstElementChild.cloneNode(true);
   const at = (name) => view.querySelector(`[data-${name}]`);
   at("title").textContent = `${record.code}, ${record.fields.taken_at.replace("T", " ")}`;
   at("again").addEventListener("click", again);
+  const carries = Boolean(navigator.serviceWorker?.controller);
+  at("leave").hidden = !carries;
+  at("stay").hidden = carries;
   shown = record.id;
   put(view);
+  const pack = await get("packs", record.survey).catch(() => undefined);
+  const check = pack && checkOnPhone(pack, record);
+  at("no-check").hidden = Boolean(check);
+  if (!check) return;
+  at("phone-check").hidden = false;
+  at("oxygen").textContent = check.oxygen.toFixed(2);
+  at("sentence").textContent = sentence(check);
+  at("age").textContent = age(pack);
+  for (const [name, words] of facts(check)) {
+    const [term, fact] = ["dt", "dd"].map((tag) => document.createElement(tag));
+    term.textContent = name;
+    fact.textContent = words;
+    at("facts").append(term, fact);
+  }
+  // The page may be closed when the server answers: the record says what was shown.
+  await changeRecord(record, { check });
 }
 
 function again() {
@@ -29,11 +51,18 @@ function again() {
   return freshen(form(), true);
 }
 
-// The server's answer takes the place of what this phone showed.
+// The server's answer takes the place of what this phone showed, and says where it differs.
 function takeAnswer({ detail: { record, verdict, html } }) {
   if (shown !== record.id || !verdict.changes.state) return;
   const section = parsed(html).querySelector("#reading");
   if (!section) return;
+  const { differs } = verdict.changes;
+  if (differs) {
+    const line = document.createElement("p");
+    line.className = "notice warn";
+    line.textContent = `This replaces what the phone showed: ${differs}.`;
+    section.querySelector("h1").after(line);
+  }
   shown = undefined;
   put(section);
 }

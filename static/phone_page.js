@@ -1,5 +1,5 @@
 // The page about this phone: every reading it keeps, what became of it, and what to do about it.
-import { records } from "./waiting_store.js";
+import { all, records } from "./waiting_store.js";
 import { clock, person, plural } from "./phone.js";
 import { send } from "./sending.js";
 
@@ -7,7 +7,10 @@ const main = document.querySelector("main");
 const part = (name) => main.querySelector(`[data-${name}]`);
 
 function state(record) {
-  if (record.state === "sent") return `On the server since ${clock(record.sentAt)}.`;
+  if (record.state === "sent") {
+    const differs = record.differs ? ` Its check differs from the phone's: ${record.differs}.` : "";
+    return `On the server since ${clock(record.sentAt)}.${differs}`;
+  }
   if (record.state === "refused") return `The server did not take it: ${record.reason}`;
   if (record.author !== person) return `Waits until ${record.authorName} signs in on this phone.`;
   return `Waits since ${clock(record.keptAt)}.`;
@@ -21,11 +24,13 @@ function card(record) {
   item.querySelector("[data-state]").textContent = state(record);
   const open = item.querySelector("[data-open]");
   open.hidden = record.author !== person;
-  open.textContent = record.state === "sent" ? "See its check" : record.state === "refused" ? "Correct and save again" : "Open it";
+  open.textContent = OPENS[record.state];
   open.href = record.state === "sent"
     ? `/surveys/${record.survey}/readings/${record.id}/check` : `${record.url}#waiting=${record.id}`;
   return item;
 }
+
+const OPENS = { sent: "See its check", refused: "Correct and save again", waiting: "Open it" };
 
 async function show() {
   const kept = await records();
@@ -38,6 +43,19 @@ async function show() {
   part("sent").replaceChildren(...sent.map(card));
 }
 
+async function showPacks() {
+  const packs = await all("packs");
+  part("elsewhere").hidden = location.pathname === "/phone";
+  part("packs-part").hidden = !packs.length;
+  part("packs").replaceChildren(...packs.map((pack) => {
+    const [item, link] = ["li", "a"].map((tag) => document.createElement(tag));
+    link.href = `/surveys/${pack.survey}/sheet`;
+    link.textContent = `${pack.name}: plan version ${pack.plan}, fetched ${clock(pack.made_at)}`;
+    item.append(link);
+    return item;
+  }));
+}
+
 part("send-now").addEventListener("click", async () => {
   part("outcome").textContent = "Asking the server…";
   await send(true);
@@ -46,3 +64,4 @@ part("send-now").addEventListener("click", async () => {
 });
 document.addEventListener("bankside:waiting", show);
 show();
+showPacks();

@@ -1,5 +1,6 @@
 // Sends what waits on this phone: one sender at a time, each reading until the server has named its id as stored.
 import { changeRecord, get, inStore, records } from "./waiting_store.js";
+import { differences } from "./check_words.js";
 import { ask, newId, parsed, phone } from "./phone.js";
 
 const MINUTE = 60000;
@@ -56,10 +57,11 @@ async function sendOne(record, token) {
   const answer = await ask(record.url, { method: "POST", body, headers: { "HX-Request": "true" } });
   if (!answer) return { lost: true };
   const { reply, html } = answer;
-  const verdict = judge(record, {
-    status: reply.status, stored: reply.headers.get("X-Stored-Id"), owner: reply.headers.get("X-Belongs-To"),
-    address: reply.url, html, wait: Number(reply.headers.get("Retry-After")) || 0,
-  });
+  const header = (name) => reply.headers.get(name);
+  const said = { stored: header("X-Stored-Id"), owner: header("X-Belongs-To"), wait: Number(header("Retry-After")) || 0 };
+  const verdict = judge(record, { status: reply.status, address: reply.url, html, ...said });
+  const theirs = parsed(html).querySelector("[data-check]")?.dataset;
+  if (verdict.changes.state === "sent") verdict.changes.differs = record.check ? differences(record.check, theirs) : "";
   await changeRecord(record, verdict.changes);
   document.dispatchEvent(new CustomEvent("bankside:answer", { detail: { record, verdict, html } }));
   return verdict;

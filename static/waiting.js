@@ -18,7 +18,7 @@ function recordOf(it, button) {
     survey,
     surveyName,
     code,
-    fields,
+    fields: { ...fields, saved_at: new Date().toISOString() },
     author: fields.author_id || person,
     authorName: phone.dataset.name,
     keptAt: Date.now(),

@@ -2,6 +2,7 @@
 import { forgetOld, records } from "./waiting_store.js";
 import { ask, clock, parsed, person, phone, plural } from "./phone.js";
 import { send } from "./sending.js";
+import { settlePerson } from "./whose.js";
 
 const DAY_MS = 24 * 3600 * 1000;
 const line = phone.querySelector("[data-waiting-line]");
@@ -66,4 +67,9 @@ document.addEventListener("bankside:here", openDoor);
 document.addEventListener("visibilitychange", () => { if (document.visibilityState === "visible") send(); });
 window.addEventListener("online", send);
 window.addEventListener("pageshow", ({ persisted }) => { if (persisted) { show(); send(); } });
-forgetOld().then(show).then(send).catch(() => { line.hidden = true; });
+if ("kept" in document.documentElement.dataset) {
+  const from = phone.querySelector("[data-from-phone]");
+  from.textContent = `No answer from the server: this is the page as it was ${clock(Number(document.documentElement.dataset.kept))}.`;
+  from.hidden = false;
+}
+settlePerson().then(forgetOld).then(show).then(send).catch(() => { line.hidden = true; });

@@ -34,6 +34,16 @@ def scripts_mark(folder):
     return hashlib.sha256(whole).hexdigest()[:10]
 
 
+def script_names():
+    """Return the names of the scripts that pages load; the worker's is not one of them."""
+    return sorted(path.name for path in Path(current_app.static_folder).glob("*.js") if path.name != "worker.js")
+
+
+def read_script(name):
+    """Return the text of a script."""
+    return (Path(current_app.static_folder) / name).read_text(encoding="utf-8")
+
+
 def _script(mark, name):
     """Send a script; under another version's mark it is sent too, but not to be kept."""
     current = mark == scripts_mark(current_app.static_folder)

@@ -1,9 +1,21 @@
+import copy
+import gzip
+import json
 import re
+import shutil
+from datetime import UTC, datetime, timedelta
 
+import numpy as np
 import pytest
+from scipy.interpolate import RegularGridInterpolator
 
-from tests.webapp.plans import put_plan
+from calc.oxygen import salinity_psu, saturation_mg_l
+from tests.webapp.plans import PLAN, put_plan
+from webapp.fieldpack.tables import saturation_tables
+from webapp.models import SurveyMember
+from webapp.plan.queries import current_plan
 from webapp.readings import queries
+from webapp.readings.expected import prediction_or_reasons
 
 READING = "0b8f6f2c-32cb-4a52-9a6f-0f5b0d3b1c11"
 FORM = {"submission_id": READING, "taken_at": "2026-08-12T13:20", "do_mg_l": "6.4", "water_temp_c": "19"}
@@ -71,3 +83,94 @@ def test_script_is_kept_a_year_under_its_own_mark_only(app):
     assert "max-age=31536000" in client.get(address).headers["Cache-Control"]
     assert "max-age=31536000" not in client.get("/scripts/old/page.js").headers["Cache-Control"]
     assert client.get("/scripts/old/../webapp/__init__.py").status_code == 404
+
+
+@pytest.fixture
+def pack(browser_as, db, survey, people):
+    """The field pack of a ready plan, as a phone gets it."""
+    put_plan(db, survey, people["lead"])
+    return browser_as("crew").get(f"/surveys/{survey.id}/fieldpack").get_json()
+
+
+def test_pack_names_its_plan_version_its_pages_and_files_and_each_can_be_fetched(pack, browser_as, survey):
+    assert (pack["plan"], pack["survey"]) == (1, survey.id)
+    assert f"/surveys/{survey.id}/sheet" in pack["pages"]
+    assert f"/surveys/{survey.id}/stations/D3/reading" in pack["pages"]
+    crew = browser_as("crew")
+    assert {crew.get(address).status_code for address in [*pack["pages"], *pack["files"]]} == {200}
+
+
+def test_pack_has_every_station_as_an_entry_of_the_predicted_sag(pack, db, survey):
+    prediction, _ = prediction_or_reasons(survey, current_plan(db, survey.id))
+    for station in pack["stations"]:
+        at = pack["sag"]["km"].index(station["km"])
+        there = prediction.at(station["km"])
+        assert pack["sag"]["do"][at] == pytest.approx(there.do_mg_l, abs=0.0006)
+        assert pack["sag"]["deficit"][at] == pytest.approx(there.deficit_mg_l, abs=0.0006)
+        assert pack["sag"]["travel_h"][at] == pytest.approx(there.travel_time_h, abs=0.0001)
+
+
+def test_pack_without_a_plan_says_so_and_still_has_saturation(browser_as, survey):
+    pack = browser_as("crew").get(f"/surveys/{survey.id}/fieldpack").get_json()
+    assert (pack["sag"], pack["stations"], pack["plan"]) == (None, [], 0)
+    assert "There is no plan yet." in pack["missing"]
+    assert pack["saturation"]["z"][20][0] > 0
+
+
+def test_pack_of_another_crews_survey_is_not_found(browser_as, db, survey, people):
+    db.query(SurveyMember).filter_by(survey_id=survey.id, person_id=people["crew"].id).delete()
+    db.commit()
+    assert browser_as("crew").get(f"/surveys/{survey.id}/fieldpack").status_code == 404
+
+
+def test_saturation_tables_are_within_rounding_of_calc_between_their_entries():
+    tables, random = saturation_tables(), np.random.default_rng(4)
+    celsius, mmhg = random.uniform(0, 40, 5000), random.uniform(380, 836, 5000)
+    conductance = 59000 * random.random(5000) ** 3
+    salinity = np.interp(conductance, tables["salinity"]["x"], tables["salinity"]["y"])
+    fresh, salted = (
+        RegularGridInterpolator((tables[name]["x"], tables[name]["y"]), np.array(tables[name]["z"]))
+        for name in ("saturation", "salted")
+    )
+    looked_up = fresh(np.c_[celsius, mmhg]) * salted(np.c_[celsius, salinity])
+    assert np.abs(looked_up - saturation_mg_l(celsius, mmhg, salinity_psu(conductance))).max() < 0.005
+
+
+def test_pack_of_forty_stations_weighs_at_most_60_kb_compressed(browser_as, db, survey, people):
+    stations = [{"code": f"S{number}", "distance_km": round(0.3 + 0.55 * number, 2)} for number in range(40)]
+    put_plan(db, survey, people["lead"], tables={**copy.deepcopy(PLAN), "stations": stations})
+    crew = browser_as("crew")
+    answer = crew.get(f"/surveys/{survey.id}/fieldpack", headers={"Accept-Encoding": "gzip"})
+    assert answer.headers["Content-Encoding"] == "gzip"
+    assert len(answer.data) <= 60_000
+    assert len(json.loads(gzip.decompress(answer.data))["stations"]) == 40
+
+
+def test_worker_is_served_at_the_root_and_differs_with_each_version_of_the_files(app, tmp_path):
+    client = app.test_client()
+    answer = client.get("/worker.js")
+    assert (answer.mimetype, answer.headers["Cache-Control"]) == ("text/javascript", "no-cache")
+    mark = re.search(r'"(/scripts/[^/]+/)waiting.js"', answer.text).group(1)
+    shutil.copytree(app.static_folder, tmp_path / "static")
+    with (tmp_path / "static" / "check.js").open("a") as script:
+        script.write("// newer\n")
+    app.static_folder = str(tmp_path / "static")
+    assert mark not in client.get("/worker.js").text
+
+
+@pytest.mark.parametrize(
+    ("hours_on_the_phone", "status"), [(0, 422), (0.1, 422), (5, 200)], ids=["now", "minutes ago", "hours ago"]
+)
+def test_what_is_odd_holds_back_no_reading_whose_crew_has_left_the_water(
+    browser_as, db, survey, address, hours_on_the_phone, status
+):
+    saved_at = datetime.now(UTC) - timedelta(hours=hours_on_the_phone)
+    odd = {**FORM, "do_mg_l": "16", "saved_at": saved_at.isoformat()}
+    assert browser_as("crew").post(address, odd, htmx=True).status_code == status
+    assert len(queries.readings_of(db, survey.id)) == (status == 200)
+
+
+@pytest.mark.parametrize("saved_at", ["", "yesterday", "2026-08-12T13:20", "9999-12-31T23:59:59+00:00", "\x00", "١٢"])
+def test_moment_of_saving_that_cannot_be_read_counts_as_now(browser_as, address, saved_at):
+    odd = {**FORM, "do_mg_l": "16", "saved_at": saved_at}
+    assert browser_as("crew").post(address, odd, htmx=True).status_code == 422

@@ -54,9 +54,16 @@ def findings_on_stored(survey, settings, reading, around, now):
     return reading_findings(values, _context(survey, around, reading.pressure_mmhg, reading.taken_at, now), settings)
 
 
-def to_ask(findings, new, now):
-    """Return the findings to ask about: not the hazards, and not the pace of the day where the clock is right."""
-    timely = abs(now - new.taken_at) <= THIS_MOMENT
+def to_ask(findings, new, now, saved_at=None):
+    """Return the findings to ask about: not the hazards, and not the pace of the day where the clock is right.
+
+    saved_at is when it was saved on a phone without signal. Hours later nobody stands at the water to answer: what is
+    odd is then told beside the reading, and holds nothing back.
+    """
+    saved_at = saved_at or now
+    if now - saved_at > THIS_MOMENT:
+        return []
+    timely = abs(saved_at - new.taken_at) <= THIS_MOMENT
     return [one for one in findings if not one.hazard and not (timely and one.name in OF_THE_RUN)]
 
 

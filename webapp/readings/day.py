@@ -24,14 +24,17 @@ class Day:
         self.settings = thresholds(current_settings(db, survey.id))
         self.readings = [final(one) for one in readings_of(db, survey.id)]
 
-    def asks(self, new):
-        """Return the findings to ask about before this reading is stored: none for one that is stored already."""
+    def asks(self, new, saved_at=None):
+        """Return the findings to ask about before this reading is stored: none for one that is stored already.
+
+        saved_at is when a phone without signal saved it.
+        """
         if new is None or any(one.id == new.id for one in self.readings):
             return []
         around = look_around(
             self.survey, self.plan, new.station_code, new.taken_at, self.readings, replicate=new.replicate
         )
-        return to_ask(findings_on_new(self.survey, self.settings, new, around, self.now), new, self.now)
+        return to_ask(findings_on_new(self.survey, self.settings, new, around, self.now), new, self.now, saved_at)
 
     def holds(self, reading):
         """Count a reading that was stored after the others were fetched."""

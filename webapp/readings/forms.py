@@ -3,7 +3,7 @@
 import json
 import uuid
 from dataclasses import replace
-from datetime import timedelta
+from datetime import UTC, datetime, timedelta
 
 from webapp.forms import Fields
 from webapp.readings.columns import (
@@ -77,6 +77,15 @@ def fresh_form(show, last, now):
         "pressure_source": last.pressure_source if last else "standard",
         "pressure_unit": pressure.get("unit") or ("[in_i'Hg]" if show.unit_system == "us" else "mm[Hg]"),
     }
+
+
+def saved_at(source):
+    """Return when a phone saved the reading, for one that waited there; None where it says nothing that can be read."""
+    try:
+        written = datetime.fromisoformat(source.get("saved_at") or "")
+    except ValueError:
+        return None
+    return written.astimezone(UTC) if written.tzinfo and 1990 <= written.year <= 2200 else None
 
 
 def show_of_form(source, show):

@@ -57,11 +57,11 @@ def save(survey_id, code):
         return _belongs_to_another(survey, code, day.plan, form)
     show = forms.show_of_form(form, Show.of(survey))
     reading, errors = forms.parse_reading(form, show, code, day.now)
-    asks = day.asks(reading)
+    asks = day.asks(reading, forms.saved_at(form))
     if taken := forms.with_suggestion(form, asks, show):
         form = taken
         reading, errors = forms.parse_reading(form, show, code, day.now)
-        asks = day.asks(reading)
+        asks = day.asks(reading, forms.saved_at(form))
     if errors:
         return _form_page(survey, show, code, day.plan, form, 422, errors, [one for one in asks if one.suggestion])
     if open_asks := forms.unanswered(asks, form):

@@ -1,0 +1,53 @@
+// The phone's check in words, and where the server's own check, which comes later, differs from it.
+import { clock } from "./phone.js";
+
+const ROUNDING_MG_L = 0.011;
+const mg = (value, digits = 2) => value.toFixed(digits);
+
+export function hours(minutes) {
+  const whole = Math.round(Math.abs(minutes));
+  if (whole < 60) return `${whole} min`;
+  return `${Math.floor(whole / 60)} h ${String(whole % 60).padStart(2, "0")} min`;
+}
+
+export function sentence({ oxygen, predicted, low, high }) {
+  if (predicted === undefined) return "Nothing to compare with on this phone.";
+  const band = `${mg(low, 1)} to ${mg(high, 1)} mg/L`;
+  if (oxygen >= low && oxygen <= high) return `As predicted: the plan has ${band} here.`;
+  const apart = Math.abs(oxygen - predicted);
+  return `${mg(apart, 1)} mg/L ${oxygen < predicted ? "below" : "above"} the prediction: the plan has ${band} here.`;
+}
+
+export function facts(check) {
+  const said = [];
+  if (check.saturation !== undefined) {
+    said.push(["Saturation", `${Math.round((100 * check.oxygen) / check.saturation)} % of ${mg(check.saturation)} mg/L`]);
+    said.push(["Deficit", `${mg(check.deficit)} mg/L`]);
+  } else said.push(["Saturation", "can't be told from what was typed"]);
+  if (check.predicted !== undefined) {
+    said.push(["Predicted", `${mg(check.predicted, 1)} mg/L (${mg(check.low, 1)} to ${mg(check.high, 1)}) at this temperature`]);
+  }
+  if (check.today !== undefined) said.push(["Today's sag", `${mg(check.today, 1)} mg/L here, when the pack was made`]);
+  if (check.travel !== undefined) said.push(["Travel time", `${hours(check.travel * 60)} below the outfall`]);
+  if (check.late !== undefined) {
+    const how = Math.abs(check.late) <= check.allowed ? ", near enough" : ", not the parcel that was released";
+    said.push(["Parcel", `${hours(check.late)} ${check.late > 0 ? "late" : "early"}${how}`]);
+  }
+  return said;
+}
+
+export function age(pack) {
+  return `Worked out on this phone from the field pack of ${clock(pack.made_at)}, plan version ${pack.plan}.`;
+}
+
+const COMPARED = { saturation: "saturation", deficit: "deficit", predicted: "prediction" };
+
+// What the server says otherwise, beyond rounding, in words; nothing where the two agree.
+export function differences(check, server = {}) {
+  return Object.entries(COMPARED).flatMap(([name, word]) => {
+    const theirs = server[name] ? Number(server[name]) : undefined;
+    const ours = check[name];
+    if (theirs === undefined || ours === undefined || Math.abs(theirs - ours) <= ROUNDING_MG_L) return [];
+    return [`${word} ${mg(theirs)} mg/L, on the phone it was ${mg(ours)}`];
+  }).join("; ");
+}
