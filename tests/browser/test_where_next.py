@@ -1,0 +1,115 @@
+"""The lead's page and a crew's phone on the demo day: where next, followed twice, turns open into held."""
+
+import re
+from datetime import UTC, datetime
+
+import pytest
+from playwright.sync_api import expect
+
+from calc.critical import critical_point
+from calc.sag import predict
+from demo_survey import make
+from tests.browser.conftest import PASSWORDS, PHONE, serving, survey_address, watched
+
+TRUE_RIVER = make.true_river()
+ERRORS_MG_L = (0.05, -0.04)
+
+
+@pytest.fixture
+def phone_of(browser, tmp_path):
+    """A function from a role to a page on that person's phone, at a server of this test's own."""
+    contexts, pages = [], []
+    with serving(tmp_path / "data") as address:
+
+        def signed_in(role):
+            context = browser.new_context(base_url=address, **PHONE)
+            contexts.append(context)
+            page = watched(context.new_page())
+            pages.append(page)
+            name, password = PASSWORDS[role]
+            page.goto("/")
+            page.get_by_label("Sign-in name").fill(name)
+            page.get_by_label("Password").fill(password)
+            page.get_by_role("button", name="Sign in").tap()
+            page.get_by_role("heading", name="Surveys").wait_for()
+            return page
+
+        yield signed_in
+        for context in contexts:
+            context.close()
+    assert [line for page in pages for line in page.console_errors] == []
+
+
+def test_following_where_next_twice_turns_open_into_held(phone_of):
+    lead, crew = phone_of("lead"), phone_of("crew")
+    survey = survey_address(lead)
+    _is_where_the_sun_stays_up(lead, survey)
+    lead.goto(f"{survey}/sag")
+    answer = lead.locator(".answer")
+    for error in ERRORS_MG_L:
+        expect(answer).to_contain_text(re.compile(r"^Open below: the lowest reading, .* is your last station"))
+        code, distance_km = _adds_the_first_place(lead)
+        _reads(crew, survey, code, distance_km, error)
+        lead.goto(f"{survey}/sag")
+    truth = critical_point(TRUE_RIVER)
+    expect(answer).to_contain_text("Held: the low point")
+    place = lead.locator("dt", has_text="Its place").locator("+ dd").inner_text()
+    low_km, high_km = map(float, re.search(r"\(([\d.]+) to ([\d.]+)\)", place).groups())
+    assert low_km < truth.distance_km < high_km
+    lowest = lead.locator("dt", has_text="Lowest oxygen").locator("+ dd").inner_text()
+    low, high = map(float, re.search(r"\(([\d.]+) to ([\d.]+)\)", lowest).groups())
+    assert low < truth.do_mg_l < high
+    _leaves(lead)
+
+
+def _is_where_the_sun_stays_up(lead, survey):
+    """Daylight limits the day, and this test runs at any hour of any season: the lead types a position without night."""
+    north = 80 <= datetime.now(UTC).timetuple().tm_yday < 265
+    lead.goto(f"{survey}/plan/day")
+    lead.get_by_text("the place for the sunset").tap()
+    lead.get_by_label("Latitude").fill("89" if north else "-89")
+    lead.get_by_label("Longitude").fill("0")
+    lead.get_by_label("Why the plan changes").fill("Where we are")
+    lead.get_by_role("button", name="Save as version 2").tap()
+    lead.wait_for_url(f"**{survey}/sheet*")
+
+
+def _adds_the_first_place(lead):
+    """Take the first place offered, send the crew there, and return its code and distance."""
+    offer = lead.locator(".offer").first
+    distance_km = float(re.search(r"([\d.]+) km below the outfall", offer.inner_text())[1])
+    button = offer.get_by_role("button").first
+    code = re.search(r"(?:as|to) (\w+)", button.get_attribute("aria-label"))[1]
+    added = button.get_attribute("aria-label").startswith("Add")
+    button.tap()
+    if added:
+        lead.get_by_text(f"{code} is added").wait_for()
+        lead.get_by_role("button", name=f"Cleo Banks reads {code}").tap()
+        expect(lead.get_by_text("Who reads it?")).to_have_count(0)
+    return code, distance_km
+
+
+def _reads(crew, survey, code, distance_km, error_mg_l):
+    """Read the true river at a station, from the field sheet."""
+    state = predict(TRUE_RIVER, distance_km)
+    crew.goto(f"{survey}/sheet")
+    card = crew.locator(f"#station-{code}")
+    expect(card).to_contain_text("For you")
+    card.get_by_role("link", name=f"Read here, {code}").tap()
+    crew.get_by_label("Oxygen").fill(f"{float(state.do_mg_l) + error_mg_l:.2f}")
+    crew.get_by_label("Water temperature").fill(f"{float(state.water_temp_c):.1f}")
+    crew.get_by_role("button", name="Save reading").tap()
+    crew.get_by_text("Saved on the server").wait_for()
+    shown = crew.inner_text("#reading")
+    assert "from the plan" in shown and "from today's sag" in shown
+    assert "the low point" in shown
+
+
+def _leaves(lead):
+    lead.get_by_label("Everybody is off the water").check()
+    lead.get_by_role("button", name="We leave").tap()
+    lead.get_by_role("heading", name="Decisions").wait_for()
+    latest = lead.locator("section[aria-labelledby=decisions] li").first
+    expect(latest).to_contain_text("We leave")
+    expect(latest).to_contain_text("On the screen: Held:")
+    expect(latest).to_contain_text("1 of 5 checked by hand.")
