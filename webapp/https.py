@@ -26,6 +26,7 @@ from webapp import reach
 CONNECTIONS = 64  # threads, most of them waiting for a slow phone
 SECONDS_OF_SILENCE = 15
 SECONDS_BETWEEN_LOOKS = 30
+LONGEST_HEADERS = 64 * 1024
 FIRST_BYTE_OF_TLS = b"\x16"
 PLAIN_PATHS = ("/trust", "/static/", "/scripts/", "/htmx.js")
 
@@ -98,6 +99,10 @@ class HttpsServer(Server):
             timeout=SECONDS_OF_SILENCE,
             server_name="bankside",
         )
+        self.max_request_header_size = LONGEST_HEADERS
+        self.max_request_body_size = (
+            2 * app.config["MAX_CONTENT_LENGTH"]
+        )  # the application explains what is not far over
         self.plain_port = plain_port
         self.ssl_adapter = LazyAdapter(certificate_path)
 

@@ -200,6 +200,27 @@ def test_slow_and_silent_phones_hold_nobody_up(served):
         one.close()
 
 
+@pytest.mark.parametrize(
+    ("headers", "status"),
+    [
+        ({"Content-Length": str(6 * 1024 * 1024)}, 413),
+        ({"Content-Length": str(10**12)}, 413),
+        ({"Content-Length": "many"}, 400),
+        ({"X-Long": "x" * 100_000}, 413),
+    ],
+)
+def test_a_request_that_is_too_large_is_refused_unread(served, headers, status):
+    port, trusting = served
+    connection = HTTPSConnection("127.0.0.1", port, context=trusting, timeout=10)
+    connection.putrequest("POST", "/sign-in")
+    for name, value in headers.items():
+        connection.putheader(name, value)
+    connection.endheaders()
+    assert connection.getresponse().status == status
+    connection.close()
+    assert ask(port, trusting).status == 200
+
+
 def test_plain_http_on_the_https_port_is_led_to_the_trust_page(served):
     port, _ = served
     connection = HTTPConnection("127.0.0.1", port, timeout=10)
