@@ -63,7 +63,7 @@ def test_following_where_next_twice_turns_open_into_held(phone_of):
 
 
 def _is_where_the_sun_stays_up(lead, survey):
-    """Daylight limits the day, and this test runs at any hour of any season: the lead types a position without night."""
+    """Type a position without night: daylight limits the day, and this test runs at any hour of any season."""
     north = 80 <= datetime.now(UTC).timetuple().tm_yday < 265
     lead.goto(f"{survey}/plan/day")
     lead.get_by_text("the place for the sunset").tap()
