@@ -8,6 +8,8 @@ from scipy.special import ndtri
 
 _READINGS = 32
 _SAME_PLACE = 0.004
+# One and a half times the error of a difference of two readings: less is no sign that oxygen is higher.
+_WITHIN = 1.5 * np.sqrt(2)
 _RISE_MG_L, _RISE_ERRORS = 0.3, 1.5
 
 
@@ -32,7 +34,7 @@ def open_end(estimate):
         return None
     below_outfall = evidence.distance_km >= estimate.outfall_km
     means = np.array([evidence.do_mg_l[below_outfall & (evidence.distance_km == km)].mean() for km in read])
-    low = means <= means.min() + evidence.noise_mg_l
+    low = means <= means.min() + _WITHIN * evidence.noise_mg_l
     if low[0] and low[-1]:
         return "above" if estimate.p_in_gap[0] > estimate.p_in_gap[-1] else "below"
     return "below" if low[-1] else "above" if low[0] else None
