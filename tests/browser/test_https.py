@@ -118,6 +118,8 @@ def test_a_phone_that_trusts_the_authority_can_do_everything(phone, served):
     assert phone.evaluate("isSecureContext && 'serviceWorker' in navigator && 'randomUUID' in crypto")
     position = "new Promise((yes, no) => navigator.geolocation.getCurrentPosition((at) => yes(at.coords.latitude), no))"
     assert phone.evaluate(position) == 47.5
+    worker = "navigator.serviceWorker.register('/worker.js').then(() => navigator.serviceWorker.ready)"
+    assert phone.evaluate(f"{worker}.then((ready) => ready.active !== null)")
     assert phone.context.cookies()[0]["secure"]
     phone.goto(f"{served.secure}/trust")
     expect(phone.locator("main")).to_contain_text("This connection can do everything")
