@@ -74,11 +74,25 @@ def _register_features(app):
     from webapp.readings.views import bp as readings
     from webapp.review.views import bp as review
     from webapp.sag.views import bp as sag
+    from webapp.surveyfile.views import bp as surveyfile
     from webapp.surveys.views import bp as surveys
     from webapp.trust.views import bp as trust
 
     login_manager.init_app(app)
-    for blueprint in (people, surveys, plan, fieldsheet, readings, review, sag, dataset, fieldpack, trust, invitations):
+    for blueprint in (
+        people,
+        surveys,
+        plan,
+        fieldsheet,
+        readings,
+        review,
+        sag,
+        dataset,
+        surveyfile,
+        fieldpack,
+        trust,
+        invitations,
+    ):
         app.register_blueprint(blueprint)
 
 
