@@ -45,14 +45,9 @@ def check(tables):
     _survey(tables["survey"][0])
     _numbers(tables)
     _stations_and_plans(tables)
-    for name, look in (("settings_version", _settings), ("reading", _reading), ("reading_event", _event)):
+    for name, look in _LOOKS.items():
         for row in tables[name]:
             look(row)
-    for name, column in (("decision", "screen"), ("history", "particulars")):
-        for row in tables[name]:
-            _want(isinstance(row.get(column, {}), dict), name, row, column)
-    for row in tables["history"]:
-        _want(row["what"] != STAYS_HERE, "history", row, "what")
 
 
 def _choices(tables):
@@ -178,3 +173,25 @@ def _event(row):
         low, high = _LIMITS.get(row["field"], (-math.inf, math.inf))
         value = row.get("new_value")
         _want(value is None or low <= value <= high, "reading_event", row, "new_value")
+
+
+def _decision(row):
+    screen = row.get("screen", {})
+    _want(isinstance(screen, dict), "decision", row, "screen")
+    for part, kind in _READ_FROM_SCREEN.items():  # what pages read from it; the rest is only kept
+        _want(screen.get(part) is None or isinstance(screen[part], kind), "decision", row, f"screen, {part}")
+
+
+def _history(row):
+    _want(isinstance(row.get("particulars", {}), dict), "history", row, "particulars")
+    _want(row["what"] != STAYS_HERE, "history", row, "what")
+
+
+_READ_FROM_SCREEN = {"place": str, "ticked": list, "answer": dict}
+_LOOKS = {
+    "settings_version": _settings,
+    "reading": _reading,
+    "reading_event": _event,
+    "decision": _decision,
+    "history": _history,
+}
