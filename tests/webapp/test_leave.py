@@ -146,7 +146,7 @@ def test_lower_reading_moves_the_low_point_and_says_by_how_much():
     said = moved_low_point(SHOW, before, after)
     change = after.estimate.critical_do_mg_l.median - before.estimate.critical_do_mg_l.median
     assert change < -0.1
-    assert said.startswith("It moved the low point ") and f"{-change:.1f} mg/L lower" in said
+    assert said.startswith("This reading moved the low point ") and f"{-change:.1f} mg/L lower" in said
     against = against_today(SHOW, before, after, low, 12.4)
     assert against.difference_mg_l == pytest.approx(2.4 - against.expected.do_mg_l)
     assert against.difference_mg_l < 0
@@ -156,7 +156,9 @@ def test_reading_as_expected_leaves_the_low_point_where_it_was():
     readings = [reading("D2", 6.0), reading("D3", 5.0, 60), reading("D4", 4.0, 120), reading("D6", 4.2, 240)]
     before = today_of(*readings)
     again = reading("D4", round(before.at(10.5).do_mg_l, 2), 500)
-    assert moved_low_point(SHOW, before, today_of(*readings, again)).startswith("It leaves the low point where it was")
+    assert moved_low_point(SHOW, before, today_of(*readings, again)).startswith(
+        "This reading leaves the low point where it was"
+    )
 
 
 def test_with_fewer_than_two_stations_there_is_no_sag_of_today():

@@ -92,6 +92,18 @@ def test_with_htmx_the_check_comes_in_place(crew, address):
     assert "<html" not in answer.text and "oxygen-now" in answer.text and "<svg" in answer.text
 
 
+def test_save_does_not_wait_for_todays_sag_which_the_page_fetches_after_it(crew, address):
+    for code, oxygen in (("D1", "6,8"), ("D3", "5,1"), ("D2", "6,1")):
+        answer = crew.post(address.replace("D2", code), a_form(do_mg_l=oxygen), htmx=True)
+        assert answer.status_code == 200, re.findall(r"<strong>([^<]+)", answer.text)
+    assert "from today's sag" not in answer.text
+    fetched = re.search(r'id="against-today" hx-get="([^"]+)"', answer.text)[1]
+    part = crew.get(fetched, headers={"HX-Request": "true"}).text
+    assert "the low point" in part and "from today's sag" in part
+    assert '<div id="check-plot" hx-swap-oob="true">' in part and 'class="line-today"' in part
+    assert "<html" not in part and "<html" in crew.get(fetched).text
+
+
 def test_same_form_sent_five_times_is_one_reading_and_one_answer(crew, address, stored):
     form = a_form()
     answers = [crew.post(address, form) for _ in range(5)]

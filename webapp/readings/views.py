@@ -82,12 +82,21 @@ def check(survey_id, reading_id):
     return _check_page(Day(db, survey), queries.get_reading(db, survey_id, reading_id))
 
 
+@bp.get("/surveys/<survey_id>/readings/<reading_id>/check/today")
+@login_required
+def today(survey_id, reading_id):
+    """Show what a stored reading says against today's sag: fetched after the check of a save."""
+    db = get_db()
+    survey = survey_queries.get_survey(db, survey_id, current_user.id)
+    return _check_page(Day(db, survey), queries.get_reading(db, survey_id, reading_id), "readings/_today.html")
+
+
 def _stored(day, reading):
     """Answer with the check and the id that is now stored: the phone lets go of a reading only for this header."""
     address = url_for(".check", survey_id=day.survey.id, reading_id=reading.id)
     if wants_fragment():
         day.holds(reading)
-        response = _check_page(day, reading)
+        response = _check_page(day, reading, waits=True)
         response.headers["HX-Push-Url"] = address
     else:
         response = redirect(address, code=303)
@@ -127,22 +136,25 @@ def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(),
     )
 
 
-def _check_page(day, reading):
+def _check_page(day, reading, part="readings/_check.html", waits=False):
+    """Answer with the check; waits leaves what takes an estimate of the sag to be fetched after it."""
     survey, show = day.survey, Show.of(day.survey)
     check = day.check(reading)
-    prediction, against = check.around.prediction, day.against_today(reading)
-    today = day.today() if against is not None and against.expected is not None else None
+    against = None if waits else day.against_today(reading)
+    sag = day.today() if against is not None and against.expected is not None else None
+    prediction = check.around.prediction
     return page_or_part(
         "readings/check.html",
-        "readings/_check.html",
+        part,
         survey=survey,
         show=show,
         tab="fieldsheet",
         reading=reading,
         check=check,
         against=against,
+        waits=waits,
         chart=prediction
-        and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l, today=today),
+        and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l, today=sag),
         next=fieldsheet.next_stop(survey, day.plan, day.readings, current_user.name),
         now=day.now,
     )

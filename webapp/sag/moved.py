@@ -41,11 +41,11 @@ def moved_low_point(show, before, after):
     change = oxygen.median - before.estimate.critical_do_mg_l.median
     said = [*_shifted(show, shift, after), *_changed(show, change)]
     if said:
-        return f"It moved the low point {' and '.join(said)}: now {now}."
+        return f"This reading moved the low point {' and '.join(said)}: now {now}."
     was = before.estimate.critical_km
     if place.high - place.low < (1 - _NARROWER) * (was.high - was.low):
-        return f"It leaves the low point where it was, and places it more closely: {now}."
-    return f"It leaves the low point where it was: {now}."
+        return f"This reading leaves the low point where it was, and places it more closely: {now}."
+    return f"This reading leaves the low point where it was: {now}."
 
 
 def _shifted(show, shift_km, after):
