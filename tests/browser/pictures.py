@@ -18,10 +18,11 @@ def main():
     FOLDER.mkdir(exist_ok=True)
     with tempfile.TemporaryDirectory() as data, serving(data) as address, sync_playwright() as play:
         browser = play.chromium.launch(executable_path=chromium_path())
-        crew, office = (_signed_in(browser, address, role) for role in ("crew", "office"))
+        crew, lead, office = (_signed_in(browser, address, role) for role in ("crew", "lead", "office"))
         _the_plan(office)
         _the_field_sheet(crew)
         _a_reading_and_its_check(crew)
+        _the_sag(lead)
         _the_readings(office)
         browser.close()
 
@@ -67,6 +68,11 @@ def _a_reading_and_its_check(page):
     page.get_by_role("button", name="Save reading").tap()
     page.get_by_text("Saved on the server").wait_for()
     _take(page, "check", "#reading")
+
+
+def _the_sag(page):
+    page.goto(f"{survey_address(page)}/sag")
+    _take(page, "sag", "h1")
 
 
 def _the_readings(page):
