@@ -100,9 +100,10 @@ def _reads(crew, survey, code, distance_km, error_mg_l):
     crew.get_by_label("Water temperature").fill(f"{float(state.water_temp_c):.1f}")
     crew.get_by_role("button", name="Save reading").tap()
     crew.get_by_text("Saved on the server").wait_for()
+    crew.get_by_text("from today's sag").wait_for()
     shown = crew.inner_text("#reading")
-    assert "from the plan" in shown and "from today's sag" in shown
-    assert "the low point" in shown
+    assert "from the plan" in shown and "the low point" in shown
+    expect(crew.locator("svg.sag .line-today").first).to_be_attached()
 
 
 def _leaves(lead):
