@@ -187,13 +187,17 @@ def _candidates(offers, today, prediction, along, oxygen):
         if here is None:
             continue
         x, line_y = along.at(offer.distance_km), oxygen.at(here.do_mg_l)
-        y = line_y + STEM
-        while any(abs(one.x - x) < MARK + 3 and abs(one.y - y) < MARK + 3 for one in found):
-            y += MARK + 4
-        if y > BOTTOM - MARK / 2:
-            y = line_y - STEM - (y - line_y - STEM)
-        found.append(Candidate(x, line_y, round(y, 1), number))
+        found.append(Candidate(x, line_y, _clear_of(found, x, line_y), number))
     return tuple(found)
+
+
+def _clear_of(found, x, line_y):
+    """Return where a candidate's mark stands at x: below its line, deeper where others stand, else above the line."""
+    steps = [STEM + level * (MARK + 4) for level in range(6)]
+    ways = [round(line_y + step, 1) for step in (*steps, *(-step for step in steps))]
+    inside = [y for y in ways if TOP <= y - MARK / 2 and y + MARK / 2 <= BOTTOM]
+    clear = (y for y in inside if all(max(abs(one.x - x), abs(one.y - y)) >= MARK + 3 for one in found))
+    return next(clear, ways[0])
 
 
 def _labels(show, criterion, criterion_y, lines, dots, criticals, candidates):

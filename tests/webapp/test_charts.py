@@ -1,17 +1,24 @@
 import copy
+import itertools
 import re
 from dataclasses import dataclass, replace
 from itertools import combinations
+from types import SimpleNamespace
 
 import pytest
 from flask import render_template
 
+from calc.settings import Settings
 from tests.webapp.plans import PLAN
+from tests.webapp.test_estimate import VERSION
+from tests.webapp.test_estimate import reading as a_reading
 from webapp.chart_axes import hour_step, multiples, plain, round_step
 from webapp.chart_labels import Box
 from webapp.charts import sag_chart
 from webapp.display import Show
+from webapp.models import Survey
 from webapp.plan.prediction import predict_plan
+from webapp.sag.estimate import estimate_of
 
 SI = Show()
 MILES = Show(unit_system="us", distance_rule="river_mile", outfall_mark=41.2)
@@ -274,3 +281,30 @@ def test_multiples_hold_both_ends_and_negative_ones():
 def test_tick_numbers_have_the_digits_their_step_needs():
     assert [plain(value, 0.5) for value in (-0.5, 0, -0.0001)] == ["\u22120.5", "0.0", "0.0"]
     assert plain(20, 5) == "20"
+
+
+@pytest.fixture
+def today():
+    """Today's sag from three readings on the plan of the tests."""
+    survey = Survey(id="s", elevation_m=210.0)
+    readings = [a_reading("D2", 6.0), a_reading("D3", 5.0, 60), a_reading("D4", 4.0, 120)]
+    return estimate_of(survey, VERSION, Settings(), readings)
+
+
+def test_todays_sag_is_a_line_and_a_band_of_its_own_named_in_legend_words_and_table(today):
+    chart = sag_chart(Show(), today.prediction, today=today)
+    assert [line.kind for line in chart.lines] == [band.kind for band in chart.bands] == ["plan", "today"]
+    assert [one.kind for one in chart.criticals] == ["plan", "today"]
+    assert {"today", "today band", "today critical", "plan"} <= {symbol for symbol, _ in chart.legend}
+    assert chart.sentence.startswith("Today's sag is lowest with ")
+    assert any(row.what == "today's lowest" and row.today for row in chart.rows)
+
+
+def test_places_offered_are_numbered_and_cover_neither_each_other_nor_the_axis(today):
+    offers = [SimpleNamespace(distance_km=km) for km in (12.4, 12.9, 13.4, 14.8)]
+    chart = sag_chart(Show(), today.prediction, today=today, candidates=offers)
+    assert [one.number for one in chart.candidates] == [1, 2, 3, 4]
+    for one, other in itertools.combinations(chart.candidates, 2):
+        assert abs(one.x - other.x) >= 18 or abs(one.y - other.y) >= 18
+    assert all(one.y + 9 <= chart.bottom + 0.1 for one in chart.candidates)
+    assert sum(row.what.startswith("where next") for row in chart.rows) == 4
