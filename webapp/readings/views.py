@@ -2,7 +2,7 @@
 
 from datetime import UTC, datetime
 
-from flask import Blueprint, redirect, request, url_for
+from flask import Blueprint, redirect, render_template, request, url_for
 from flask_login import current_user, login_required
 
 from webapp.charts import sag_chart
@@ -13,7 +13,7 @@ from webapp.fieldsheet import service as fieldsheet
 from webapp.htmx import page_or_part, wants_fragment
 from webapp.people.access import needs
 from webapp.plan import queries as plan_queries
-from webapp.readings import columns, forms, queries, service
+from webapp.readings import columns, copies, forms, queries, service
 from webapp.readings.day import Day
 from webapp.readings.surroundings import where
 from webapp.surveys import queries as survey_queries
@@ -80,6 +80,19 @@ def check(survey_id, reading_id):
     db = get_db()
     survey = survey_queries.get_survey(db, survey_id, current_user.id)
     return _check_page(Day(db, survey), queries.get_reading(db, survey_id, reading_id))
+
+
+@bp.post("/phone/copy")
+@needs("log")
+def take_copy():
+    """Store the readings of a file that a phone saved, and list what became of each."""
+    upload = request.files.get("file")
+    try:
+        read = copies.read_copy(upload.read() if upload else b"")
+    except copies.BadCopy as bad:
+        return render_template("fieldpack/copy.html", trouble=str(bad), taken=()), 422
+    taken = copies.take_copies(get_db(), read, current_user)
+    return render_template("fieldpack/copy.html", trouble="", taken=taken)
 
 
 @bp.get("/surveys/<survey_id>/readings/<reading_id>/check/today")
