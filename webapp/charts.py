@@ -195,7 +195,7 @@ def _clear_of(found, x, line_y):
     """Return where a candidate's mark stands at x: below its line, deeper where others stand, else above the line."""
     steps = [STEM + level * (MARK + 4) for level in range(6)]
     ways = [round(line_y + step, 1) for step in (*steps, *(-step for step in steps))]
-    inside = [y for y in ways if TOP <= y - MARK / 2 and y + MARK / 2 <= BOTTOM]
+    inside = [y for y in ways if y - MARK / 2 >= TOP and y + MARK / 2 <= BOTTOM]
     clear = (y for y in inside if all(max(abs(one.x - x), abs(one.y - y)) >= MARK + 3 for one in found))
     return next(clear, ways[0])
 
