@@ -17,9 +17,17 @@ RELEASE = datetime(2026, 8, 12, 4, 0, tzinfo=UTC)  # 06:00 in Vienna, as the sur
 HERE = Facts("D5", 5.0, percent=55.0, predicted_mg_l=5.2, low_mg_l=4.6, high_mg_l=5.8, limb=LOWEST)
 
 
-def test_within_the_band_is_as_predicted():
+def test_as_near_as_a_careful_reading_can_tell_is_as_predicted():
     assert sentence(HERE) == "As predicted: the plan has 5.2 mg/L (4.6 to 5.8) here."
     assert afterwards(HERE) == ()
+    narrow = replace(HERE, low_mg_l=5.1, high_mg_l=5.3, limb=ABOVE)
+    assert sentence(narrow).startswith("As predicted")
+
+
+def test_a_wide_band_does_not_hide_a_difference():
+    facts = replace(HERE, do_mg_l=4.3, low_mg_l=1.9, high_mg_l=7.0)
+    assert sentence(facts).startswith("0.9 mg/L lower than predicted: the sag is deeper than planned")
+    assert afterwards(facts) == ("The plan's own doubts allow it: 1.9 to 7.0 mg/L.",)
 
 
 @pytest.mark.parametrize(

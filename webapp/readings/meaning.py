@@ -3,6 +3,8 @@
 from dataclasses import dataclass
 
 ABOVE, FALLING, LOWEST, RISING = "above the outfall", "falling", "lowest", "rising"
+# What a careful reading and a good prediction may differ by: less says nothing about the sag.
+NEAR_MG_L = 0.3
 BY_PLANTS = "Plants give off oxygen in the light; before dawn it will be lower."
 
 
@@ -38,6 +40,11 @@ class Facts:
         """Return read less predicted."""
         return None if self.predicted_mg_l is None else self.do_mg_l - self.predicted_mg_l
 
+    @property
+    def in_band(self):
+        """Return whether the plan's own doubts allow the reading."""
+        return self.low_mg_l <= self.do_mg_l <= self.high_mg_l
+
 
 def sentence(facts):
     """Return what the reading means, in one sentence."""
@@ -45,7 +52,7 @@ def sentence(facts):
         return _without_oxygen(facts)
     if facts.predicted_mg_l is None:
         return _without_prediction(facts)
-    if facts.low_mg_l <= facts.do_mg_l <= facts.high_mg_l:
+    if abs(facts.difference) <= NEAR_MG_L:
         return f"As predicted: the plan has {_band(facts)} here."
     if facts.limb == ABOVE:
         brings = "less" if facts.difference < 0 else "more"
@@ -56,9 +63,11 @@ def sentence(facts):
 def afterwards(facts):
     """Return the short sentences that follow: neighbours, plants, criterion, an end that is still open."""
     says = []
-    outside = facts.predicted_mg_l is not None and not facts.low_mg_l <= facts.do_mg_l <= facts.high_mg_l
-    if outside and (neighbours := _neighbours(facts)):
-        says.append(neighbours)
+    if facts.predicted_mg_l is not None and abs(facts.difference) > NEAR_MG_L:
+        if facts.in_band:
+            says.append(f"The plan's own doubts allow it: {facts.low_mg_l:.1f} to {facts.high_mg_l:.1f} mg/L.")
+        if neighbours := _neighbours(facts):
+            says.append(neighbours)
     if facts.percent is not None and facts.percent > 100:
         says.append(f"Above saturation. {BY_PLANTS}")
     if facts.criterion_mg_l is not None and facts.do_mg_l < facts.criterion_mg_l:
