@@ -1,12 +1,10 @@
 import copy
-import time
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from calc.spread import band
 from tests.webapp.plans import PLAN, put_plan
 from webapp.charts import sag_chart
 from webapp.display import Show
@@ -141,18 +139,6 @@ def test_whatever_a_form_lets_in_is_predicted_or_answered_in_words(cells, elevat
     else:
         assert answer.missing
         assert "_" not in " ".join(answer.missing)
-
-
-def test_prediction_costs_little_more_than_its_band():
-    predicted = predict_plan(PLAN, 210.0)
-    whole = min(_seconds(lambda: predict_plan(PLAN, 210.0)) for _ in range(5))
-    assert whole < 5 * min(_seconds(lambda: band(predicted.river, predicted.grid_km)) for _ in range(5))
-
-
-def _seconds(deed):
-    begun = time.perf_counter()
-    deed()
-    return time.perf_counter() - begun
 
 
 def test_stored_plan_is_predicted_once(db, survey, people):
