@@ -63,7 +63,7 @@ class FitSettings:
     scale_regret_mg_l: float = 0.04
     weigh_place: float = 1.0
     weigh_regret: float = 1.0
-    enough_of_best: float = 0.8
+    enough_of_best: float = 0.75
     fewest_stations: int = 4
     between: float = 0.95
     do_half_mg_l: float = 0.30
