@@ -6,9 +6,9 @@ const PAGES = "bankside-pages";
 
 // What a day without signal would miss, in words; nothing when all is here.
 export async function missing(survey) {
+  if (!("serviceWorker" in navigator)) return ["HTTPS"];
   const pack = await get("packs", survey);
   if (!pack) return ["the field pack"];
-  if (!("serviceWorker" in navigator)) return ["HTTPS"];
   const [pages, worker] = await Promise.all([caches.open(PAGES), navigator.serviceWorker.getRegistration()]);
   const here = (list, cache) => Promise.all(list.map((one) => cache.match(one, { ignoreVary: true })));
   const [kept, files] = await Promise.all([here(pack.pages, pages), here(pack.files, caches)]);

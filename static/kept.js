@@ -15,6 +15,16 @@ function put(section) {
   window.scrollTo(0, 0);
 }
 
+// The sheet on this phone doesn't know what was read since it was fetched: the next station is the next one down.
+function offerNext(link, pack, record) {
+  const here = pack?.stations.findIndex((one) => one.code === record.code) ?? -1;
+  const next = here >= 0 ? pack.stations[here + 1] : undefined;
+  link.hidden = !next || !navigator.serviceWorker?.controller;
+  if (!next) return;
+  link.href = `/surveys/${record.survey}/stations/${encodeURIComponent(next.code)}/reading`;
+  link.textContent = `Next: ${next.code}`;
+}
+
 async function showKept({ detail: record }) {
   const view = template.content.firstElementChild.cloneNode(true);
   const at = (name) => view.querySelector(`[data-${name}]`);
@@ -26,6 +36,7 @@ async function showKept({ detail: record }) {
   shown = record.id;
   put(view);
   const pack = await get("packs", record.survey).catch(() => undefined);
+  offerNext(at("next"), pack, record);
   const check = pack && checkOnPhone(pack, record);
   at("no-check").hidden = Boolean(check);
   if (!check) return;

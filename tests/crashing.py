@@ -9,6 +9,7 @@ import urllib.error
 import urllib.parse
 import urllib.request
 import uuid
+from http.client import HTTPException
 from http.cookiejar import CookieJar
 
 from webapp.demo import SIGN_INS
@@ -61,7 +62,7 @@ class Phone:
         except urllib.error.HTTPError as answer:
             self.refused.append(answer.code)
             return answer.code < 500
-        except (OSError, ValueError):
+        except (OSError, HTTPException):
             self.lost_answers += 1
             return False
         if headers["X-Stored-Id"] == form["submission_id"]:

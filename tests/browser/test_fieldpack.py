@@ -53,6 +53,8 @@ def test_a_day_without_a_server_and_back(ready, server, stored):  # noqa: F811
         save(page)
         expect(page.locator("main")).to_contain_text("Saved on this phone, not on the server yet")
         expect(page.locator("#reading")).to_contain_text("of 8.")
+        if code != "D9":
+            expect(page.get_by_role("link", name=f"Next: D{7 + number}")).to_be_visible()
         page.get_by_role("link", name="Field sheet").last.tap()
         expect(page.locator(f"#station-{code}")).to_contain_text("1 reading on this phone, not sent yet")
     expect(page.locator(LINE)).to_contain_text("3 readings wait on this phone")
