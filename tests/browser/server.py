@@ -4,15 +4,19 @@ import os
 import signal
 import subprocess
 import sys
+from pathlib import Path
 
 from tests.browser.conftest import _wait_for, free_port
 
+ROOT = Path(__file__).resolve().parents[2]
+
 
 class Server:
-    """A server process on a data folder and a port that stay the same."""
+    """A server process on a data folder and a port that stay the same; code is the folder of its program."""
 
-    def __init__(self, data_dir):
+    def __init__(self, data_dir, code=ROOT):
         self.data_dir = data_dir
+        self.code = code
         self.port = free_port()
         self.address = f"http://127.0.0.1:{self.port}"
         self.process = None
@@ -22,7 +26,7 @@ class Server:
         environ = {name: value for name, value in os.environ.items() if not name.startswith("BANKSIDE_")}
         arguments = [command, "--data", str(self.data_dir), "--host", "127.0.0.1", "--port", str(self.port)]
         program = [sys.executable, "-c", "from webapp.cli import main; main()", *arguments]
-        self.process = subprocess.Popen(program, env=environ, stdout=subprocess.DEVNULL)
+        self.process = subprocess.Popen(program, env=environ, cwd=self.code, stdout=subprocess.DEVNULL)
         _wait_for(self.address, self.process)
 
     def kill(self):
