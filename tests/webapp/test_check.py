@@ -57,6 +57,12 @@ def test_low_but_rising_puts_the_low_point_upstream():
     assert "rises from D4 to here: the low point lies upstream of D5" in sentence(facts)
 
 
+@pytest.mark.parametrize("upstream", [3.96, 4.04])
+def test_low_and_level_leaves_open_where_the_low_point_lies(upstream):
+    facts = replace(HERE, do_mg_l=4.0, upstream_code="D4", upstream_do_mg_l=upstream)
+    assert "level from D4 to here: the low point may lie downstream of D5" in sentence(facts)
+
+
 def test_neighbour_that_differs_the_same_way_confirms_the_river():
     facts = replace(HERE, do_mg_l=4.0, upstream_code="D4", upstream_difference=-0.9)
     assert "D4 differs the same way: it is the river." in afterwards(facts)

@@ -5,6 +5,8 @@ from dataclasses import dataclass
 ABOVE, FALLING, LOWEST, RISING = "above the outfall", "falling", "lowest", "rising"
 # What a careful reading and a good prediction may differ by: less says nothing about the sag.
 NEAR_MG_L = 0.3
+# What two careful readings may differ by: less is neither a rise nor a fall of the river.
+LEVEL_MG_L = 0.2
 BY_PLANTS = "Plants give off oxygen in the light; before dawn it will be lower."
 
 
@@ -104,7 +106,10 @@ def _lower(facts):
 def _still_falling(facts):
     if facts.upstream_do_mg_l is None:
         return f"; the low point may lie downstream of {facts.code}"
-    falls = facts.do_mg_l < facts.upstream_do_mg_l
+    change = facts.do_mg_l - facts.upstream_do_mg_l
+    if abs(change) < LEVEL_MG_L:
+        return f"; oxygen is level from {facts.upstream_code} to here: the low point may lie downstream of {facts.code}"
+    falls = change < 0
     where = f"may lie downstream of {facts.code}" if falls else f"lies upstream of {facts.code}"
     return f"; oxygen {'still falls' if falls else 'rises'} from {facts.upstream_code} to here: the low point {where}"
 
