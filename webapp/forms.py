@@ -54,6 +54,10 @@ class Fields:
         """Set the field's message, unless it has one, and return None."""
         self.errors.setdefault(name, message)
 
+    def holds(self, name):
+        """Return whether anything was typed into a field."""
+        return bool(self._raw(name))
+
     def text(self, name, label, longest=200, required=True):
         """Return the text, without surrounding blanks."""
         value = self._raw(name)

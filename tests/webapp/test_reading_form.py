@@ -1,3 +1,4 @@
+import html
 import re
 import uuid
 from contextlib import contextmanager
@@ -81,6 +82,22 @@ def test_reading_is_saved_and_leads_to_its_check(crew, address, stored):
     assert reading.entered["do_mg_l"] == {"text": "6,1", "unit": "mg/L"}
     assert (reading.author.name, reading.station.code, reading.note) == ("Cleo Banks", "D2", "wind from the west")
     assert "6.10" in crew.get(answer.location).text
+
+
+def test_river_without_any_oxygen_is_read_as_well(crew, address, stored):
+    form = a_form(do_mg_l="0.0")
+    asked = crew.post(address, form)
+    assert asked.status_code == 422 and "is below" in asked.text
+    kept = html.unescape(re.search(r'name="keep" value="([^"]*)"', asked.text).group(1))
+    assert crew.post(address, {**form, "keep": kept}).status_code == 303
+    assert [one.do_mg_l for one in stored()] == [0.0]
+
+
+@pytest.mark.parametrize("blank", [" ", "\x00"])
+def test_blank_percent_does_not_stand_for_oxygen(crew, address, stored, blank):
+    answer = crew.post(address, a_form(do_mg_l="", do_percent=blank))
+    assert answer.status_code == 422 and "Enter the oxygen." in answer.text
+    assert stored() == []
 
 
 def test_with_htmx_the_check_comes_in_place(crew, address):

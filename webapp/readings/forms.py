@@ -52,7 +52,7 @@ def parse_reading(source, show, station_code, now):
         id=fields.uuid("submission_id"),
         station_code=station_code,
         taken_at=_time(fields, now),
-        do_mg_l=_measured(fields, "do_mg_l", "oxygen", required=not fields.source.get("do_percent")),
+        do_mg_l=_measured(fields, "do_mg_l", "oxygen", required=not fields.holds("do_percent")),
         water_temp_c=_measured(fields, "water_temp_c", "water temperature", required=True),
         **_velocity(fields),
         **{name: _measured(fields, name, label) for name, label in _PLAIN},
@@ -62,7 +62,8 @@ def parse_reading(source, show, station_code, now):
     )
     if new.sensor_depth_m is not None and new.depth_m is not None and new.sensor_depth_m > new.depth_m:
         fields.refuse("sensor_depth_m", "The sensor would be under the bed. Check this and the depth of the water.")
-    usable = set(fields.errors) <= set(WIDE) and None not in (new.water_temp_c, new.do_mg_l or new.do_percent)
+    oxygen = new.do_mg_l if new.do_mg_l is not None else new.do_percent  # none at all is a reading too: 0 mg/L
+    usable = set(fields.errors) <= set(WIDE) and None not in (new.water_temp_c, oxygen)
     return (new if usable else None), fields.errors
 
 
