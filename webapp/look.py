@@ -61,9 +61,16 @@ def _look():
 
 
 def _switch():
-    back = urlsplit(request.form.get("back") or "/")
-    here = back.path if back.path.startswith("/") and not back.path.startswith(("//", "/\\")) else "/"
-    response = redirect(here, code=303)
+    response = redirect(_path_of(request.form.get("back") or "/"), code=303)
     other = "light" if _look() == "dark" else "dark"
     response.set_cookie("look", other, max_age=31536000, samesite="Lax", secure=request.is_secure, httponly=True)
     return response
+
+
+def _path_of(address):
+    """Return the path of an address when it is one of this server's, else the front page."""
+    try:
+        path = urlsplit(address).path
+    except ValueError:  # a bracket that never closes
+        return "/"
+    return path if path.startswith("/") and not path.startswith(("//", "/\\")) else "/"

@@ -44,6 +44,10 @@ def test_dark_look_is_remembered_and_only_leads_back_here(browser_as):
     assert 'data-look="light"' in browser.get("/").text
 
 
+def test_look_is_switched_also_where_the_way_back_is_no_address(browser_as):
+    assert browser_as("crew").post("/look", {"back": "//["}).headers["Location"] == "/"
+
+
 def test_an_upload_that_is_too_large_is_told_so(browser_as):
     answer = browser_as("office").post("/surveys/new", {"name": "x" * (6 * 1024 * 1024)})
     assert answer.status_code == 413

@@ -31,7 +31,7 @@ def test_sign_in_leads_back_to_the_page_that_was_asked_for(app, people):
 
 
 @pytest.mark.parametrize(
-    "next_page", ["//elsewhere.example/", "https://elsewhere.example/", "/\\elsewhere.example", "x"]
+    "next_page", ["//elsewhere.example/", "https://elsewhere.example/", "/\\elsewhere.example", "x", "//[", "http://[x"]
 )
 def test_sign_in_never_leads_to_another_server(app, people, next_page):
     form = {"sign_in": "crew.test", "password": PASSWORD, "next": next_page}

@@ -122,7 +122,10 @@ def _people(status=200, form=None, errors=None):
 
 def _here(address):
     """Return the address when it is a path of this server, else the front page."""
-    parts = urlsplit(address or "")
+    try:
+        parts = urlsplit(address or "")
+    except ValueError:  # a bracket that never closes
+        return "/"
     local = not parts.scheme and not parts.netloc and parts.path.startswith("/") and not parts.path.startswith("//")
     if not local or "\\" in parts.path or parts.path.startswith(("/sign-", "/look")):
         return "/"
