@@ -101,6 +101,13 @@ def test_survey_of_another_crew_is_not_found(browser_as, deed):
     assert browser_as("lead").post(f"{other}/{deed}", {"id": str(uuid.uuid4()), "place": "x"}).status_code == 404
 
 
+@pytest.mark.parametrize("deed", ["decline", "offer", "leave"])
+def test_survey_without_a_plan_has_nothing_to_decide(app, browser_as, survey, deed):
+    form = {"id": str(uuid.uuid4()), "place": "Heron pool", "choice": "stayed", "shown": service.mark_of(None, ())}
+    answer = browser_as("lead").post(f"/surveys/{survey.id}/sag/{deed}", form)
+    assert answer.status_code == 409 and "There is no plan yet" in answer.text
+
+
 def test_one_tap_adds_a_station_and_keeps_what_was_on_the_screen(browser_as, day, stored, people):
     lead = browser_as("lead")
     before = stored.stations()

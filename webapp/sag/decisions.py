@@ -106,6 +106,8 @@ def _same_screen(sag, asked):
 
 
 def _decide(db, survey, sag, asked, kind, chosen, by_id, more=None):
+    if sag.plan is None:
+        raise LookAgain("There is no plan yet, so there is nothing to decide. Make the plan first.")
     decision = Decision(
         id=asked.id,
         survey_id=survey.id,
