@@ -98,6 +98,7 @@ def test_ticked_proposals_become_stations_with_codes_of_their_own(browser_as, pl
 @pytest.mark.parametrize(
     ("field", "typed", "message"),
     [
+        ("code", "a/b", "A code stands in the address"),
         ("code", "D3", "The survey has or had a station"),
         ("code", "", "It is empty"),
         ("distance_km", "far", "Enter a number"),

@@ -81,6 +81,8 @@ def test_the_plan_of_a_survey_one_is_not_on_is_not_found(app, browser_as, survey
         "/bridges.csv",
         "/bridges/import",
         "/versions/9",
+        "/versions/3000000000",
+        "/versions/99999999999999999999",
     ],
 )
 def test_what_a_plan_does_not_have_is_not_found(browser_as, plan, address):
@@ -143,6 +145,7 @@ def test_a_bad_entry_is_told_beside_its_field_and_kept(browser_as, plan, now, fi
             "There is another access point Willow lane",
         ),
         ("/stations/new", {"code": "d3", "distance_km": "3"}, "code", "There is another station D3"),
+        ("/stations/new", {"code": "D4/a", "distance_km": "3"}, "code", "A code stands in the address of a page"),
         ("/stations/new", {"code": "D99", "distance_km": "3", "state": "added"}, "reason", "Say why it was added"),
         ("/basis/0/edit", {"sd_kd": "7"}, "sd_kd", "It must lie between 0 and 2; check it."),
     ],

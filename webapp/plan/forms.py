@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass, field, replace
 
-from webapp.plan.rows import next_codes, refused_rows, row_title, with_row
+from webapp.plan.rows import next_codes, refused_code, refused_rows, row_title, with_row
 from webapp.plan.tables import PLAN_TABLES, STATIONS
 from webapp.tablecell import BadText, read_cell
 from webapp.tablefile import BadCell, read_table
@@ -225,6 +225,8 @@ def parse_proposal(source, show, known, on_site):
         code = str(row.get("code") or "").casefold()
         if code and code in taken:
             errors[f"code_{number}"] = "The survey has or had a station of this code; choose another."
+        if (refusal := refused_code(code)) is not None:
+            errors[f"code_{number}"] = refusal
         taken.add(code)
         rows.append(row)
     if not rows:

@@ -84,7 +84,16 @@ def _water(row, above):
     return None
 
 
+def refused_code(code):
+    """Return why a station can't have a code, or None. Its pages have the code in their address."""
+    if "/" in code or code in (".", ".."):
+        return "A code stands in the address of a page: use letters, digits and hyphens, for example D4-a."
+    return None
+
+
 def _station(row, _above):
+    if (refusal := refused_code(str(row.get("code") or ""))) is not None:
+        return "code", refusal
     if row.get("state") in ("added", "dropped") and not row.get("reason"):
         return "reason", "Say why it was added on site or dropped."
     return None

@@ -29,7 +29,7 @@ def page(survey_id):
     return _plan_page(_open(survey_id), queries.plan_versions(get_db(), survey_id), current_user.may("plan"))
 
 
-@bp.get(f"{PLAN}/versions/<int:number>")
+@bp.get(f"{PLAN}/versions/<int(max=99999999):number>")  # a longer one fits no column
 @login_required
 def version(survey_id, number):
     """Show a version of the plan as it was."""
