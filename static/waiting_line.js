@@ -72,4 +72,8 @@ if ("kept" in document.documentElement.dataset) {
   from.textContent = `No answer from the server: this is the page as it was ${clock(Number(document.documentElement.dataset.kept))}.`;
   from.hidden = false;
 }
-settlePerson().then(forgetOld).then(show).then(send).catch(() => { line.hidden = true; });
+settlePerson().then(forgetOld).then(show).then(send).catch(() => {
+  line.querySelector("a").textContent = "This phone keeps no readings: save only with signal";
+  line.classList.add("some");
+  line.hidden = false;
+});

@@ -70,16 +70,16 @@ async function offerCopy() {
 }
 
 async function showParts() {
-  await offerCopy();
   part("take-over").hidden = false;
   part("storage-part").hidden = false;
   await storage().catch(({ message }) => {
     part("storage-test").textContent = `This phone keeps nothing: ${message}. Do not record on it.`;
   });
+  await offerCopy();
 }
 
 part("save-copy").addEventListener("click", saveCopy);
 part("take-over").addEventListener("click", takeCopy);
 part("persist").addEventListener("click", persist);
 document.addEventListener("bankside:waiting", offerCopy);
-showParts();
+showParts().catch(({ message }) => say(message));

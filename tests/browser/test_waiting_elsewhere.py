@@ -88,3 +88,18 @@ def test_closed_browser_gives_back_what_was_half_typed_and_what_waits(opened, se
     expect(page.locator(LINE)).to_contain_text("Nothing waits on this phone", timeout=60000)
     assert kept(page) == [["sent", "7,3"]]
     assert [one[1:] for one in stored("lost browser")] == [(7.3, "crew")]
+
+
+def test_browser_that_refuses_to_keep_anything_says_so_and_still_sends(opened, server, stored):  # noqa: F811
+    context, page = opened(server.address)
+    context.add_init_script("Object.defineProperty(window, 'indexedDB', { value: undefined })")
+    sign_in(page, server.address, "crew")
+    page.survey = survey_address(page)
+    fill(page, "7,4", "nothing kept")
+    expect(page.get_by_text("This phone keeps nothing for this page.")).to_be_visible()
+    expect(page.locator(LINE)).to_contain_text("This phone keeps no readings: save only with signal")
+    save(page)
+    expect(page.locator("main")).to_contain_text("Saved on the server", timeout=20000)
+    assert [one[1:] for one in stored("nothing kept")] == [(7.4, "crew")]
+    page.goto("/phone")
+    expect(page.get_by_text("Do not record on it.")).to_be_visible()
