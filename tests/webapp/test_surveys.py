@@ -1,4 +1,7 @@
+from datetime import UTC, datetime
+
 import pytest
+from sqlalchemy import update
 
 from tests.conftest import SURVEY_FORM
 from webapp.models import History, SettingsVersion, Survey
@@ -84,3 +87,22 @@ def test_unknown_person_and_unknown_survey_are_not_found(browser_as, survey):
     office = browser_as("office")
     assert office.post(f"/surveys/{survey.id}/people", {"person_id": "nobody"}).status_code == 404
     assert office.get("/surveys/no-such-survey/about").status_code == 404
+
+
+def test_other_units_on_screen_do_not_change_what_nobody_touched(app, browser_as, db, survey):
+    later = datetime(2026, 10, 25, 1, 30, 20, tzinfo=UTC)  # 02:30 for the second time, as the clocks go back
+    marked = {"distance_rule": "river_km", "outfall_mark": 66.0, "release_at": later}
+    db.execute(update(Survey).values(**marked))
+    db.commit()
+    lead, about = browser_as("lead"), f"/surveys/{survey.id}/about"
+    form = {**SURVEY_FORM, "outfall_mark": "66", "release_at": "2026-10-25T02:30"}
+    form |= {"unit_system": "us", "distance_rule": "river_mile"}
+    assert lead.post(about, form).status_code == 303
+    with app.extensions["bankside_database"].reading() as session:
+        now = session.get(Survey, survey.id)
+    assert (now.unit_system, now.elevation_m, now.release_at) == ("us", 210.0, later)
+    assert now.outfall_mark == pytest.approx(66 / 1.609344)
+    assert lead.post(about, {**form, "outfall_mark": "41", "elevation_m": "700"}).status_code == 303
+    with app.extensions["bankside_database"].reading() as session:
+        now = session.get(Survey, survey.id)
+    assert (now.elevation_m, now.outfall_mark) == (pytest.approx(213.36), 41.0)

@@ -1,6 +1,6 @@
 """A survey's own facts, typed or from the first row of a survey.csv."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime
 from zoneinfo import available_timezones
 
@@ -68,3 +68,24 @@ def _outfall_mark(fields, rule):
     if rule in (None, "downstream"):
         return None
     return fields.number("outfall_mark", "outfall's own river mark", 0, 10000)
+
+
+def with_untouched(facts, source, survey, typed):
+    """Return the facts with each number that nobody touched as it is stored; typed is the form as it was opened.
+
+    Where other units were chosen, the number that still stands in the form is in the former ones.
+    """
+
+    def untouched(name):
+        return str(source.get(name) or "").strip() == typed[name]
+
+    kept = {}
+    if untouched("elevation_m"):
+        kept["elevation_m"] = survey.elevation_m
+    if untouched("outfall_mark") and None not in (facts.outfall_mark, survey.outfall_mark):
+        before, after = (Show(distance_rule=one.distance_rule) for one in (survey, facts))
+        mark_km = before.to_si("length", survey.outfall_mark, before.unit_code("place"))
+        kept["outfall_mark"] = after.shown("length", mark_km, after.unit_code("place"))
+    if untouched("release_at") and facts.time_zone == survey.time_zone:
+        kept["release_at"] = survey.release_at
+    return replace(facts, **kept)

@@ -8,7 +8,7 @@ from webapp.display import Show
 from webapp.people import queries as people_queries
 from webapp.people.access import needs
 from webapp.surveys import queries, service
-from webapp.surveys.forms import DISTANCE_RULES, SAMPLINGS, UNIT_SYSTEMS, parse_survey
+from webapp.surveys.forms import DISTANCE_RULES, SAMPLINGS, UNIT_SYSTEMS, parse_survey, with_untouched
 
 bp = Blueprint("surveys", __name__)
 OPTIONS = {"unit_systems": UNIT_SYSTEMS, "distance_rules": DISTANCE_RULES, "samplings": SAMPLINGS}
@@ -54,6 +54,8 @@ def change_survey(survey_id):
     facts, errors = parse_survey(request.form)
     if errors:
         return _about(survey_id, 422, request.form, errors)
+    survey = queries.get_survey(get_db(), survey_id, current_user.id)
+    facts = with_untouched(facts, request.form, survey, typed_facts(survey, Show.of(survey)))
     service.change_survey(get_db(), survey_id, facts, current_user.id)
     return redirect(url_for(".about", survey_id=survey_id), code=303)
 
