@@ -90,7 +90,7 @@ ACCESS = [
         ("Old pump house", 8.6, 10, "Concrete steps on the right bank", "Steep steps"),
         ("Long straight, marker 3", 10.3, 8, "Bank path, then the fishing stand", "Deep at the stand: do not wade"),
         ("Reed landing", 12.1, 9, "Boat landing, left bank", "Slippery boards"),
-        ("Miller's lane", 13.6, 7, "End of the lane, gravel beach", "None known; look before you step in"),
+        ("Miller's lane", 13.6, 7, "End of the lane, gravel beach", ""),
         ("Heron pool", 15.3, 11, "Path from the lay-by", "Deep pool: read from the bank"),
         ("Stone barn", 17.1, 8, "Track past the barn, ladder at the wall", "Ladder; hold on with both hands"),
         ("Chapel stairs", 18.8, 9, "Stone stairs by the chapel", "Slippery stone"),
@@ -98,7 +98,7 @@ ACCESS = [
         ("Gravel bar", 22.2, 10, "Across the gravel bar", "Fast water at the outer bank"),
         ("Teal bridge", 25.2, 12, "From the bridge, upstream rail", "Road bridge: high-visibility clothing"),
         ("Below Willow weir", 27.6, 9, "Right bank, 500 m below the weir", "Keep clear of the weir"),
-        ("Sluice green", 28.9, 6, "Lawn on the left bank", "None known; look before you step in"),
+        ("Sluice green", 28.9, 6, "Lawn on the left bank", ""),
         ("Lower bridge", 31.4, 8, "Steps beside the bridge", "Soft bed"),
     )
 ]  # fmt: skip

@@ -73,7 +73,7 @@ def lowest_used(readings):
 
 def _lowest_words(show, readings):
     lowest = lowest_used(readings)
-    return f"Lowest reading so far {show.text('oxygen', lowest.do_mg_l, 1)} at {lowest.label}." if lowest else ""
+    return f"Lowest reading so far {show.text('oxygen', lowest.do_mg_l)} at {lowest.label}." if lowest else ""
 
 
 def description(show, prediction, readings, criterion, today=None):

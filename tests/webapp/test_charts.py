@@ -196,7 +196,7 @@ def test_sentence_says_where_and_how_low_with_the_interval(predicted):
     assert sag_chart(SI, predicted, READINGS).sentence == (
         f"Predicted lowest oxygen {point.do_mg_l:.1f} mg/L at {point.distance_km:.2f} km below the outfall, "
         f"21 h 35 min after it (90 %: {span.low_mg_l:.1f} to {span.high_mg_l:.1f} mg/L, "
-        f"{span.low_km:.1f} to {span.high_km:.1f} km). Lowest reading so far 3.0 mg/L at D5."
+        f"{span.low_km:.1f} to {span.high_km:.1f} km). Lowest reading so far 3.00 mg/L at D5."
     )
 
 
@@ -209,7 +209,7 @@ def test_sentence_in_river_miles_names_the_mile(predicted):
 
 def test_reading_set_aside_is_never_the_lowest(predicted):
     low = Read("9", 14.8, 0.1, "D9", "set aside")
-    assert "Lowest reading so far 3.0 mg/L at D5." in sag_chart(SI, predicted, [*READINGS, low]).sentence
+    assert "Lowest reading so far 3.00 mg/L at D5." in sag_chart(SI, predicted, [*READINGS, low]).sentence
 
 
 def changed(**columns):
