@@ -62,6 +62,11 @@ def test_what_was_measured_in_a_reach_stands_before_what_the_flow_says(measured,
     assert (rates.velocity_m_s, rates.velocity_why) == (pytest.approx(velocity), why)
 
 
+def test_reach_measured_at_freezing_point_is_so_cold():
+    tables = with_day(reaches=[{"reach": "Willow glides", "from_km": 0.0, "water_temp_c": 0.0}])
+    assert predict_today(tables, ELEVATION_M).reach_rates[1].water_temp_c == 0.0
+
+
 def test_dye_time_is_the_travel_time_through_the_reach():
     tables = with_day(reaches=[{"reach": "Willow glides", "from_km": 0.0, "travel_time_h": 9.0}])
     assert predict_today(tables, ELEVATION_M).at(7.2).travel_time_h == pytest.approx(9.0)

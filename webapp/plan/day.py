@@ -148,7 +148,8 @@ def _reach(row, planned, flow_m3_s, warmer_c, measured):
             changed["width_m"] = float(width_at_flow_m(row["width_m"], *flows))
     if row.get("water_temp_c") is not None:
         changed["water_temp_c"] = min(max(row["water_temp_c"] + warmer_c, _COLDEST_C), _WARMEST_C)
-    changed |= {key: measured[key] for key in ("velocity_m_s", "depth_m", "water_temp_c") if measured.get(key)}
+    measurable = ("velocity_m_s", "depth_m", "water_temp_c")
+    changed |= {key: measured[key] for key in measurable if measured.get(key) is not None}
     if measured.get("travel_time_h"):
         changed["velocity_m_s"] = (row["to_km"] - row["from_km"]) / (KM_PER_HOUR * measured["travel_time_h"])
     return changed
