@@ -76,7 +76,7 @@ def test_offers_come_with_reason_way_time_and_room_in_the_day(browser_as, day):
     card = " ".join(text.split("Heron pool", 1)[1].split("</li>")[0].split())
     assert "Shows whether oxygen recovers below your last station" in card
     assert "km along the river from the last reading, about 27 min to drive" in card
-    assert re.search(r"Parcel there \d\d:\d\d, ", card)
+    assert re.search(r"Parcel there (\w+ \d+ \w+ )?\d\d:\d\d, ", card)
     assert "no time limit is known" in card
     assert "Hazard: Deep pool" in card
 
@@ -150,6 +150,7 @@ def test_second_tap_sends_a_person(browser_as, day, stored, people):
     assert stored.stations()["D5A"]["crew"] == people["crew"].name
     text = lead.get(day).text
     assert "Who reads it?" not in text and f"for {people['crew'].name}" in text
+    assert f"it is on every field sheet. {people['crew'].name} reads it." in text
 
 
 @pytest.mark.parametrize("form", [{"code": "D5", "crew": "Nobody"}, {"code": "", "crew": "Cleo Banks"}, {}])

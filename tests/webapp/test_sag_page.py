@@ -67,6 +67,7 @@ def test_before_the_first_reading_the_plot_shows_the_prediction_alone(sag_text, 
     assert '<polyline class="line-plan"' in text
     assert "Predicted lowest oxygen 3.5 mg/L at 15.92 km below the outfall" in text
     assert 'class="mark-used"' not in text
+    assert "along the river from the outfall" in text and "from the last reading" not in text
 
 
 def test_answer_comes_first_then_the_lowest_reading_and_the_criterion(sag_text, read):
