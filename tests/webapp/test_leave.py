@@ -86,6 +86,10 @@ def test_close_out_list_tells_what_is_open():
     ]
 
 
+def test_close_out_list_praises_no_reading_before_there_is_one():
+    assert closing()[-1] == (False, "No reading to have a time and a meter yet.")
+
+
 def test_close_out_list_tells_what_is_done_and_that_the_day_changed_the_anchor():
     done = closing(reading("U1", 8.0), reading("D3", 4.0, 60), reading("D3", 4.1, 63), reading("U1", 8.5, 400))
     assert done == [

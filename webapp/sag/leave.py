@@ -169,12 +169,13 @@ def closing_list(visits, stations):
     order = {row["code"]: row["distance_km"] for row in stations}
     repeated = sorted({one.code for one in visits if one.is_replicated})
     missing = sorted({one.code for one in visits if not one.meter})
+    noted = "Every reading has its time and meter." if visits else "No reading to have a time and a meter yet."
     return (
         _anchor(visits, order),
         Item(bool(repeated), f"Replicates at {', '.join(repeated)}." if repeated else "No replicate was read yet."),
         Item(
             not missing and bool(visits),
-            f"The meter was not noted at {', '.join(missing)}." if missing else "Every reading has its time and meter.",
+            f"The meter was not noted at {', '.join(missing)}." if missing else noted,
         ),
     )
 
