@@ -38,7 +38,7 @@ def test_multiples_below_the_last_reach_are_named_and_not_proposed():
     beyond = [multiple for multiple in MULTIPLES if multiple not in reached]
     assert beyond == [2.0]
     assert [note.pattern.format(*(text for _, text in note.values)) for note in proposed.notes] == [
-        "2 × the critical travel time lies below the last reach: add a reach there to plan it."
+        "2 × the travel time to the low point lies below the last reach: add a reach there to plan it."
     ]
 
 
@@ -48,7 +48,7 @@ def test_places_go_to_the_nearest_access_point_and_say_how_far():
     for one in proposed.proposals:
         assert one.distance_km == names[one.access]
         assert one.moved_km == pytest.approx(one.distance_km - one.wanted_km)
-    at_critical = next(one for one in proposed.proposals if "1 × the critical travel time" in one.whys)
+    at_critical = next(one for one in proposed.proposals if "1 × the travel time to the low point" in one.whys)
     assert abs(at_critical.moved_km) == min(abs(place - at_critical.wanted_km) for place in names.values())
 
 

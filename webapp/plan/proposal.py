@@ -11,9 +11,9 @@ MULTIPLES = (0.25, 0.5, 0.75, 1.0, 1.25, 1.5, 2.0)
 ABOVE_OUTFALL_KM = -0.3
 _NOTHING_ABOVE = "The first reach begins at the outfall: add one above it for a station there."
 _NO_MIXING = "Enter width and slope of the reach at the outfall for a station where the river is mixed across."
-_NO_SAG = "Oxygen is lowest right where the waters mix, so there is no critical travel time to take parts of."
+_NO_SAG = "Oxygen is lowest right where the waters mix, so there is no travel time to a low point to take parts of."
 _MIXES_BEYOND = "The river is mixed across only below the last reach."
-_BEYOND = "{} the critical travel time lies below the last reach: add a reach there to plan it."
+_BEYOND = "{} the travel time to the low point lies below the last reach: add a reach there to plan it."
 
 
 @dataclass(frozen=True)
@@ -93,7 +93,7 @@ def _at_multiples(prediction, notes):
         except OutOfRangeError:
             beyond.append(f"{multiple:g} ×")
         else:
-            places.append(Proposal(place, (f"{multiple:g} × the critical travel time",), place))
+            places.append(Proposal(place, (f"{multiple:g} × the travel time to the low point",), place))
     if beyond:
         notes.append(Note("below the last reach", _BEYOND, (("", ", ".join(beyond)),)))
     return places
