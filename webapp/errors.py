@@ -1,6 +1,7 @@
 """The refusals a service may raise, and the page each one becomes."""
 
 from flask import abort, render_template, request
+from sqlalchemy.exc import IntegrityError
 from werkzeug.exceptions import HTTPException
 
 
@@ -33,6 +34,7 @@ class Conflict(Refusal):
     status, title = 409, "Changed meanwhile"
 
 
+_UNIQUE_VIOLATION = "23505"  # as PostgreSQL numbers it
 WORDS = {
     400: ("That did not work", "The page sent something Bankside could not read. Go back and try again."),
     403: ("Not for your role", "Ask your office if you need this page."),
@@ -52,6 +54,7 @@ def register(app):
     app.before_request(_no_nul_in_address)
     app.register_error_handler(Refusal, lambda error: _page(error.status, error.title, error.message))
     app.register_error_handler(HTTPException, _http_page)
+    app.register_error_handler(IntegrityError, _saved_twice_at_once)
 
 
 def _no_nul_in_address():
@@ -64,6 +67,14 @@ def _http_page(error):
         return error
     title, message = WORDS.get(error.code, WORDS[400])
     return _page(error.code, title, getattr(error, "bankside_message", message))
+
+
+def _saved_twice_at_once(error):
+    """Answer the slower of two requests that made the same row on one PostgreSQL; any other fault stays one."""
+    if getattr(error.orig, "sqlstate", None) != _UNIQUE_VIOLATION:
+        raise error
+    message = "The same was saved at this moment, perhaps by your own second tap. Open the page again to see it."
+    return _page(Conflict.status, Conflict.title, message)
 
 
 def _page(status, title, message):

@@ -179,6 +179,18 @@ def test_two_copies_that_change_the_plan_at_once_make_one_version(at, survey, co
     assert count(PlanVersion) == number + 1
 
 
+@pytest.mark.parametrize("round_number", range(3))
+def test_form_sent_twice_at_once_is_stored_once_and_no_fault(at, survey, count, round_number):
+    lead, other = at("lead"), at("lead", copy=1)
+    rows = "".join(f"D3,2026-08-1{round_number} 09:{minute:02d},5,20\n" for minute in range(40))
+    sheet = {"text": f"station,taken_at,do_mg_l,water_temp_c\n{rows}"}
+    before = count(Reading, Reading.note == "")
+    answers = at_once(*(partial(one.post, f"{survey}/readings/import", sheet) for one in (lead, other)))
+    statuses = sorted(answer.status_code for answer in answers)
+    assert statuses in ([303, 303], [303, 409])
+    assert count(Reading, Reading.note == "") == before + 40
+
+
 def test_two_phones_that_use_one_invitation_at_once_sign_one_in(apps, at, survey):
     lead = at("lead")
     for _ in range(4):

@@ -76,11 +76,11 @@ def take_copies(db, copies, person):
     Raises Conflict where somebody sent the same readings at the same moment: then nothing was stored.
     """
     now = datetime.now(UTC)
-    taken = [_take(db, one, person, now) for one in copies]
-    stored = Counter(one.survey_id for one, done in zip(copies, taken, strict=True) if done.outcome == STORED)
-    for survey_id, count in stored.items():
-        remember(db, survey_id, person.id, "readings taken from a phone's file", particulars={"readings": count})
     try:
+        taken = [_take(db, one, person, now) for one in copies]
+        stored = Counter(one.survey_id for one, done in zip(copies, taken, strict=True) if done.outcome == STORED)
+        for survey_id, count in stored.items():
+            remember(db, survey_id, person.id, "readings taken from a phone's file", particulars={"readings": count})
         db.commit()
     except IntegrityError as error:
         db.rollback()
