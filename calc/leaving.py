@@ -87,7 +87,9 @@ def _missing(estimate, settings, do_half, place_half, between):
     missing = {}
     count = len(estimate.stations_km)
     if count < settings.fewest_stations:
-        missing["stations"] = f"{count} of at least {settings.fewest_stations} stations with a reading that counts."
+        missing["stations"] = (
+            f"{count} of at least {settings.fewest_stations} stations below the outfall with a reading that counts."
+        )
     if estimate.fit.word != FITS and count >= settings.fewest_stations:
         missing["fit"] = f"The estimate {_FIT_SAID[estimate.fit.word]}. {estimate.fit.reason}"
     if between < settings.between:

@@ -52,7 +52,7 @@ def test_lowest_at_the_last_station_is_open_below():
     leave = leave_of(*readings)
     assert leave.word == "open below"
     assert leave.headline == "Open below: the lowest reading, 4.2 mg/L at D4, is your last station. Go on downstream."
-    assert "3 of at least 4 stations with a reading that counts." in leave.missing
+    assert "3 of at least 4 stations below the outfall with a reading that counts." in leave.missing
     assert not leave.settled
 
 

@@ -98,7 +98,7 @@ def test_lowest_at_an_end_leaves_that_side_open(sag_text, read, oxygen, says):
 def test_single_station_is_not_enough(sag_text, read):
     read("D4", 3.4)
     text = sag_text()
-    assert "Not yet: 1 of at least 4 stations with a reading that counts." in text
+    assert "Not yet: 1 of at least 4 stations below the outfall with a reading that counts." in text
     assert 'class="line-today"' not in text
 
 
