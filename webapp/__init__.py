@@ -68,7 +68,7 @@ def _register_features(app):
     from webapp.fieldpack.views import bp as fieldpack
     from webapp.fieldsheet.views import bp as fieldsheet
     from webapp.invitations.views import bp as invitations
-    from webapp.people.access import login_manager
+    from webapp.people.access import keep_to_its_survey, login_manager
     from webapp.people.views import bp as people
     from webapp.plan.views import bp as plan
     from webapp.readings.views import bp as readings
@@ -79,6 +79,7 @@ def _register_features(app):
     from webapp.trust.views import bp as trust
 
     login_manager.init_app(app)
+    app.before_request(keep_to_its_survey)
     for blueprint in (
         people,
         surveys,

@@ -8,7 +8,7 @@ from types import SimpleNamespace
 
 import pytest
 
-from tests.conftest import Browser
+from tests.conftest import SURVEY_FORM, Browser
 from webapp import create_app
 from webapp.invitations import service
 from webapp.models import History, Invitation, PhoneSession, SurveyMember
@@ -267,6 +267,21 @@ def test_another_surveys_lead_can_do_nothing_here(app, browser_as, address, surv
     assert lead.post(f"{address}/{invitation.id}/withdraw").status_code == 404
     assert lead.post(f"/surveys/{survey.id}/phones/{session.id}/end").status_code == 404
     assert phone.get("/").status_code == 200
+
+
+def test_an_invited_phone_reaches_the_survey_it_was_invited_to_and_no_other(browser_as, phone, link, people, survey):
+    office = browser_as("office")
+    elsewhere = office.post("/surveys/new", {**SURVEY_FORM, "name": "Elsewhere"}).headers["Location"].split("/")[2]
+    office.post(f"/surveys/{elsewhere}/people", {"person_id": people["crew"].id})
+    phone.join(link)
+    assert phone.get(f"/surveys/{survey.id}/sheet").status_code == 200
+    assert "Elsewhere" not in phone.get("/").text
+    for path in ("sheet", "sag", "readings", "about"):
+        answer = phone.get(f"/surveys/{elsewhere}/{path}")
+        assert answer.status_code == 404
+        assert "invited to another survey" in answer.text
+    crew = browser_as("crew")
+    assert crew.get(f"/surveys/{elsewhere}/sheet").status_code == 200
 
 
 def test_an_invitation_for_nobody_is_refused(browser_as, address):

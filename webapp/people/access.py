@@ -3,11 +3,11 @@
 from datetime import UTC, datetime, timedelta
 from functools import wraps
 
-from flask import session
+from flask import request, session
 from flask_login import LoginManager, current_user, login_user, logout_user
 
 from webapp.db import get_db
-from webapp.errors import NotAllowed
+from webapp.errors import NotAllowed, NotFound
 from webapp.people import queries
 
 ROLES = {"crew": "Crew", "lead": "Lead", "office": "Office"}
@@ -33,9 +33,9 @@ class SignedIn:
     is_active = True
     is_anonymous = False
 
-    def __init__(self, person, phone_id=None):
+    def __init__(self, person, phone_id=None, survey_id=None):
         self.id, self.name, self.role = person.id, person.name, person.role
-        self.phone_id = phone_id  # of a phone that an invitation signed in
+        self.phone_id, self.survey_id = phone_id, survey_id  # of a phone that an invitation signed in, else None
         self.session_key = person.session_key
 
     def get_id(self):
@@ -57,9 +57,18 @@ def load(session_id):
     person = queries.find_person(get_db(), person_id)
     if person is None or not person.active or person.session_key != key:
         return None
-    if phone_id is not None and not queries.phone_is_signed_in(get_db(), phone_id, person.id, now):
-        return None
-    return SignedIn(person, phone_id)
+    if phone_id is None:
+        return SignedIn(person)
+    survey_id = queries.find_survey_of_phone(get_db(), phone_id, person.id, now)
+    return None if survey_id is None else SignedIn(person, phone_id, survey_id)
+
+
+def keep_to_its_survey():
+    """Refuse an invited phone every survey but its own: whoever made the link may be on that one alone."""
+    asked = (request.view_args or {}).get("survey_id")
+    its_own = getattr(current_user, "survey_id", None) if asked is not None else None
+    if its_own is not None and asked != its_own:
+        raise NotFound("This phone was invited to another survey. Sign in with your password to reach this one.")
 
 
 def start_session(person):

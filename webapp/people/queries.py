@@ -33,9 +33,11 @@ def active_offices(db):
     return db.scalar(select(func.count()).where(Person.role == "office", Person.active))
 
 
-def surveys_of(db, person_id):
-    """Return the surveys a person is on, newest first."""
+def surveys_of(db, person_id, only=None):
+    """Return the surveys a person is on, newest first; only the one an invited phone is for, where its id is given."""
     query = select(Survey).join(SurveyMember).where(SurveyMember.person_id == person_id)
+    if only is not None:
+        query = query.where(Survey.id == only)
     return db.scalars(query.order_by(Survey.created_at.desc(), Survey.name)).all()
 
 
@@ -45,9 +47,12 @@ def members_of(db, survey_id):
     return db.scalars(query.order_by(func.lower(Person.name))).all()
 
 
-def phone_is_signed_in(db, phone_id, person_id, now):
-    """Return whether a phone signed in by invitation still is: not ended, in its time, its person on the survey."""
+def find_survey_of_phone(db, phone_id, person_id, now):
+    """Return the id of the survey that a phone signed in by invitation is for, None where it no longer is signed in.
+
+    It ends with its time, when somebody ends it, and when its person is taken off the survey.
+    """
     on_survey = (SurveyMember.survey_id == PhoneSession.survey_id) & (SurveyMember.person_id == PhoneSession.person_id)
-    query = select(PhoneSession.id).join(SurveyMember, on_survey)
+    query = select(PhoneSession.survey_id).join(SurveyMember, on_survey)
     query = query.where(PhoneSession.id == phone_id, PhoneSession.person_id == person_id)
-    return db.scalar(query.where(PhoneSession.ended_at.is_(None), PhoneSession.until > now)) is not None
+    return db.scalar(query.where(PhoneSession.ended_at.is_(None), PhoneSession.until > now))

@@ -90,6 +90,8 @@ def take_copies(db, copies, person):
 
 def _take(db, copied, person, now):
     what = f"{copied.code}, {copied.form.get('taken_at', '')}".replace("T", " ")
+    if person.survey_id not in (None, copied.survey_id):
+        return Taken(what, REFUSED, "It belongs to a survey that this phone was not invited to.")
     if copied.author_id != person.id and not person.may("correct"):
         return Taken(what, REFUSED, OTHERS_NAME)
     try:
