@@ -337,8 +337,8 @@ def _legend(criterion, dots, features, today, candidates):
     plan = "planned" if today is not None else "predicted"
     lines = []
     if today is not None:
-        lines += [("today", "today's sag"), ("today band", "its 90 % band"), ("today critical", "its lowest, 90 %")]
-    lines += [("plan", plan), ("band", "its 90 % band"), ("critical", f"{plan} lowest, with its 90 % interval")]
+        lines += [("today", "today's sag"), ("today band", "today's 90 % band"), ("today critical", "its lowest, 90 %")]
+    lines += [("plan", plan), ("band", f"{plan}, 90 % band"), ("critical", f"{plan} lowest, with its 90 % interval")]
     states = {dot.state for dot in dots}
     lines += [("used", "reading")] * ("used" in states) + [("aside", "reading set aside")] * ("set aside" in states)
     lines += [("marked", "this reading")] * any(dot.marked for dot in dots)

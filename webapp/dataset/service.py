@@ -14,6 +14,7 @@ from webapp.dataset.reasons import findings_of
 from webapp.dataset.tables import LEFT_OUT as LEFT_OUT
 from webapp.people.queries import people
 from webapp.plan import queries as plan_queries
+from webapp.plan.day import today_of
 from webapp.plan.prediction import prediction_of
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.queries import readings_of
@@ -94,9 +95,8 @@ def _tables(db, survey, history):
     who = {person.id: person.name for person in people(db)}
     versions = plan_queries.plan_versions(db, survey.id)
     plan = versions[0] if versions else None
-    prediction = _prediction(survey, plan)
     settings = current_settings(db, survey.id)
-    lines = _lines(db, survey, versions, prediction, settings)
+    lines = _lines(db, survey, versions, _predicted(today_of, survey, plan), settings)
     zone_says = f"With the offset of {survey.time_zone}."
     return [
         tables.survey_table(survey, who, plan, settings),
@@ -105,7 +105,7 @@ def _tables(db, survey, history):
         readings_table(lines, zone_says),
         corrections_table(lines, zone_says),
         summary_table(lines, zone_says),
-        tables.prediction_table(plan, prediction),
+        tables.prediction_table(plan, _predicted(prediction_of, survey, plan)),
         tables.settings_table(settings),
         equations_table(),
         tables.decisions_table(decisions_of(db, survey.id), {version.id: version.number for version in versions}),
@@ -114,9 +114,9 @@ def _tables(db, survey, history):
     ]
 
 
-def _prediction(survey, plan):
-    """Return the plan's Prediction, or None where it is not complete."""
-    found = prediction_of(survey, plan) if plan else None
+def _predicted(by, survey, plan):
+    """Return the plan's Prediction, as planned or with what the day showed, or None where it is not complete."""
+    found = by(survey, plan) if plan else None
     return None if found is None or hasattr(found, "missing") else found
 
 

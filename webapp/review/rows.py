@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 
 from calc.units import UNITS
-from webapp.plan.prediction import prediction_of
+from webapp.plan.day import today_of
 from webapp.readings.layers import FinalReading, final
 from webapp.review.derived import Derived, derive
 from webapp.review.numbers import CORRECTABLE, as_typed
@@ -44,7 +44,7 @@ class NumberLine:
 def rows_of(survey, plan, readings):
     """Return a Row for each reading; plan is the newest PlanVersion or None."""
     finals = [final(reading) for reading in readings]
-    prediction = prediction_of(survey, plan) if plan else None
+    prediction = today_of(survey, plan) if plan else None
     if hasattr(prediction, "missing"):
         prediction = None
     stations = (plan.tables.get("stations") or []) if plan else []
