@@ -141,12 +141,20 @@ def _first_office(database, name, sign_in, password):
         service.add_person(db, new)
 
 
+def _app(config, **flask_settings):
+    """Return the application, or stop with words where the data folder does not allow one."""
+    from webapp import create_app
+
+    try:
+        return create_app(config, **flask_settings)
+    except BadSetting as bad:
+        raise click.ClickException(str(bad)) from bad
+
+
 def _serve(config):
     from waitress import serve as waitress_serve
 
-    from webapp import create_app
-
-    app = create_app(config)
+    app = _app(config)
     for line in welcome(config):
         click.echo(line)
     waitress_serve(app, host=config.host, port=config.port, threads=config.threads, ident=None)
@@ -155,7 +163,7 @@ def _serve(config):
 def _serve_https(config, http_port):
     """Serve HTTPS with a certificate of the data folder's own authority, and the trust page on a plain port."""
     from webapp import authority as authorities
-    from webapp import create_app, https, reach
+    from webapp import https, reach
 
     config = replace(config, secure_cookies=True)
     http_port = http_port or (config.port + 1 if config.port < 65535 else config.port - 1)
@@ -164,7 +172,7 @@ def _serve_https(config, http_port):
     names = reach.machine_names(config.host)
     authority = authorities.read_or_make(config.data_dir, names)
     certificate = authorities.server_certificate(authority, config.data_dir, names)
-    app = create_app(config, AUTHORITY=authority, PLAIN_PORT=http_port)
+    app = _app(config, AUTHORITY=authority, PLAIN_PORT=http_port)
     for line in [*welcome(config, scheme="https"), *_trust_lines(config, http_port, authority, certificate)]:
         click.echo(line)
     try:

@@ -68,9 +68,11 @@ def _switch():
 
 
 def _path_of(address):
-    """Return the path of an address when it is one of this server's, else the front page."""
+    """Return the path and query of an address when it is one of this server's, else the front page."""
     try:
-        path = urlsplit(address).path
+        parts = urlsplit(address)
     except ValueError:  # a bracket that never closes
         return "/"
-    return path if path.startswith("/") and not path.startswith(("//", "/\\")) else "/"
+    if not parts.path.startswith("/") or parts.path.startswith(("//", "/\\")):
+        return "/"
+    return f"{parts.path}?{parts.query}" if parts.query else parts.path

@@ -60,6 +60,12 @@ def test_secret_key_is_made_once_for_its_owner_only(tmp_path):
     assert (tmp_path / "data" / "secret-key").stat().st_mode & 0o777 == 0o600
 
 
+def test_an_empty_secret_key_stops_the_start_and_says_what_to_do(tmp_path):
+    (tmp_path / "secret-key").write_text("")
+    with pytest.raises(BadSetting, match="holds no key. Delete it"):
+        secret.read_or_make(tmp_path)
+
+
 def test_default_database_lies_in_the_data_folder(tmp_path):
     config = read_config({"BANKSIDE_DATA": str(tmp_path)})
     assert config.sqlite_path == tmp_path / "bankside.sqlite3"

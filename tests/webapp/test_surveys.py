@@ -106,3 +106,16 @@ def test_other_units_on_screen_do_not_change_what_nobody_touched(app, browser_as
     with app.extensions["bankside_database"].reading() as session:
         now = session.get(Survey, survey.id)
     assert (now.elevation_m, now.outfall_mark) == (pytest.approx(213.36), 41.0)
+
+
+def test_a_double_tap_on_a_new_survey_makes_one(browser_as, db):
+    lead = browser_as("lead")
+    form = {**SURVEY_FORM, "survey_id": "6f9f0d3c-7f1e-4c0e-9a55-0c5a1d9a4b11"}
+    answers = [lead.post("/surveys/new", form) for _ in range(2)]
+    assert answers[0].headers["Location"] == answers[1].headers["Location"]
+    assert db.query(Survey).count() == 1
+
+
+def test_the_id_of_somebody_elses_survey_makes_none(browser_as, survey):
+    form = {**SURVEY_FORM, "survey_id": survey.id}
+    assert browser_as("lead").post("/surveys/new", form).status_code == 409

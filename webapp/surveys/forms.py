@@ -1,5 +1,6 @@
 """A survey's own facts, typed or from the first row of a survey.csv."""
 
+import uuid
 from dataclasses import dataclass, replace
 from datetime import datetime
 from zoneinfo import available_timezones
@@ -33,6 +34,19 @@ class SurveyFacts:
     sampling: str
     release_at: datetime | None
     safety_note: str
+
+
+def new_id():
+    """Return an id for a survey that is about to be typed: sent twice by a double tap, it is one survey."""
+    return str(uuid.uuid4())
+
+
+def id_of_new(source):
+    """Return the id that the form carries, or a new one where it carries none."""
+    try:
+        return str(uuid.UUID(str(source.get("survey_id") or "")))
+    except ValueError:
+        return new_id()
 
 
 def parse_survey(source):

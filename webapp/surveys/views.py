@@ -8,7 +8,15 @@ from webapp.display import Show
 from webapp.people import queries as people_queries
 from webapp.people.access import needs
 from webapp.surveys import queries, service
-from webapp.surveys.forms import DISTANCE_RULES, SAMPLINGS, UNIT_SYSTEMS, parse_survey, with_untouched
+from webapp.surveys.forms import (
+    DISTANCE_RULES,
+    SAMPLINGS,
+    UNIT_SYSTEMS,
+    id_of_new,
+    new_id,
+    parse_survey,
+    with_untouched,
+)
 
 bp = Blueprint("surveys", __name__)
 OPTIONS = {"unit_systems": UNIT_SYSTEMS, "distance_rules": DISTANCE_RULES, "samplings": SAMPLINGS}
@@ -18,7 +26,7 @@ OPTIONS = {"unit_systems": UNIT_SYSTEMS, "distance_rules": DISTANCE_RULES, "samp
 @login_required
 def list_surveys():
     """Show the surveys the person is on."""
-    surveys = people_queries.surveys_of(get_db(), current_user.id)
+    surveys = people_queries.surveys_of(get_db(), current_user.id, current_user.survey_id)
     return render_template("surveys/surveys.html", surveys=[(one, Show.of(one)) for one in surveys])
 
 
@@ -26,7 +34,7 @@ def list_surveys():
 @needs("plan")
 def new_survey():
     """Show the form for a new survey."""
-    return render_template("surveys/new.html", form={}, errors={}, **OPTIONS)
+    return render_template("surveys/new.html", form={"survey_id": new_id()}, errors={}, **OPTIONS)
 
 
 @bp.post("/surveys/new")
@@ -36,7 +44,7 @@ def create_survey():
     facts, errors = parse_survey(request.form)
     if errors:
         return render_template("surveys/new.html", form=request.form, errors=errors, **OPTIONS), 422
-    survey = service.create_survey(get_db(), facts, current_user.id)
+    survey = service.create_survey(get_db(), facts, current_user.id, id_of_new(request.form))
     return redirect(url_for("plan.page", survey_id=survey.id), code=303)
 
 
