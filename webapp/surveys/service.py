@@ -10,7 +10,7 @@ from webapp.surveys import queries
 
 
 def create_survey(db, facts, by_id, survey_id=None):
-    """Store a survey with the default settings; whoever makes it is on it. Return it, the stored one for a double tap."""
+    """Store a survey with the default settings and its maker on it. Return it; the stored one for a double tap."""
     if survey_id and (stored := db.get(Survey, survey_id)) is not None:
         if stored.created_by_id != by_id:
             raise Conflict("A survey with this id is there already. Open the form again.")
