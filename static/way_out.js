@@ -1,9 +1,8 @@
 // A copy of what waits, as a file; taking one over; and whether this phone keeps what is written on it.
-import { get, put, records, takeOver } from "./waiting_store.js";
+import { get, put, records } from "./waiting_store.js";
+import { asFile, fromFile, takeCopies } from "./copies.js";
 import { plural } from "./phone.js";
-import { send } from "./sending.js";
 
-const KIND = "waiting readings";
 const LOW_BYTES = 50e6;
 const main = document.querySelector("main");
 const part = (name) => main.querySelector(`[data-${name}]`);
@@ -11,34 +10,20 @@ const say = (words) => { part("copy-says").textContent = words; };
 
 async function saveCopy() {
   const waiting = (await records()).filter((one) => one.state !== "sent");
-  const copy = JSON.stringify({ bankside: KIND, v: 1, saved_at: new Date().toISOString(), records: waiting }, null, 1);
   const link = document.createElement("a");
-  link.href = URL.createObjectURL(new Blob([copy], { type: "application/json" }));
+  link.href = URL.createObjectURL(new Blob([asFile(waiting)], { type: "application/json" }));
   link.download = `bankside-waiting-${new Date().toISOString().slice(0, 16).replace(/[-:]/g, "")}.json`;
   link.click();
   setTimeout(() => URL.revokeObjectURL(link.href), 60000);
   say(`${plural(waiting.length, "reading", "readings")} written to the file ${link.download}. They also still wait here.`);
 }
 
-function isRecord(one) {
-  const texts = ["id", "survey", "code", "author", "authorName", "surveyName", "state"];
-  const typed = one?.fields && Object.values(one.fields).every((text) => typeof text === "string");
-  return typed && texts.every((name) => typeof one[name] === "string") && Number.isFinite(one.keptAt)
-    && one.fields.submission_id === one.id && /^\/surveys\/[^/]+\/stations\/[^/]+\/reading$/.test(one.url);
-}
-
 async function takeCopy() {
   const [file] = part("copy-form").elements.file.files;
   if (!file) return say("Choose the file first.");
-  let copies;
-  try {
-    copies = JSON.parse(await file.text());
-  } catch { /* said below */ }
-  const whole = copies?.bankside === KIND && Array.isArray(copies.records) && copies.records.every(isRecord);
-  if (!whole) return say("This is no file that a phone saved, or it was changed since.");
-  const added = await takeOver(copies.records.map((one) => ({ ...one, nextAt: 0 })));
-  say(`${plural(added, "reading", "readings")} taken over, ${copies.records.length - added} here already.`);
-  return send();
+  const copies = fromFile(await file.text().catch(() => ""));
+  if (!copies) return say("This is no file that a phone saved, or it was changed since.");
+  return takeCopies(copies, say);
 }
 
 async function storage() {
