@@ -28,9 +28,7 @@ def save(db, survey, people, browser_as):
     return lambda form, htmx: crew.post(f"/surveys/{survey.id}/stations/D2/reading", form, htmx=htmx)
 
 
-@settings(
-    max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture], derandomize=True
-)
+@settings(max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture], derandomize=True)
 @given(
     odd=st.dictionaries(st.sampled_from(FIELDS), TEXTS, max_size=5),
     good=st.booleans(),

@@ -166,8 +166,7 @@ def _check_page(day, reading, part="readings/_check.html", waits=False):
         check=check,
         against=against,
         waits=waits,
-        chart=prediction
-        and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l, today=sag),
+        chart=prediction and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l, today=sag),
         next=fieldsheet.next_stop(survey, day.plan, day.readings, current_user.name),
         now=day.now,
     )
