@@ -35,7 +35,7 @@ def wading(depth_m, velocity_m_s, settings):
         return (_wading("do_not_wade", "velocity_m_s", says, do),)
     do = "Local rules, your employer's plan and your judgement decide: bed, cold, debris, experience."
     if reaches(product, settings.wading_caution_m2_s):
-        says = f"{measured} The project's wading limit is {settings.wading_caution_m2_s:g}."
+        says = f"{measured} The project's wading limit is {settings.wading_caution_m2_s:g} m²/s."
         return (_wading("wading_caution", "velocity_m_s", says, do),)
     if exceeds(depth, settings.wading_depth_m):
         says = f"Depth {shown(depth, 2)} m is above the project's wading limit of {settings.wading_depth_m:g} m."

@@ -9,7 +9,7 @@ from flask_limiter.util import get_remote_address
 from flask_wtf.csrf import CSRFError, CSRFProtect
 from werkzeug.middleware.proxy_fix import ProxyFix
 
-from webapp import compress, db, display, errors, look, secret
+from webapp import compress, db, display, errors, look, secret, spoken
 from webapp.config import SHIPPED, read_config
 
 csrf = CSRFProtect()
@@ -56,6 +56,7 @@ def create_app(config=None, **flask_settings):
     errors.register(app)
     app.register_error_handler(CSRFError, errors.stale_form)
     display.register(app)
+    spoken.register(app)
     look.register(app)
     app.add_url_rule("/htmx.js", "htmx", _htmx)
     _register_features(app)
