@@ -60,7 +60,8 @@ class Show:
 
     def shown(self, quantity, value, unit=None):
         """Return an SI value as shown."""
-        in_unit = float(convert(value, QUANTITIES[quantity][0], unit or self.unit_code(quantity)))
+        given, wanted = QUANTITIES[quantity][0], unit or self.unit_code(quantity)
+        in_unit = float(value) if wanted == given else float(convert(value, given, wanted))
         if quantity == "place" and self.distance_rule != "downstream":
             return self.outfall_mark - in_unit
         return in_unit
