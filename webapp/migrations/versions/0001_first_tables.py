@@ -8,6 +8,18 @@ revision, down_revision = "0001", None
 
 def upgrade():
     """Make them in the order of their keys."""
+    _person()
+    _survey()
+    _history()
+    _plan_version()
+    _settings_version()
+    _station()
+    _survey_member()
+    _reading()
+    _reading_event()
+
+
+def _person():
     op.create_table(
         "person",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -21,6 +33,9 @@ def upgrade():
         sa.PrimaryKeyConstraint("id", name=op.f("pk_person")),
         sa.UniqueConstraint("sign_in", name=op.f("uq_person_sign_in")),
     )
+
+
+def _survey():
     op.create_table(
         "survey",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -42,6 +57,9 @@ def upgrade():
         sa.ForeignKeyConstraint(["created_by_id"], ["person.id"], name=op.f("fk_survey_created_by_id")),
         sa.PrimaryKeyConstraint("id", name=op.f("pk_survey")),
     )
+
+
+def _history():
     op.create_table(
         "history",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -57,6 +75,9 @@ def upgrade():
         sa.PrimaryKeyConstraint("id", name=op.f("pk_history")),
     )
     op.create_index(op.f("ix_history_survey_id"), "history", ["survey_id"], unique=False)
+
+
+def _plan_version():
     op.create_table(
         "plan_version",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -71,6 +92,9 @@ def upgrade():
         sa.PrimaryKeyConstraint("id", name=op.f("pk_plan_version")),
         sa.UniqueConstraint("survey_id", "number", name=op.f("uq_plan_version_survey_id")),
     )
+
+
+def _settings_version():
     op.create_table(
         "settings_version",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -85,6 +109,9 @@ def upgrade():
         sa.PrimaryKeyConstraint("id", name=op.f("pk_settings_version")),
         sa.UniqueConstraint("survey_id", "number", name=op.f("uq_settings_version_survey_id")),
     )
+
+
+def _station():
     op.create_table(
         "station",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -94,6 +121,9 @@ def upgrade():
         sa.PrimaryKeyConstraint("id", name=op.f("pk_station")),
         sa.UniqueConstraint("survey_id", "code", name=op.f("uq_station_survey_id")),
     )
+
+
+def _survey_member():
     op.create_table(
         "survey_member",
         sa.Column("survey_id", sa.String(length=36), nullable=False),
@@ -103,6 +133,9 @@ def upgrade():
         sa.PrimaryKeyConstraint("survey_id", "person_id", name=op.f("pk_survey_member")),
     )
     op.create_index(op.f("ix_survey_member_person_id"), "survey_member", ["person_id"], unique=False)
+
+
+def _reading():
     op.create_table(
         "reading",
         sa.Column("id", sa.String(length=36), nullable=False),
@@ -140,6 +173,9 @@ def upgrade():
     )
     op.create_index(op.f("ix_reading_station_id"), "reading", ["station_id"], unique=False)
     op.create_index(op.f("ix_reading_survey_id"), "reading", ["survey_id"], unique=False)
+
+
+def _reading_event():
     op.create_table(
         "reading_event",
         sa.Column("id", sa.String(length=36), nullable=False),
