@@ -67,7 +67,7 @@ def on_site_check(survey, plan_version, settings, reading, readings):
     saturation = saturation_of(now.water_temp_c, now.pressure_mmhg, salinity)
     both = saturation is not None and now.do_mg_l is not None
     percent = 100 * now.do_mg_l / saturation if both else None
-    predicted, low, high = _predicted(around.expected, saturation)
+    predicted, low, high = at_measured_temperature(around.expected, saturation)
     facts = _facts(survey, settings, now, around, percent, (predicted, low, high))
     facts = facts and _with_lowest(facts, now, plan_version, readings)
     findings = findings_on_stored(survey, settings, now, around, reading.received_at)
@@ -119,7 +119,7 @@ def _pressure_from(reading, now):
     return "corrected afterwards" if corrected else PRESSURE_FROM.get(reading.pressure_source, "")
 
 
-def _predicted(expected, saturation):
+def at_measured_temperature(expected, saturation):
     """Return prediction and band at the measured temperature: saturation there less the predicted deficit. [mg/L]
 
     Oxygen never runs below zero, so where the plan has none in warmer water it has none in colder water either.

@@ -10,6 +10,7 @@ from datetime import timedelta
 import numpy as np
 
 from calc.oxygen import salinity_psu, saturation_mg_l
+from webapp.readings.check import at_measured_temperature
 
 _SATURATION_RANGE_C = (0, 40)
 _PRESSURE_RANGE_MMHG = (380, 836)
@@ -70,7 +71,7 @@ def _one(survey, final, distance_km, expected, saturation):
     saturation = saturation if math.isfinite(saturation) else None
     oxygen = final.do_mg_l
     both = saturation is not None and oxygen is not None
-    predicted, low, high = _predicted(expected, saturation)
+    predicted, low, high = at_measured_temperature(expected, saturation)
     travel = expected.travel_time_h if expected is not None and distance_km >= 0 else None
     return Derived(
         distance_km=distance_km,
@@ -84,14 +85,6 @@ def _one(survey, final, distance_km, expected, saturation):
         predicted_high_mg_l=high,
         difference_mg_l=None if predicted is None or oxygen is None else oxygen - predicted,
     )
-
-
-def _predicted(expected, saturation):
-    """Return prediction and band moved to the temperature measured, never below zero. [mg/L]"""
-    if expected is None or saturation is None or not math.isfinite(expected.do_mg_l):
-        return None, None, None
-    shift = saturation - expected.deficit_mg_l - expected.do_mg_l
-    return tuple(max(0.0, value + shift) for value in (expected.do_mg_l, expected.low_mg_l, expected.high_mg_l))
 
 
 def _hours_late(survey, final, travel_time_h):
