@@ -131,3 +131,34 @@ def survey_address(page):
     page.goto("/")
     link = page.get_by_role("link", name="Sallow Water, August low flow")
     return link.get_attribute("href").removesuffix("/sheet")
+
+
+@pytest.fixture
+def own_demo(tmp_path):
+    """A server of this test's own, whose day nobody else walks."""
+    with serving(tmp_path / "data") as address:
+        yield address
+
+
+@pytest.fixture
+def phone_of(browser, own_demo):
+    """A function from a role to a page on that person's phone, signed in by hand."""
+    contexts, pages = [], []
+
+    def signed_in(role):
+        context = browser.new_context(base_url=own_demo, accept_downloads=True, **PHONE)
+        contexts.append(context)
+        page = watched(context.new_page())
+        pages.append(page)
+        name, password = PASSWORDS[role]
+        page.goto("/")
+        page.get_by_label("Sign-in name").fill(name)
+        page.get_by_label("Password").fill(password)
+        page.get_by_role("button", name="Sign in").tap()
+        page.get_by_role("heading", name="Surveys").wait_for()
+        return page
+
+    yield signed_in
+    for context in contexts:
+        context.close()
+    assert [line for page in pages for line in page.console_errors] == []

@@ -8,41 +8,10 @@ from frictionless import Package
 from playwright.sync_api import expect
 
 from calc.oxygen import saturation_mg_l, station_pressure_mmhg
-from tests.browser.conftest import PASSWORDS, PHONE, serving, survey_address, watched
+from tests.browser.conftest import survey_address
 
 ELEVATION_M = 310.0
 READ_IN_THE_MORNING = 8
-
-
-@pytest.fixture
-def own_demo(tmp_path):
-    """A server of this test's own, whose day nobody else walks."""
-    with serving(tmp_path / "data") as address:
-        yield address
-
-
-@pytest.fixture
-def phone_of(browser, own_demo):
-    """A function from a role to a page on that person's phone, signed in by hand."""
-    contexts, pages = [], []
-
-    def signed_in(role):
-        context = browser.new_context(base_url=own_demo, accept_downloads=True, **PHONE)
-        contexts.append(context)
-        page = watched(context.new_page())
-        pages.append(page)
-        name, password = PASSWORDS[role]
-        page.goto("/")
-        page.get_by_label("Sign-in name").fill(name)
-        page.get_by_label("Password").fill(password)
-        page.get_by_role("button", name="Sign in").tap()
-        page.get_by_role("heading", name="Surveys").wait_for()
-        return page
-
-    yield signed_in
-    for context in contexts:
-        context.close()
-    assert [line for page in pages for line in page.console_errors] == []
 
 
 def test_a_day_from_the_sign_in_to_the_dataset(phone_of, tmp_path):

@@ -3,41 +3,15 @@
 import re
 from datetime import UTC, datetime
 
-import pytest
 from playwright.sync_api import expect
 
 from calc.critical import critical_point
 from calc.sag import predict
 from demo_survey import make
-from tests.browser.conftest import PASSWORDS, PHONE, serving, survey_address, watched
+from tests.browser.conftest import survey_address
 
 TRUE_RIVER = make.true_river()
 ERRORS_MG_L = (0.05, -0.04)
-
-
-@pytest.fixture
-def phone_of(browser, tmp_path):
-    """A function from a role to a page on that person's phone, at a server of this test's own."""
-    contexts, pages = [], []
-    with serving(tmp_path / "data") as address:
-
-        def signed_in(role):
-            context = browser.new_context(base_url=address, **PHONE)
-            contexts.append(context)
-            page = watched(context.new_page())
-            pages.append(page)
-            name, password = PASSWORDS[role]
-            page.goto("/")
-            page.get_by_label("Sign-in name").fill(name)
-            page.get_by_label("Password").fill(password)
-            page.get_by_role("button", name="Sign in").tap()
-            page.get_by_role("heading", name="Surveys").wait_for()
-            return page
-
-        yield signed_in
-        for context in contexts:
-            context.close()
-    assert [line for page in pages for line in page.console_errors] == []
 
 
 def test_following_where_next_twice_turns_open_into_held(phone_of):
