@@ -119,3 +119,13 @@ def test_a_double_tap_on_a_new_survey_makes_one(browser_as, db):
 def test_the_id_of_somebody_elses_survey_makes_none(browser_as, survey):
     form = {**SURVEY_FORM, "survey_id": survey.id}
     assert browser_as("lead").post("/surveys/new", form).status_code == 409
+
+
+def test_a_release_moved_since_the_page_was_opened_is_not_moved_back(browser_as, survey, db):
+    opened = browser_as("office")
+    moved = {**SURVEY_FORM, "release_at": "2026-08-12T07:30", "was_release_at": SURVEY_FORM["release_at"]}
+    assert browser_as("lead").post(f"/surveys/{survey.id}/about", moved).status_code == 303
+    late = {**SURVEY_FORM, "safety_note": "Call 555.", "was_release_at": SURVEY_FORM["release_at"]}
+    assert opened.post(f"/surveys/{survey.id}/about", late).status_code == 303
+    stored = db.get(Survey, survey.id)
+    assert (stored.safety_note, stored.release_at.isoformat()) == ("Call 555.", "2026-08-12T05:30:00+00:00")

@@ -91,7 +91,8 @@ def with_untouched(facts, source, survey, typed):
     """
 
     def untouched(name):
-        return str(source.get(name) or "").strip() == typed[name]
+        opened = source.get(f"was_{name}")  # what stood there when the page was opened: it may have changed since
+        return str(source.get(name) or "").strip() == (typed[name] if opened is None else opened)
 
     kept = {}
     if untouched("elevation_m"):
