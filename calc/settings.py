@@ -14,6 +14,9 @@ PLANNING = "planning default"
 BAROMETER = "computed from the US Standard Atmosphere 1976; ordinary weather moves pressure by about 15 mmHg"
 FIELD_MANUAL = "after the USGS National Field Manual, chapters A6 and A9"
 SIMULATED = "chosen on simulated rivers"
+DRIFT_REPORT = "after USGS Techniques and Methods 1-D3"
+LAB_METHOD = "after Standard Methods 5210 B"
+HOLDING = "after 40 CFR 136, table II"
 COLD = "common cold-water guidance: caution below 70 °F, immersion clothing below 60 °F"
 
 
@@ -116,6 +119,130 @@ class Settings:
     cold_water_c: float = _setting(21.0, "°C", "Cold water: caution below", COLD)
     very_cold_water_c: float = _setting(15.0, "°C", "Cold water: dress for immersion below", COLD)
 
+    stable_values: float = _setting(5.0, "values", "Stability: the last so many values", FIELD_MANUAL)
+    soak_s: float = _setting(60.0, "s", "Stability: the probe settles at least", FIELD_MANUAL)
+    stable_span_s: float = _setting(120.0, "s", "Stability: the values span at least", FIELD_MANUAL)
+    stable_mg_l: float = _setting(0.2, "mg/L", "Stability: oxygen, each side of the median", FIELD_MANUAL)
+    stable_c: float = _setting(0.2, "°C", "Stability: temperature, each side of the median", FIELD_MANUAL)
+    stable_conductance_percent: float = _setting(3.0, "%", "Stability: conductance", FIELD_MANUAL)
+    stable_conductance_low_percent: float = _setting(5.0, "%", "Stability: low conductance", FIELD_MANUAL)
+    stable_conductance_low_us_cm: float = _setting(100.0, "µS/cm", "Stability: conductance is low up to", FIELD_MANUAL)
+    stable_ph: float = _setting(0.1, "pH", "Stability: pH, each side of the median", FIELD_MANUAL)
+
+    check_mg_l: float = _setting(0.2, "mg/L", "Meter check: oxygen before the first station within", FIELD_MANUAL)
+    check_percent: float = _setting(2.0, "%", "Meter check: oxygen before the first station, if larger", FIELD_MANUAL)
+    field_check_mg_l: float = _setting(0.3, "mg/L", "Meter check: oxygen between stations within", PLANNING)
+    second_method_mg_l: float = _setting(0.3, "mg/L", "Meter check: against titration or a second meter", COMMON)
+    winkler_pair_mg_l: float = _setting(0.1, "mg/L", "Titration: two bottles agree within", COMMON)
+    zero_mg_l: float = _setting(0.2, "mg/L", "Zero check: reads no more than", FIELD_MANUAL)
+    zero_days: float = _setting(31.0, "days", "Zero check: at least every", FIELD_MANUAL)
+    zero_low_mg_l: float = _setting(2.0, "mg/L", "Zero check: before a survey that expects less than", FIELD_MANUAL)
+    zero_low_days: float = _setting(1.0, "days", "Zero check: no older than this before such a survey", PLANNING)
+    thermometer_c: float = _setting(0.2, "°C", "Thermometer: within this of a certified one", FIELD_MANUAL)
+    thermometer_worst_c: float = _setting(0.5, "°C", "Thermometer: not to be used beyond", FIELD_MANUAL)
+    thermometer_days: float = _setting(365.0, "days", "Thermometer: checked over its range every", FIELD_MANUAL)
+    conductance_check_percent: float = _setting(3.0, "%", "Meter check: conductance within", DRIFT_REPORT)
+    conductance_check_us_cm: float = _setting(5.0, "µS/cm", "Meter check: conductance, if larger", DRIFT_REPORT)
+    ph_check: float = _setting(0.2, "pH", "Meter check: pH within", DRIFT_REPORT)
+    standards_beyond_percent: float = _setting(20.0, "%", "Standards: readings above the highest by up to", PLANNING)
+    recheck_elevation_m: float = _setting(100.0, "m", "Check again: elevation changed by more than", PLANNING)
+    recheck_pressure_mmhg: float = _setting(7.0, "mmHg", "Check again: pressure changed by more than", PLANNING)
+    recheck_temperature_c: float = _setting(10.0, "°C", "Check again: temperature changed by more than", PLANNING)
+    recheck_h: float = _setting(4.0, "h", "Check again: last checked longer ago than", PLANNING)
+    bracket_longest_h: float = _setting(36.0, "h", "Between two checks: longest time", PLANNING)
+    meter_speed_km_h: float = _setting(110.0, "km/h", "One meter at two places: faster than", PLANNING)
+    meter_places_km: float = _setting(0.5, "km", "One meter at two places: further apart than", PLANNING)
+
+    drift_mg_l: float = _setting(0.3, "mg/L", "Drift: oxygen corrected above", DRIFT_REPORT)
+    drift_c: float = _setting(0.2, "°C", "Drift: temperature corrected above", DRIFT_REPORT)
+    drift_conductance_us_cm: float = _setting(5.0, "µS/cm", "Drift: conductance corrected above", DRIFT_REPORT)
+    drift_conductance_percent: float = _setting(3.0, "%", "Drift: conductance corrected above, if larger", DRIFT_REPORT)
+    drift_ph: float = _setting(0.2, "pH", "Drift: pH corrected above", DRIFT_REPORT)
+    grade_both_limits: float = _setting(1.0, "", "Grade: 1 both limits hold, 0 the larger one counts", PLANNING)
+    grade_excellent_mg_l: float = _setting(0.3, "mg/L", "Grade: oxygen, excellent up to", DRIFT_REPORT)
+    grade_good_mg_l: float = _setting(0.5, "mg/L", "Grade: oxygen, good up to", DRIFT_REPORT)
+    grade_fair_mg_l: float = _setting(0.8, "mg/L", "Grade: oxygen, fair up to", DRIFT_REPORT)
+    grade_report_mg_l: float = _setting(2.0, "mg/L", "Grade: oxygen, not reported beyond", DRIFT_REPORT)
+    grade_excellent_percent: float = _setting(5.0, "%", "Grade: oxygen in percent, excellent up to", DRIFT_REPORT)
+    grade_good_percent: float = _setting(10.0, "%", "Grade: oxygen in percent, good up to", DRIFT_REPORT)
+    grade_fair_percent: float = _setting(15.0, "%", "Grade: oxygen in percent, fair up to", DRIFT_REPORT)
+    grade_report_percent: float = _setting(20.0, "%", "Grade: oxygen in percent, not reported beyond", DRIFT_REPORT)
+    grade_excellent_c: float = _setting(0.2, "°C", "Grade: temperature, excellent up to", DRIFT_REPORT)
+    grade_good_c: float = _setting(0.5, "°C", "Grade: temperature, good up to", DRIFT_REPORT)
+    grade_fair_c: float = _setting(0.8, "°C", "Grade: temperature, fair up to", DRIFT_REPORT)
+    grade_report_c: float = _setting(2.0, "°C", "Grade: temperature, not reported beyond", DRIFT_REPORT)
+    grade_excellent_conductance_percent: float = _setting(3.0, "%", "Grade: conductance, excellent up to", DRIFT_REPORT)
+    grade_good_conductance_percent: float = _setting(10.0, "%", "Grade: conductance, good up to", DRIFT_REPORT)
+    grade_fair_conductance_percent: float = _setting(15.0, "%", "Grade: conductance, fair up to", DRIFT_REPORT)
+    grade_report_conductance_percent: float = _setting(
+        30.0, "%", "Grade: conductance, not reported beyond", DRIFT_REPORT
+    )
+    grade_excellent_ph: float = _setting(0.2, "pH", "Grade: pH, excellent up to", DRIFT_REPORT)
+    grade_good_ph: float = _setting(0.5, "pH", "Grade: pH, good up to", DRIFT_REPORT)
+    grade_fair_ph: float = _setting(0.8, "pH", "Grade: pH, fair up to", DRIFT_REPORT)
+    grade_report_ph: float = _setting(2.0, "pH", "Grade: pH, not reported beyond", DRIFT_REPORT)
+
+    mixed_mg_l: float = _setting(0.3, "mg/L", "Mixed: oxygen within this of the section's mean", PLANNING)
+    mixed_c: float = _setting(0.3, "°C", "Mixed: temperature within this of the section's mean", PLANNING)
+    mixed_conductance_percent: float = _setting(5.0, "%", "Mixed: conductance within this of the mean", FIELD_MANUAL)
+    mixed_balance_percent: float = _setting(10.0, "%", "Mixed: conductance within this of the balance", PLANNING)
+    stratified_mg_l: float = _setting(0.5, "mg/L", "Stratified: oxygen, top and bottom differ by more than", PLANNING)
+    stratified_c: float = _setting(1.0, "°C", "Stratified: temperature, top and bottom differ by more than", PLANNING)
+    two_depths_m: float = _setting(0.76, "m", "Depths: two from this depth of water on", FIELD_MANUAL)
+    single_depth_percent: float = _setting(60.0, "%", "Depths: a single one at this part of the depth", FIELD_MANUAL)
+    upper_depth_percent: float = _setting(20.0, "%", "Depths: the upper of two", FIELD_MANUAL)
+    lower_depth_percent: float = _setting(80.0, "%", "Depths: the lower of two", FIELD_MANUAL)
+    profile_depth_m: float = _setting(2.0, "m", "Profile: in still water deeper than", PLANNING)
+    profile_top_m: float = _setting(0.3, "m", "Profile: first under the surface at", PLANNING)
+    profile_step_m: float = _setting(1.0, "m", "Profile: then every", PLANNING)
+    profile_bed_m: float = _setting(0.5, "m", "Profile: down to this far above the bed", PLANNING)
+
+    replicate_every: float = _setting(10.0, "readings", "Replicate: one in so many readings", COMMON)
+    replicate_per_day: float = _setting(1.0, "replicates", "Replicate: at least so many a crew's day", COMMON)
+    anchor_mg_l: float = _setting(0.3, "mg/L", "Anchor station: oxygen moved by more than", PLANNING)
+    after_sunrise_h: float = _setting(1.0, "h", "Snapshot: daylight counts from this long after sunrise", PLANNING)
+    stage_change_m: float = _setting(0.03, "m", "Stage: changed by more than", PLANNING)
+    flow_change_percent: float = _setting(10.0, "%", "Flow: changed by more than", PLANNING)
+    flow_stop_percent: float = _setting(20.0, "%", "Flow: changed so much that the survey is not steady", PLANNING)
+    rain_mm: float = _setting(2.5, "mm", "Rain in the reach: more than", PLANNING)
+    effluent_change_percent: float = _setting(20.0, "%", "Effluent flow: changed by more than", PLANNING)
+    complete_percent: float = _setting(90.0, "%", "Completeness: valid values of those planned", COMMON)
+    complete_critical_percent: float = _setting(100.0, "%", "Completeness: at critical stations", COMMON)
+    balance_percent: float = _setting(10.0, "%", "Mass balance: found within this of expected", PLANNING)
+    ph_low: float = _setting(6.0, "pH", "pH: unlikely below", COMMON)
+    ph_high: float = _setting(9.0, "pH", "pH: unlikely above", COMMON)
+    position_m: float = _setting(20.0, "m", "Position: radius asked about above", COMMON)
+    position_worst_m: float = _setting(100.0, "m", "Position: radius not to be taken above", COMMON)
+    clock_s: float = _setting(60.0, "s", "Clock of a phone: off by more than", COMMON)
+
+    bod_h: float = _setting(48.0, "h", "Hold time: BOD set up within", HOLDING)
+    bod_caution_h: float = _setting(24.0, "h", "Hold time: BOD, the project's own limit", LAB_METHOD)
+    bottle_reading_min: float = _setting(10.0, "min", "Bottle: oxygen read at the same point within", PLANNING)
+    ammonia_h: float = _setting(672.0, "h", "Hold time: ammonia, preserved (28 days)", HOLDING)
+    chlorophyll_h: float = _setting(24.0, "h", "Hold time: chlorophyll a, to filtering", COMMON)
+    winkler_h: float = _setting(8.0, "h", "Hold time: titration of a bottle fixed on site", HOLDING)
+    conductance_lab_h: float = _setting(672.0, "h", "Hold time: conductance in the laboratory (28 days)", HOLDING)
+    hold_soon_percent: float = _setting(75.0, "%", "Hold time: told from this part of it on", PLANNING)
+    receipt_c: float = _setting(6.0, "°C", "Receipt: bottles no warmer than", HOLDING)
+    receipt_frozen_c: float = _setting(0.0, "°C", "Receipt: bottles above, not frozen", HOLDING)
+    on_ice_min: float = _setting(15.0, "min", "Bottle: on ice within", COMMON)
+    bottle_replicates_percent: float = _setting(10.0, "%", "Bottles: replicates, at least", COMMON)
+    bottle_blanks_percent: float = _setting(5.0, "%", "Bottles: blanks, at least", COMMON)
+    bottle_rpd_percent: float = _setting(20.0, "%", "Bottle replicates: relative difference up to", COMMON)
+    bottle_low_multiple: float = _setting(2.0, "", "Bottle replicates: or, when low, times the reporting limit", COMMON)
+    bottle_low_below_multiple: float = _setting(
+        5.0, "", "Bottle replicates: low below this many times the reporting limit", PLANNING
+    )
+    blank_mg_l: float = _setting(0.2, "mg/L", "BOD blank: uses up no more than", LAB_METHOD)
+    gga_mg_l: float = _setting(198.0, "mg/L", "Glucose-glutamic acid check: BOD expected", LAB_METHOD)
+    gga_tolerance_mg_l: float = _setting(30.5, "mg/L", "Glucose-glutamic acid check: within", LAB_METHOD)
+    depletion_mg_l: float = _setting(2.0, "mg/L", "BOD dilution: uses up at least", LAB_METHOD)
+    residual_mg_l: float = _setting(1.0, "mg/L", "BOD dilution: leaves at least", LAB_METHOD)
+    incubation_days: float = _setting(5.0, "days", "BOD incubation: length", LAB_METHOD)
+    incubation_tolerance_h: float = _setting(6.0, "h", "BOD incubation: length within", LAB_METHOD)
+    incubation_c: float = _setting(20.0, "°C", "BOD incubation: temperature", LAB_METHOD)
+    incubation_tolerance_c: float = _setting(1.0, "°C", "BOD incubation: temperature within", LAB_METHOD)
+
     estimate_error_mg_l: float = _setting(0.12, "mg/L", "Estimate: error of one reading", PLANNING)
     estimate_bias_mg_l: float = _setting(0.10, "mg/L", "Estimate: error that one meter's readings share", PLANNING)
     leave_stations: float = _setting(4.0, "stations", "May we leave: fewest stations read", SIMULATED)
@@ -168,6 +295,28 @@ _LOW_AND_HIGH = (
     ("velocity_low_m_s", "velocity_high_m_s"),
     ("wading_caution_m2_s", "wading_stop_m2_s"),
     ("very_cold_water_c", "cold_water_c"),
+    ("thermometer_c", "thermometer_worst_c"),
+    ("grade_excellent_mg_l", "grade_good_mg_l"),
+    ("grade_good_mg_l", "grade_fair_mg_l"),
+    ("grade_fair_mg_l", "grade_report_mg_l"),
+    ("grade_excellent_percent", "grade_good_percent"),
+    ("grade_good_percent", "grade_fair_percent"),
+    ("grade_fair_percent", "grade_report_percent"),
+    ("grade_excellent_c", "grade_good_c"),
+    ("grade_good_c", "grade_fair_c"),
+    ("grade_fair_c", "grade_report_c"),
+    ("grade_excellent_conductance_percent", "grade_good_conductance_percent"),
+    ("grade_good_conductance_percent", "grade_fair_conductance_percent"),
+    ("grade_fair_conductance_percent", "grade_report_conductance_percent"),
+    ("grade_excellent_ph", "grade_good_ph"),
+    ("grade_good_ph", "grade_fair_ph"),
+    ("grade_fair_ph", "grade_report_ph"),
+    ("upper_depth_percent", "lower_depth_percent"),
+    ("flow_change_percent", "flow_stop_percent"),
+    ("ph_low", "ph_high"),
+    ("position_m", "position_worst_m"),
+    ("bod_caution_h", "bod_h"),
+    ("receipt_frozen_c", "receipt_c"),
 )
 
 SETTINGS = tuple(

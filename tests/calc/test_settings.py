@@ -11,8 +11,9 @@ def test_every_field_is_listed_once_with_label_and_source():
     assert [setting.key for setting in SETTINGS] == [field.name for field in dataclasses.fields(Settings)]
     assert len({setting.label for setting in SETTINGS}) == len(SETTINGS)
     assert all(setting.label and setting.source for setting in SETTINGS)
-    # A plain ratio is the only setting without a unit.
-    assert [setting.key for setting in SETTINGS if not setting.unit] == ["oxygen_step_bands"]
+    # Plain ratios and one choice are the only settings without a unit.
+    unitless = {"oxygen_step_bands", "grade_both_limits", "bottle_low_multiple", "bottle_low_below_multiple"}
+    assert {setting.key for setting in SETTINGS if not setting.unit} == unitless
 
 
 def test_defaults_are_those_of_the_list():
