@@ -11,7 +11,7 @@ class NewReading:
     id is made by whoever recorded it, so that the same reading sent twice is one. pressure_mmhg is the air pressure as
     read, converted but not un-reduced; surface_velocity_m_s that of a float, from which the mean velocity follows.
     entered holds {"text", "unit"} of each number as it was typed, kept_findings {"name", "says"} of each check that
-    asked and whose reading was kept.
+    asked and whose reading was kept. series holds the several raw values as models.Reading does.
     """
 
     id: str
@@ -36,6 +36,12 @@ class NewReading:
     latitude: float | None = None
     longitude: float | None = None
     position_radius_m: float | None = None
+    ph: float | None = None
+    series: tuple = ()
+    soak_s: float | None = None
+    stable: bool | None = None
+    unstable_reason: str = ""
+    distance_left_m: float | None = None
     entered: dict = field(default_factory=dict)
     kept_findings: tuple = ()
 

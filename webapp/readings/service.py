@@ -33,6 +33,9 @@ _CONTENT = (
     "latitude",
     "longitude",
     "position_radius_m",
+    "ph",
+    "unstable_reason",
+    "distance_left_m",
 )
 _AS_TYPED = ("do_mg_l", "pressure", "velocity_m_s", "float_distance", "float_time_s")
 
@@ -58,7 +61,7 @@ def put_reading(db, survey, new, by_id, plan_version, received_at):
     station = queries.get_station(db, survey.id, new.station_code)
     values = asdict(new)
     del values["station_code"], values["surface_velocity_m_s"]
-    values["kept_findings"] = list(new.kept_findings)
+    values["kept_findings"], values["series"] = list(new.kept_findings), list(new.series)
     values["pressure_mmhg"] = station_pressure_of(new, survey.elevation_m)
     values["do_mg_l"] = oxygen_of(new, survey.elevation_m)
     values["velocity_m_s"] = velocity_of(new)

@@ -10,7 +10,7 @@ from calc.units import UNITS
 from webapp.people.access import ROLES
 from webapp.plan.tables import ALL_TABLES
 from webapp.readings.columns import PERCENT_BASES, POSITIONS, PRESSURE_SOURCES, READINGS, VELOCITY_METHODS
-from webapp.readings.layers import NUMBERS
+from webapp.readings.layers import EVENTS, NUMBERS
 from webapp.surveyfile.archive import BadSurveyFile
 from webapp.surveyfile.tables import CARRIED, NUMBERED, STAYS_HERE, carried
 
@@ -27,7 +27,7 @@ _CHOICES = {
         "position": POSITIONS,
         "velocity_method": VELOCITY_METHODS,
     },
-    "reading_event": {"kind": ("corrected", "set_aside", "restored")},
+    "reading_event": {"kind": EVENTS},
 }
 _LIMITS = {
     column.key: (column.low, column.high)

@@ -18,10 +18,20 @@ CARRIED = {
     "station": ("Station", "Stations"),
     "reading": ("Reading", "Readings"),
     "reading_event": ("Decision about a reading", "Decisions about readings"),
+    "meter": ("Meter", "Meters"),
+    "meter_check": ("Meter check", "Meter checks"),
+    "meter_check_event": ("Decision about a meter check", "Decisions about meter checks"),
+    "visit": ("Visit", "Visits"),
+    "visit_entry": ("Entry of a visit", "Entries of visits"),
+    "bottle": ("Bottle", "Bottles"),
+    "hand_over": ("Hand-over", "Hand-overs"),
+    "lab_result": ("Laboratory result", "Laboratory results"),
+    "survey_event": ("Review or approval", "Reviews and approvals"),
     "decision": ("Decision on site", "Decisions on site"),
     "history": ("Line of the history", "Lines of the history"),
 }
 LEFT_OUT = {
+    "frozen_dataset": "the approved dataset can be made again from the survey's rows",
     "seen": "what each person was shown last is of this server",
     "invitation": "a way to sign in here",
     "phone_session": "a phone signed in here",
@@ -30,7 +40,7 @@ LEFT_OUT = {
 # All that is told of a person: never how they sign in.
 OF_PEOPLE = ("id", "name", "role")
 # Each server has its own.
-NOT_COMPARED = {"reading": {"received_at"}}
+NOT_COMPARED = {name: {"received_at"} for name in ("reading", "meter_check", "visit_entry", "bottle")}
 NUMBERED = ("settings_version", "plan_version")
 # Lines of the history about this server's own doings.
 STAYS_HERE = "survey file imported"
