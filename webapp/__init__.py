@@ -65,19 +65,24 @@ def create_app(config=None, **flask_settings):
 
 
 def _register_features(app):
+    from webapp.approval.views import bp as approval
+    from webapp.bottles.views import bp as bottles
     from webapp.dataset.views import bp as dataset
     from webapp.fieldpack.views import bp as fieldpack
     from webapp.fieldsheet.views import bp as fieldsheet
     from webapp.invitations.views import bp as invitations
+    from webapp.meters.views import bp as meters
     from webapp.people.access import keep_to_its_survey, login_manager
     from webapp.people.views import bp as people
     from webapp.plan.views import bp as plan
     from webapp.readings.views import bp as readings
     from webapp.review.views import bp as review
     from webapp.sag.views import bp as sag
+    from webapp.settings.views import bp as settings
     from webapp.surveyfile.views import bp as surveyfile
     from webapp.surveys.views import bp as surveys
     from webapp.trust.views import bp as trust
+    from webapp.visits.views import bp as visits
 
     login_manager.init_app(app)
     app.before_request(keep_to_its_survey)
@@ -94,6 +99,11 @@ def _register_features(app):
         fieldpack,
         trust,
         invitations,
+        meters,
+        visits,
+        settings,
+        approval,
+        bottles,
     ):
         app.register_blueprint(blueprint)
 

@@ -1,0 +1,5 @@
+"""Bottles, hand-overs and laboratory results."""
+
+from flask import Blueprint
+
+bp = Blueprint("bottles", __name__)

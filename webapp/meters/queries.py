@@ -1,0 +1,45 @@
+"""The meters of a survey and the checks on them. Whoever asks has shown that they are on the survey."""
+
+from sqlalchemy import select
+from sqlalchemy.orm import joinedload, selectinload
+
+from webapp.errors import NotFound
+from webapp.models import Meter, MeterCheck, MeterCheckEvent
+
+_WITH = (
+    joinedload(MeterCheck.meter),
+    joinedload(MeterCheck.author),
+    selectinload(MeterCheck.events).joinedload(MeterCheckEvent.made_by),
+)
+
+
+def meters_of(db, survey_id):
+    """Return the meters of a survey by name."""
+    return list(db.scalars(select(Meter).where(Meter.survey_id == survey_id).order_by(Meter.name, Meter.id)))
+
+
+def checks_of(db, survey_id):
+    """Return the checks of a survey in the order they were made."""
+    query = select(MeterCheck).where(MeterCheck.survey_id == survey_id).options(*_WITH)
+    return list(db.scalars(query.order_by(MeterCheck.checked_at, MeterCheck.id)))
+
+
+def get_meter(db, survey_id, meter_id):
+    """Return a meter of the survey. Raises NotFound."""
+    meter = db.scalar(select(Meter).where(Meter.survey_id == survey_id, Meter.id == meter_id))
+    if meter is None:
+        raise NotFound("This survey has no such meter.")
+    return meter
+
+
+def get_check(db, survey_id, check_id):
+    """Return a check of the survey. Raises NotFound."""
+    check = find_check(db, check_id)
+    if check is None or check.survey_id != survey_id:
+        raise NotFound("This survey has no such meter check.")
+    return check
+
+
+def find_check(db, check_id):
+    """Return the check of that id, of whatever survey, or None."""
+    return db.scalar(select(MeterCheck).where(MeterCheck.id == check_id).options(*_WITH))
