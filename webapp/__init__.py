@@ -1,6 +1,7 @@
 """create_app(): configuration, database, blueprints, error pages. Everything else is in the features."""
 
 import logging
+from importlib import import_module
 from importlib.resources import files
 
 from flask import Flask, send_file
@@ -15,6 +16,25 @@ from webapp.config import SHIPPED, read_config
 csrf = CSRFProtect()
 limiter = Limiter(get_remote_address, default_limits=[], storage_uri="memory://")
 
+FEATURES = (
+    "people",
+    "surveys",
+    "plan",
+    "fieldsheet",
+    "readings",
+    "meters",
+    "visits",
+    "bottles",
+    "review",
+    "sag",
+    "settings",
+    "approval",
+    "dataset",
+    "surveyfile",
+    "fieldpack",
+    "trust",
+    "invitations",
+)
 HEADERS = {
     "Content-Security-Policy": "default-src 'none'; script-src 'self'; style-src 'self'; img-src 'self' data:; "
     "connect-src 'self'; manifest-src 'self'; worker-src 'self'; form-action 'self'; base-uri 'none'; "
@@ -65,47 +85,12 @@ def create_app(config=None, **flask_settings):
 
 
 def _register_features(app):
-    from webapp.approval.views import bp as approval
-    from webapp.bottles.views import bp as bottles
-    from webapp.dataset.views import bp as dataset
-    from webapp.fieldpack.views import bp as fieldpack
-    from webapp.fieldsheet.views import bp as fieldsheet
-    from webapp.invitations.views import bp as invitations
-    from webapp.meters.views import bp as meters
     from webapp.people.access import keep_to_its_survey, login_manager
-    from webapp.people.views import bp as people
-    from webapp.plan.views import bp as plan
-    from webapp.readings.views import bp as readings
-    from webapp.review.views import bp as review
-    from webapp.sag.views import bp as sag
-    from webapp.settings.views import bp as settings
-    from webapp.surveyfile.views import bp as surveyfile
-    from webapp.surveys.views import bp as surveys
-    from webapp.trust.views import bp as trust
-    from webapp.visits.views import bp as visits
 
     login_manager.init_app(app)
     app.before_request(keep_to_its_survey)
-    for blueprint in (
-        people,
-        surveys,
-        plan,
-        fieldsheet,
-        readings,
-        review,
-        sag,
-        dataset,
-        surveyfile,
-        fieldpack,
-        trust,
-        invitations,
-        meters,
-        visits,
-        settings,
-        approval,
-        bottles,
-    ):
-        app.register_blueprint(blueprint)
+    for name in FEATURES:
+        app.register_blueprint(import_module(f"webapp.{name}.views").bp)
 
 
 def _add_headers(response):
