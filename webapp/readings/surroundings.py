@@ -1,5 +1,6 @@
 """What is known around a reading: the plan there, the neighbours, the parcel's arrival, the readings before it."""
 
+from bisect import bisect_right
 from dataclasses import dataclass
 from datetime import timedelta
 
@@ -8,6 +9,9 @@ from webapp.readings.layers import FinalReading, final
 
 NEIGHBOURLY = timedelta(hours=24)
 OCCASION = timedelta(hours=2)
+# A meter that is stuck shows it within a few stations; further back nothing is asked.
+_RECENT_STATIONS = 12
+_FURTHEST_BACK = 200
 
 
 @dataclass(frozen=True)
@@ -60,72 +64,114 @@ def where(plan_version, code):
 
 def look_around(survey, plan_version, code, taken_at, readings, reading_id=None, replicate=False):
     """Return the Surroundings of a reading at a station and time; readings are all of the survey."""
-    distances = distances_of(plan_version)
-    distance = distances.get(code)
-    prediction, missing = prediction_or_reasons(survey, plan_version)
-    at_stations = expected_at_stations(survey, plan_version)
-    used = [one for one in map(final, readings) if one.id != reading_id and not one.set_aside]
-    before = [one for one in used if one.taken_at <= taken_at]
-    expected = at_stations.get(code)
-    travel_h = expected.travel_time_h if expected and distance >= 0 else None
-    follows = survey.sampling == "same_parcel" and survey.release_at is not None and travel_h is not None
-    arrives_at = survey.release_at + timedelta(hours=travel_h) if follows else None
-    near = [one for one in used if abs(one.taken_at - taken_at) <= NEIGHBOURLY]
-    return Surroundings(
-        code=code,
-        distance_km=distance,
-        prediction=prediction,
-        missing=missing,
-        expected=expected,
-        upstream=_neighbour(-1, distance, distances, near, taken_at, at_stations),
-        downstream=_neighbour(1, distance, distances, near, taken_at, at_stations),
-        repeats=_repeated(code, taken_at, before) if replicate else None,
-        recent_do_mg_l=_recent(code, before),
-        travel_time_h=travel_h,
-        arrives_at=arrives_at,
-        hours_late=(taken_at - arrives_at).total_seconds() / 3600 if follows else None,
-        run_span_h=_run_span_h(taken_at, before) if survey.sampling == "snapshot" else None,
-    )
+    return Neighbourhood(survey, plan_version, readings).around(code, taken_at, reading_id, replicate)
 
 
-def _neighbour(side, distance, distances, near, taken_at, at_stations):
-    """Return the nearest station read upstream (-1) or downstream (1), on the same side of the outfall."""
-    if distance is None:
+class Neighbourhood:
+    """The used readings of a survey, arranged so that what lies around any one of them is found at once."""
+
+    def __init__(self, survey, plan_version, readings):
+        self._survey = survey
+        self._distances = distances_of(plan_version)
+        self._prediction, self._missing = prediction_or_reasons(survey, plan_version)
+        self._expected = expected_at_stations(survey, plan_version)
+        self._used = sorted((one for one in map(final, readings) if not one.set_aside), key=_when)
+        self._times = [one.taken_at for one in self._used]
+        self._run_starts = _run_starts(self._times)
+        self._at = {}
+        for one in self._used:
+            self._at.setdefault(one.station_code, []).append(one)
+        places = [(place, code) for code, place in self._distances.items() if code in self._at]
+        self._down = sorted(places)
+        self._up = self._down[::-1]
+
+    def around(self, code, taken_at, reading_id=None, replicate=False):
+        """Return the Surroundings of a reading at a station and time; reading_id is its own, which does not count."""
+        survey, distance = self._survey, self._distances.get(code)
+        expected = self._expected.get(code)
+        travel_h = expected.travel_time_h if expected and distance >= 0 else None
+        arrives_at = arrival_of(survey, travel_h)
+        return Surroundings(
+            code=code,
+            distance_km=distance,
+            prediction=self._prediction,
+            missing=self._missing,
+            expected=expected,
+            upstream=self._neighbour(-1, distance, taken_at),
+            downstream=self._neighbour(1, distance, taken_at),
+            repeats=self._repeated(code, taken_at, reading_id) if replicate else None,
+            recent_do_mg_l=self._recent(code, taken_at),
+            travel_time_h=travel_h,
+            arrives_at=arrives_at,
+            hours_late=hours_after(arrives_at, taken_at),
+            run_span_h=self._run_span_h(taken_at) if survey.sampling == "snapshot" else None,
+        )
+
+    def _neighbour(self, side, distance, taken_at):
+        """Return the nearest station read upstream (-1) or downstream (1), on the same side of the outfall."""
+        if distance is None:
+            return None
+        for there, code in self._up if side < 0 else self._down:
+            if (there - distance) * side <= 0 or (there < 0) != (distance < 0):
+                continue
+            nearest = min(self._beside(code, taken_at), key=lambda one: abs(one.taken_at - taken_at), default=None)
+            if nearest is not None and abs(nearest.taken_at - taken_at) <= NEIGHBOURLY:
+                return Neighbour(code, nearest, self._expected.get(code))
         return None
-    beside = [
-        one
-        for one in near
-        if (there := distances.get(one.station_code)) is not None
-        and (there - distance) * side > 0
-        and (there < 0) == (distance < 0)
-    ]
-    if not beside:
+
+    def _beside(self, code, taken_at):
+        """Return the readings at a station just before and just after a time."""
+        here = self._at[code]
+        place = bisect_right(here, taken_at, key=_when)
+        return here[max(0, place - 1) : place + 1]
+
+    def _repeated(self, code, taken_at, reading_id):
+        """Return the reading that a replicate repeats: the last one at the station on this occasion."""
+        here = self._at.get(code, [])
+        for one in reversed(here[: bisect_right(here, taken_at, key=_when)]):
+            if taken_at - one.taken_at > OCCASION:
+                return None
+            if one.id != reading_id:
+                return one
         return None
-    reading = min(beside, key=lambda one: (abs(distances[one.station_code] - distance), abs(one.taken_at - taken_at)))
-    return Neighbour(reading.station_code, reading, at_stations.get(reading.station_code))
+
+    def _recent(self, code, taken_at):
+        """Return oxygen at the stations read before this one, one value each, the latest last."""
+        latest = {}
+        end = bisect_right(self._times, taken_at)
+        for one in reversed(self._used[max(0, end - _FURTHEST_BACK) : end]):
+            if one.station_code != code and one.do_mg_l is not None:
+                latest.setdefault(one.station_code, one.do_mg_l)
+                if len(latest) == _RECENT_STATIONS:
+                    break
+        return tuple(reversed(latest.values()))
+
+    def _run_span_h(self, taken_at):
+        """Return the hours since the first reading of this run."""
+        place = bisect_right(self._times, taken_at) - 1
+        going_on = place >= 0 and taken_at - self._times[place] <= OCCASION
+        return (taken_at - self._run_starts[place]).total_seconds() / 3600 if going_on else 0.0
 
 
-def _repeated(code, taken_at, before):
-    """Return the reading that a replicate repeats: the last one at the station on this occasion."""
-    here = [one for one in before if one.station_code == code and taken_at - one.taken_at <= OCCASION]
-    return here[-1] if here else None
+def arrival_of(survey, travel_time_h):
+    """Return when the released parcel is a travel time below the outfall; None where nobody follows one."""
+    if travel_time_h is None or survey.sampling != "same_parcel" or survey.release_at is None:
+        return None
+    return survey.release_at + timedelta(hours=travel_time_h)
 
 
-def _recent(code, before):
-    """Return oxygen at the stations read before this one, one value each, the latest last."""
-    latest = {}
-    for one in before:
-        if one.station_code != code and one.do_mg_l is not None:
-            latest.pop(one.station_code, None)
-            latest[one.station_code] = one.do_mg_l
-    return tuple(latest.values())
+def hours_after(arrives_at, taken_at):
+    """Return how long after the parcel a reading was taken, negative before it. [h] None without an arrival."""
+    return None if arrives_at is None else (taken_at - arrives_at).total_seconds() / 3600
 
 
-def _run_span_h(taken_at, before):
-    """Return the hours since the first reading of this run; a break as long as an occasion begins another."""
-    start = taken_at
-    for one in reversed(before):
-        if start - one.taken_at > OCCASION:
-            break
-        start = one.taken_at
-    return (taken_at - start).total_seconds() / 3600
+def _when(reading):
+    return reading.taken_at
+
+
+def _run_starts(times):
+    """Return when the run began that each time belongs to; a break as long as an occasion begins another."""
+    starts = []
+    for place, time in enumerate(times):
+        starts.append(starts[-1] if place and time - times[place - 1] <= OCCASION else time)
+    return starts

@@ -5,12 +5,12 @@ The on-site check computes the same for one reading; here calc is called once ov
 
 import math
 from dataclasses import dataclass
-from datetime import timedelta
 
 import numpy as np
 
 from calc.oxygen import salinity_psu, saturation_mg_l
 from webapp.readings.check import at_measured_temperature
+from webapp.readings.surroundings import arrival_of, hours_after
 
 _SATURATION_RANGE_C = (0, 40)
 _PRESSURE_RANGE_MMHG = (380, 836)
@@ -79,17 +79,9 @@ def _one(survey, final, distance_km, expected, saturation):
         percent_saturation=100 * oxygen / saturation if both else None,
         deficit_mg_l=saturation - oxygen if both else None,
         travel_time_h=travel,
-        hours_late=_hours_late(survey, final, travel),
+        hours_late=hours_after(arrival_of(survey, travel), final.taken_at),
         predicted_do_mg_l=predicted,
         predicted_low_mg_l=low,
         predicted_high_mg_l=high,
         difference_mg_l=None if predicted is None or oxygen is None else oxygen - predicted,
     )
-
-
-def _hours_late(survey, final, travel_time_h):
-    """Return how long after the released parcel the reading was taken, negative before it. [h]"""
-    if travel_time_h is None or survey.sampling != "same_parcel" or survey.release_at is None:
-        return None
-    arrival = survey.release_at + timedelta(hours=travel_time_h)
-    return (final.taken_at - arrival).total_seconds() / 3600
