@@ -3,7 +3,7 @@
 import json
 import uuid
 from dataclasses import replace
-from datetime import UTC, datetime, timedelta
+from datetime import UTC, datetime
 
 from webapp.forms import Fields
 from webapp.readings.columns import (
@@ -14,9 +14,8 @@ from webapp.readings.columns import (
     READINGS,
     VELOCITY_METHODS,
 )
-from webapp.readings.new import NewReading
+from webapp.readings.new import FURTHEST_AHEAD, NewReading
 
-FURTHEST_AHEAD = timedelta(minutes=10)
 # Beyond what can be measured, but a slip that is worth an offer: °F in the °C box, percent in the mg/L box.
 WIDE = {"do_mg_l": 400.0, "water_temp_c": 113.0}
 # What the form asks for under "More about this reading".

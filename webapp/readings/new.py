@@ -1,7 +1,10 @@
 """A reading on its way in, from the form or a paper sheet, before it is stored."""
 
 from dataclasses import dataclass, field, replace
-from datetime import datetime
+from datetime import datetime, timedelta
+
+# How far a clock may run ahead of the server's before a time is taken for a slip.
+FURTHEST_AHEAD = timedelta(minutes=10)
 
 
 @dataclass(frozen=True)

@@ -5,7 +5,7 @@ import uuid
 from bisect import bisect_left
 from collections import Counter
 from dataclasses import dataclass
-from datetime import UTC, datetime, timedelta
+from datetime import UTC, datetime
 
 from webapp.display import QUANTITIES, Show, plain_digits
 from webapp.errors import Conflict
@@ -15,7 +15,7 @@ from webapp.readings.asking import findings_on_new, to_ask
 from webapp.readings.columns import READINGS
 from webapp.readings.day import Day
 from webapp.readings.layers import NUMBERS, final
-from webapp.readings.new import NewReading
+from webapp.readings.new import FURTHEST_AHEAD, NewReading
 from webapp.readings.service import oxygen_of, put_reading, station_pressure_of, velocity_of
 from webapp.readings.surroundings import look_around
 from webapp.review.queries import stored_ids
@@ -23,7 +23,6 @@ from webapp.surveys.service import remember
 from webapp.tablefile import BadCell, read_table, write_table
 from webapp.tablehead import written_head
 
-FURTHEST_AHEAD = timedelta(minutes=10)
 # How many readings on either side in time a new one is compared with.
 _BESIDE = 150
 _IMPORTED = uuid.UUID("6f1d0a5e-3c0b-5d0f-9a43-6a2f1c7be0d4")
