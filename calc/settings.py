@@ -259,7 +259,7 @@ class Settings:
         for key, value in self.as_dict().items():
             if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
                 raise OutOfRangeError(f"{key} must be a finite number, got {value!r}")
-        for low, high in _LOW_AND_HIGH:
+        for low, high in LOW_AND_HIGH:
             if not getattr(self, low) < getattr(self, high):
                 raise OutOfRangeError(f"{low} must be below {high}, got {getattr(self, low):g}")
 
@@ -282,7 +282,8 @@ class Settings:
         return {setting.key: getattr(self, setting.key) for setting in SETTINGS}
 
 
-_LOW_AND_HIGH = (
+# Settings of which the first must be below the second.
+LOW_AND_HIGH = (
     ("sea_level_elevation_m", "sea_level_firm_elevation_m"),
     ("sea_level_low_mmhg", "sea_level_high_mmhg"),
     ("inhg_low", "inhg_high"),
