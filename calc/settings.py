@@ -224,7 +224,7 @@ class Settings:
     conductance_lab_h: float = _setting(672.0, "h", "Hold time: conductance in the laboratory (28 days)", HOLDING)
     hold_soon_percent: float = _setting(75.0, "%", "Hold time: told from this part of it on", PLANNING)
     receipt_c: float = _setting(6.0, "°C", "Receipt: bottles no warmer than", HOLDING)
-    receipt_frozen_c: float = _setting(0.0, "°C", "Receipt: bottles above, not frozen", HOLDING)
+    receipt_frozen_c: float = _setting(0.0, "°C", "Receipt: bottles no colder than", HOLDING)
     on_ice_min: float = _setting(15.0, "min", "Bottle: on ice within", COMMON)
     bottle_replicates_percent: float = _setting(10.0, "%", "Bottles: replicates, at least", COMMON)
     bottle_blanks_percent: float = _setting(5.0, "%", "Bottles: blanks, at least", COMMON)
