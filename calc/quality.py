@@ -1,14 +1,56 @@
-"""The checks on one reading: values, what is known around them, and the survey's settings in; findings out.
+"""Every check on readings, meters, sections, days and bottles, from one place.
 
-Each check is a plain function of numbers, in the module of its topic. None raises for a number: NaN, None and infinity
-are missing values, and what is missing gives no finding. reading_findings runs them all.
+Each check is a plain function of numbers, in the module of its topic: values and the survey's settings in, findings or
+a verdict out. None raises for a number: NaN, None and infinity are missing values, and what is missing gives no
+finding. Times are hours on any common axis. reading_findings runs all checks on one reading.
 """
 
-import math
-from dataclasses import dataclass
-
-from calc.findings import Finding, known, or_nan
-from calc.oxygen import salinity_psu, saturation_mg_l
+from calc.findings import Finding
+from calc.quality_bottle import (
+    ANALYSES,
+    Hold,
+    blank,
+    bottle_counts,
+    bottle_replicate,
+    bottle_without_reading,
+    depletion,
+    gga,
+    hold,
+    incubation,
+    not_on_ice,
+    past_hold_time,
+    receipt_warm,
+)
+from calc.quality_bracket import KINDS, Bracket, MeterCheckTime, bracket, bracket_finding
+from calc.quality_day import (
+    Completeness,
+    anchor_moved,
+    completeness,
+    edited_clock,
+    effluent_changed,
+    flow_changed,
+    mass_balance,
+    ph_unlikely,
+    position_poor,
+    probe_against_titration,
+    rained,
+    replicate_due,
+    snapshot_daylight,
+    stage_changed,
+)
+from calc.quality_drift import GRADES, DriftCorrection, drift_correction, drift_limit, grade
+from calc.quality_due import (
+    calibration_missing,
+    meter_in_two_places,
+    outside_standards,
+    recheck_due,
+    standard_expired,
+    thermometer_differs,
+    thermometer_due,
+    winkler_pair,
+    zero_check_due,
+)
+from calc.quality_meter import STANDARDS, CheckVerdict, check_verdict, expected_value
 from calc.quality_oxygen import (
     air_signature,
     frozen_value,
@@ -23,6 +65,18 @@ from calc.quality_oxygen import (
     supersaturation,
 )
 from calc.quality_pressure import pressure_against_elevation, pressure_unit, sea_level_pressure
+from calc.quality_reading import ReadingContext, ReadingValues, reading_findings
+from calc.quality_section import (
+    Layers,
+    SectionPoint,
+    SectionVerdict,
+    depths_wanted,
+    not_mixed,
+    section_verdict,
+    stratification,
+    stratified,
+)
+from calc.quality_series import PARAMETERS, Stability, stability, unstable
 from calc.quality_visit import cold_water, parcel_timing, snapshot_long, taken_at, wading
 from calc.quality_water import (
     conductance_high,
@@ -37,260 +91,100 @@ from calc.quality_water import (
 from calc.settings import SETTINGS, Setting, Settings
 
 __all__ = [
+    "ANALYSES",
+    "GRADES",
+    "KINDS",
+    "PARAMETERS",
     "SETTINGS",
+    "STANDARDS",
+    "Bracket",
+    "CheckVerdict",
+    "Completeness",
+    "DriftCorrection",
     "Finding",
+    "Hold",
+    "Layers",
+    "MeterCheckTime",
     "ReadingContext",
     "ReadingValues",
+    "SectionPoint",
+    "SectionVerdict",
     "Setting",
     "Settings",
+    "Stability",
     "air_signature",
+    "anchor_moved",
+    "blank",
+    "bottle_counts",
+    "bottle_replicate",
+    "bottle_without_reading",
+    "bracket",
+    "bracket_finding",
+    "calibration_missing",
+    "check_verdict",
     "cold_water",
+    "completeness",
     "conductance_high",
     "conductance_step",
+    "depletion",
     "depth_unlikely",
+    "depths_wanted",
+    "drift_correction",
+    "drift_limit",
+    "edited_clock",
+    "effluent_changed",
+    "expected_value",
+    "flow_changed",
     "frozen_value",
+    "gga",
+    "grade",
+    "hold",
+    "incubation",
+    "mass_balance",
+    "meter_in_two_places",
+    "not_mixed",
+    "not_on_ice",
+    "outside_standards",
     "oxygen_unlikely",
     "parcel_timing",
+    "past_hold_time",
     "percent_against_concentration",
     "percent_as_concentration",
+    "ph_unlikely",
+    "position_poor",
     "pressure_against_elevation",
     "pressure_unit",
+    "probe_against_titration",
+    "rained",
     "reading_findings",
+    "receipt_warm",
+    "recheck_due",
     "replicate_conductance",
+    "replicate_due",
     "replicate_spread",
     "replicate_temperature",
     "sea_level_pressure",
+    "section_verdict",
     "sensor_depth",
+    "snapshot_daylight",
     "snapshot_long",
+    "stability",
+    "stage_changed",
+    "standard_expired",
     "step_against_neighbour",
     "step_against_prediction",
+    "stratification",
+    "stratified",
     "supersaturation",
     "taken_at",
     "temperature_step",
     "temperature_unit",
     "temperature_unlikely",
+    "thermometer_differs",
+    "thermometer_due",
+    "unstable",
     "velocity_unlikely",
     "wading",
+    "winkler_pair",
+    "zero_check_due",
 ]
-
-
-@dataclass(frozen=True)
-class ReadingValues:
-    """What the crew entered, in SI; NaN or None where nothing was.
-
-    Attributes
-    ----------
-    do_mg_l, water_temp_c, depth_m, do_percent_meter, conductance_us_cm, sensor_depth_m, velocity_m_s : float
-    pressure_mmhg : float
-        Pressure as entered, converted but not un-reduced. [mmHg]
-    pressure_value, pressure_unit : float, str
-        Pressure as entered, and the UCUM code of its unit.
-    pressure_source : str
-        "meter", "barometer", "weather" or "none".
-    position : str
-        Point in the cross-section: "left", "centre", "right"; empty where not told.
-    platform : str
-        "wade", "boat", "bridge" or "bank"; empty where not told. Wading limits are for those who wade or may.
-    """
-
-    do_mg_l: float = math.nan
-    water_temp_c: float = math.nan
-    depth_m: float = math.nan
-    do_percent_meter: float = math.nan
-    conductance_us_cm: float = math.nan
-    pressure_mmhg: float = math.nan
-    pressure_value: float = math.nan
-    pressure_unit: str = "mm[Hg]"
-    pressure_source: str = "none"
-    sensor_depth_m: float = math.nan
-    velocity_m_s: float = math.nan
-    position: str = ""
-    platform: str = ""
-
-
-@dataclass(frozen=True)
-class ReadingContext:
-    """What is known around a reading; NaN or None where it is not.
-
-    Attributes
-    ----------
-    elevation_m : float
-    station_pressure_mmhg : float
-        Pressure used for saturation, un-reduced where the entry was a weather value. [mmHg]
-    saturation_mg_l : float
-        Saturation used; computed from the reading and the station pressure where missing. [mg/L]
-    predicted_do_mg_l, band_low_mg_l, band_high_mg_l, predicted_temp_c : float
-        Prediction at this station.
-    upstream_*, downstream_* : float
-        At the nearest station read on that side. *_predicted_do_mg_l is the prediction there; with it a step counts
-        only beyond the step the plan expects.
-    planned_depth_m, air_temp_c : float
-    hours_late, travel_time_h : float
-        Reading less arrival of the parcel (negative when early), and its travel time to here. [h]
-    replicate_* : float
-        The reading this one repeats.
-    recent_do_mg_l : tuple of float
-        Oxygen at the stations read before this one, the latest last. [mg/L]
-    snapshot_span_h, hours_after_now, hours_before_survey : float
-        First reading of the run to this one; reading less clock; start of the survey less reading. [h]
-    """
-
-    elevation_m: float = math.nan
-    station_pressure_mmhg: float = math.nan
-    saturation_mg_l: float = math.nan
-    predicted_do_mg_l: float = math.nan
-    band_low_mg_l: float = math.nan
-    band_high_mg_l: float = math.nan
-    predicted_temp_c: float = math.nan
-    upstream_do_mg_l: float = math.nan
-    downstream_do_mg_l: float = math.nan
-    upstream_predicted_do_mg_l: float = math.nan
-    downstream_predicted_do_mg_l: float = math.nan
-    upstream_temp_c: float = math.nan
-    downstream_temp_c: float = math.nan
-    upstream_conductance_us_cm: float = math.nan
-    downstream_conductance_us_cm: float = math.nan
-    planned_depth_m: float = math.nan
-    air_temp_c: float = math.nan
-    hours_late: float = math.nan
-    travel_time_h: float = math.nan
-    replicate_do_mg_l: float = math.nan
-    replicate_temp_c: float = math.nan
-    replicate_conductance_us_cm: float = math.nan
-    recent_do_mg_l: tuple = ()
-    snapshot_span_h: float = math.nan
-    hours_after_now: float = math.nan
-    hours_before_survey: float = math.nan
-
-
-def reading_findings(reading, context, settings):
-    """Return every finding on a reading, hazards to the crew first.
-
-    One slip gives one finding: what follows from a pressure or temperature in the wrong unit, or from a percentage in
-    the mg/L box, is not asked about as well.
-
-    Parameters
-    ----------
-    reading : ReadingValues
-    context : ReadingContext
-    settings : Settings
-
-    Returns
-    -------
-    tuple of Finding
-    """
-    pressure_slips = _pressure_slips(reading, context, settings)
-    temperature_slips = temperature_unit(
-        reading.water_temp_c, (context.upstream_temp_c, context.downstream_temp_c, context.predicted_temp_c), settings
-    )
-    if pressure_slips or temperature_slips:
-        saturation, saturation_760 = math.nan, math.nan
-    else:
-        saturation, saturation_760 = _saturations(reading, context)
-    return (
-        *(wading(reading.depth_m, reading.velocity_m_s, settings) if reading.platform in ("", "wade") else ()),
-        *cold_water(reading.water_temp_c, settings),
-        *_oxygen(reading, context, saturation, saturation_760, settings),
-        *(temperature_slips or _temperature(reading, context, settings)),
-        *(pressure_slips or pressure_against_elevation(context.station_pressure_mmhg, context.elevation_m, settings)),
-        *_water(reading, context, settings),
-        *parcel_timing(context.hours_late, context.travel_time_h, settings),
-        *snapshot_long(context.snapshot_span_h, settings),
-        *taken_at(context.hours_after_now, context.hours_before_survey, settings),
-    )
-
-
-def _pressure_slips(reading, context, settings):
-    # A weather value is reduced to sea level, so its unit shows at elevation 0.
-    elevation = 0.0 if reading.pressure_source == "weather" else context.elevation_m
-    return sea_level_pressure(
-        reading.pressure_mmhg,
-        context.elevation_m,
-        reading.water_temp_c,
-        settings,
-        source=reading.pressure_source,
-        unit=reading.pressure_unit,
-    ) + pressure_unit(reading.pressure_value, reading.pressure_unit, elevation, settings)
-
-
-def _saturations(reading, context):
-    """Return saturation at the station pressure and at 760 mmHg, NaN where it can't be told. [mg/L]"""
-    water_temp, conductance, pressure, saturation = known(
-        reading.water_temp_c, reading.conductance_us_cm, context.station_pressure_mmhg, context.saturation_mg_l
-    )
-    salinity = or_nan(salinity_psu, conductance)
-    salinity = 0.0 if math.isnan(salinity) else salinity
-    if math.isnan(saturation):
-        saturation = or_nan(saturation_mg_l, water_temp, pressure, salinity)
-    return saturation, or_nan(saturation_mg_l, water_temp, 760.0, salinity)
-
-
-def _oxygen(reading, context, saturation, saturation_760, settings):
-    slips = percent_as_concentration(reading.do_mg_l, saturation, settings)
-    if slips:
-        return slips
-    (do,) = known(reading.do_mg_l)
-    percent = 100 * do / saturation if saturation > 0 else math.nan
-    return (
-        *(supersaturation(percent, settings) or oxygen_unlikely(do, settings)),
-        *percent_against_concentration(do, reading.do_percent_meter, saturation, saturation_760, settings),
-        *air_signature(percent, reading.water_temp_c, context.air_temp_c, settings),
-        *frozen_value(do, context.recent_do_mg_l, settings),
-        *replicate_spread(do, context.replicate_do_mg_l, settings),
-        *_oxygen_steps(do, context, settings, reading.position),
-    )
-
-
-def _oxygen_steps(do, context, settings, position):
-    predicted, low, high = context.predicted_do_mg_l, context.band_low_mg_l, context.band_high_mg_l
-    neighbours = (
-        ("upstream", context.upstream_do_mg_l, context.upstream_predicted_do_mg_l),
-        ("downstream", context.downstream_do_mg_l, context.downstream_predicted_do_mg_l),
-    )
-    steps = [
-        step_against_neighbour(
-            do,
-            neighbour,
-            settings,
-            side=side,
-            expected_step_mg_l=_difference(predicted, predicted_there),
-            band_half_mg_l=_difference(high, low) / 2,
-            position=position,
-        )
-        for side, neighbour, predicted_there in neighbours
-    ]
-    return (
-        *steps[0],
-        *steps[1],
-        *step_against_prediction(do, predicted, low, high, settings, position=position),
-    )
-
-
-def _difference(value, other):
-    value, other = known(value, other)
-    return value - other
-
-
-def _temperature(reading, context, settings):
-    water_temp = reading.water_temp_c
-    steps = temperature_step(water_temp, context.upstream_temp_c, context.downstream_temp_c, settings)
-    return (
-        *(temperature_unlikely(water_temp, settings) or steps),
-        *replicate_temperature(water_temp, context.replicate_temp_c, settings),
-    )
-
-
-def _water(reading, context, settings):
-    return (
-        *conductance_step(
-            reading.conductance_us_cm,
-            context.upstream_conductance_us_cm,
-            context.downstream_conductance_us_cm,
-            settings,
-        ),
-        *replicate_conductance(reading.conductance_us_cm, context.replicate_conductance_us_cm, settings),
-        *conductance_high(reading.conductance_us_cm, reading.water_temp_c, settings),
-        *depth_unlikely(reading.depth_m, context.planned_depth_m, settings),
-        *sensor_depth(reading.sensor_depth_m, reading.depth_m, settings),
-        *velocity_unlikely(reading.velocity_m_s, settings),
-    )

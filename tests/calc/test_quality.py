@@ -6,7 +6,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from calc import quality
-from calc.quality import ReadingContext, ReadingValues, Settings, reading_findings
+from calc.quality import Bracket, ReadingContext, ReadingValues, Settings, reading_findings, stability
 
 SETTINGS = Settings()
 
@@ -22,7 +22,11 @@ ORDINARY = ReadingValues(
     sensor_depth_m=0.5,
     velocity_m_s=0.3,
     position="centre",
+    ph=7.6,
+    stability=stability((6.1, 6.1, 6.2, 6.1, 6.1), (60, 90, 120, 150, 180), SETTINGS),
+    position_radius_m=8,
 )
+MOVING = stability((5.6, 5.8, 6.1, 6.2, 6.3), (), SETTINGS)
 AROUND = ReadingContext(
     elevation_m=500,
     station_pressure_mmhg=716,
@@ -47,6 +51,7 @@ AROUND = ReadingContext(
     snapshot_span_h=2,
     hours_after_now=-0.01,
     hours_before_survey=-4,
+    bracket=Bracket("bracketed", 0, 1),
 )
 
 
@@ -92,12 +97,22 @@ def test_a_reading_of_which_nothing_is_known_gives_no_finding():
         ({}, {"snapshot_span_h": 4}, ["snapshot_long"]),
         ({}, {"hours_after_now": 1}, ["time_in_future"]),
         ({}, {"station_pressure_mmhg": 735}, ["pressure_against_elevation"]),
+        ({"ph": 9.3}, {}, ["ph_unlikely"]),
+        ({"stability": MOVING}, {}, ["unstable"]),
+        ({"position_radius_m": 60}, {}, ["position_poor"]),
+        ({}, {"bracket": Bracket("no_check_after", 0, None)}, ["not_bracketed"]),
+        ({}, {"bracket": Bracket("drift", 0, 1)}, ["drift_uncorrected"]),
+        ({}, {"bracket": Bracket("not_reportable", 0, 1)}, ["not_reportable"]),
     ],
 )
 def test_each_oddity_is_found_by_its_own_name(reading, around, expected):
     if "conductance_us_cm" in reading:
         around = {**around, "replicate_conductance_us_cm": None}
     assert names(findings(reading, **around)) == expected
+
+
+def test_a_reading_without_values_in_time_or_checks_is_not_asked_about_them():
+    assert findings({"ph": None, "stability": None, "position_radius_m": None}, bracket=None) == ()
 
 
 def test_hazards_come_first():
@@ -203,8 +218,15 @@ def numbers_of(kind, **others):
         pressure_unit=st.sampled_from(["mm[Hg]", "hPa", "[in_i'Hg]", "kPa", "atm", "m", "", "no unit"]),
         pressure_source=st.sampled_from(["meter", "barometer", "weather", "none"]),
         position=st.sampled_from(["", "left", "centre"]),
+        stability=st.one_of(
+            st.none(), st.lists(NUMBER, max_size=7).map(lambda values: stability(values, (), SETTINGS))
+        ),
     ),
-    numbers_of(ReadingContext, recent_do_mg_l=st.lists(NUMBER, max_size=4).map(tuple)),
+    numbers_of(
+        ReadingContext,
+        recent_do_mg_l=st.lists(NUMBER, max_size=4).map(tuple),
+        bracket=st.sampled_from([None, Bracket("bracketed", 0, 1), Bracket("drift", 0, 1)]),
+    ),
 )
 def test_any_numbers_give_whole_findings(reading, context):
     for finding in reading_findings(reading, context, SETTINGS):
@@ -228,6 +250,8 @@ def test_any_numbers_give_whole_findings(reading, context):
         ({"wading_caution_m2_s": 0.2}, ["wading_caution"]),
         ({"parcel_h": 0.3, "parcel_percent": 1.0}, ["late_for_parcel"]),
         ({"snapshot_h": 1.0}, ["snapshot_long"]),
+        ({"ph_high": 7.5}, ["ph_unlikely"]),
+        ({"position_m": 5.0}, ["position_poor"]),
     ],
 )
 def test_the_surveys_own_settings_decide(changed, expected):

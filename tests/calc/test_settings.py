@@ -1,5 +1,7 @@
 import dataclasses
 import math
+import re
+from pathlib import Path
 
 import pytest
 
@@ -14,6 +16,15 @@ def test_every_field_is_listed_once_with_label_and_source():
     # Plain ratios and one choice are the only settings without a unit.
     unitless = {"oxygen_step_bands", "grade_both_limits", "bottle_low_multiple", "bottle_low_below_multiple"}
     assert {setting.key for setting in SETTINGS if not setting.unit} == unitless
+
+
+def test_every_setting_is_used():
+    root = Path(__file__).parents[2]
+    sources = [path for path in (*root.glob("calc/*.py"), *root.glob("webapp/**/*.py")) if path.name != "settings.py"]
+    used = set(re.findall(r"settings\.(\w+)", " ".join(path.read_text(encoding="utf-8") for path in sources)))
+    # The grades are read by their common name: grade_{name}_{unit}.
+    unused = {setting.key for setting in SETTINGS} - used
+    assert {key for key in unused if not key.startswith("grade_")} == set()
 
 
 def test_defaults_are_those_of_the_list():
