@@ -3,6 +3,7 @@
 from dataclasses import asdict
 
 from calc.settings import Settings
+from webapp.approval.lock import refuse_if_approved
 from webapp.errors import Conflict, NotFound
 from webapp.models import History, SettingsVersion, Survey, SurveyMember, new_id
 from webapp.people.queries import get_person
@@ -72,7 +73,11 @@ def remove_member(db, survey_id, person_id, by_id):
 
 
 def remember(db, survey_id, by_id, what, entity="survey", entity_id=None, particulars=None):
-    """Add a line to the survey's history; the caller commits."""
+    """Add a line to the survey's history; the caller commits. Raises Conflict where the survey is approved.
+
+    Whatever changes a survey comes here before its commit, and best before it adds its rows: see approval.lock.
+    """
+    refuse_if_approved(db, survey_id, what)
     db.add(
         History(
             survey_id=survey_id,
