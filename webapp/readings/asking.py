@@ -1,24 +1,26 @@
 """What is odd about a reading: asked about once before it is stored, told again whenever it is shown."""
 
+from dataclasses import replace
 from datetime import timedelta
 
+from calc.findings import Finding
 from calc.quality import ReadingContext, ReadingValues, reading_findings
-from calc.settings import Settings
+from calc.quality_day import anchor_moved
 from calc.units import convert
 from webapp.readings.service import oxygen_of, station_pressure_of, velocity_of
+from webapp.readings.settling import stability_of, thresholds
+
+__all__ = ["findings_on_new", "findings_on_stored", "thresholds", "to_ask"]
 
 # The crew knows what the clock says: a reading of this moment is late or early, not mistyped.
 THIS_MOMENT = timedelta(minutes=15)
 OF_THE_RUN = {"early_for_parcel", "late_for_parcel", "snapshot_long"}
+# What is told beside a reading and holds nothing back: nobody at the water can change it.
+TOLD = {"diel", "position_poor"}
 
 
-def thresholds(settings_version):
-    """Return the survey's Settings; the trade's defaults where a survey has none."""
-    return Settings.from_dict(settings_version.thresholds) if settings_version else Settings()
-
-
-def findings_on_new(survey, settings, new, around, now):
-    """Return every finding on a reading that is not stored yet."""
+def findings_on_new(survey, settings, new, around, now, meters=()):
+    """Return every finding on a reading that is not stored yet; meters are those of the survey."""
     do, velocity = oxygen_of(new, survey.elevation_m), velocity_of(new)
     unit = (new.entered.get("pressure") or {}).get("unit", "mm[Hg]")
     values = ReadingValues(
@@ -35,23 +37,60 @@ def findings_on_new(survey, settings, new, around, now):
         sensor_depth_m=new.sensor_depth_m,
         velocity_m_s=velocity,
         position=new.position,
+        position_radius_m=new.position_radius_m,
+        ph=new.ph,
+        stability=stability_of(new.series, settings),
     )
     context = _context(survey, around, station_pressure_of(new, survey.elevation_m), new.taken_at, now)
-    return reading_findings(values, context, settings)
+    findings = reading_findings(values, context, settings) + _since_the_anchor(do, around, settings)
+    return findings + meter_findings(new.meter, meters)
 
 
-def findings_on_stored(survey, settings, reading, around, now):
-    """Return every finding on a reading as it stands, a FinalReading; its pressure is that of the station already."""
+def findings_on_stored(survey, settings, reading, around, now, *, source="standard", bracket=None, air_temp_c=None):
+    """Return every finding on a reading as it stands, a FinalReading; its pressure is that of the station already.
+
+    source is where the pressure came from; a value read at the water is held against the elevation again. bracket is
+    the calc Bracket of the meter checks around it, air_temp_c what its visit says.
+    """
+    read_here = source in ("meter", "barometer")
     values = ReadingValues(
         do_mg_l=reading.do_mg_l,
         water_temp_c=reading.water_temp_c,
         depth_m=reading.depth_m,
         do_percent_meter=reading.do_percent,
         conductance_us_cm=reading.conductance_us_cm,
+        pressure_mmhg=reading.pressure_mmhg if read_here else None,
+        pressure_value=reading.pressure_mmhg if read_here else None,
+        pressure_source=source if read_here else "none",
         sensor_depth_m=reading.sensor_depth_m,
         velocity_m_s=reading.velocity_m_s,
+        position=reading.position,
+        position_radius_m=reading.position_radius_m,
+        ph=reading.ph,
+        stability=stability_of(reading.series, settings),
     )
-    return reading_findings(values, _context(survey, around, reading.pressure_mmhg, reading.taken_at, now), settings)
+    context = _context(survey, around, reading.pressure_mmhg, reading.taken_at, now)
+    findings = reading_findings(values, replace(context, bracket=bracket, air_temp_c=air_temp_c), settings)
+    return findings + _since_the_anchor(reading.do_mg_l, around, settings)
+
+
+def _since_the_anchor(do_mg_l, around, settings):
+    return anchor_moved(around.anchor.do_mg_l, do_mg_l, settings) if around.anchor else ()
+
+
+def meter_findings(name, meters):
+    """Return a finding where a meter is none of the survey's, or is out of service."""
+    if not name or not meters:
+        return ()
+    known = [one for one in meters if one.name.casefold() == name.casefold()]
+    if known and not all(one.out_of_service for one in known):
+        return ()
+    cause = "Another meter is in use, or its name was written otherwise."
+    if known:
+        says, do = f"{name} is out of service.", "Take another meter, or have the lead or the office put it in service."
+    else:
+        says, do = f"{name} is no meter of this survey.", "Choose it from the list, or register it on the meters page."
+    return (Finding("meter_out_of_service" if known else "meter_unknown", "meter", says, cause, do),)
 
 
 def to_ask(findings, new, now, saved_at=None):
@@ -64,7 +103,8 @@ def to_ask(findings, new, now, saved_at=None):
     if now - saved_at > THIS_MOMENT:
         return []
     timely = abs(saved_at - new.taken_at) <= THIS_MOMENT
-    return [one for one in findings if not one.hazard and not (timely and one.name in OF_THE_RUN)]
+    leave = TOLD | OF_THE_RUN if timely else TOLD
+    return [one for one in findings if not one.hazard and one.name not in leave]
 
 
 def _context(survey, around, pressure_mmhg, taken_at, now):

@@ -3,11 +3,13 @@
 from datetime import UTC, datetime
 
 from webapp.display import Show
+from webapp.meters.queries import meters_of
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import findings_on_new, thresholds, to_ask
 from webapp.readings.check import on_site_check
 from webapp.readings.layers import final, placed
 from webapp.readings.queries import readings_of
+from webapp.readings.settling import settle
 from webapp.readings.surroundings import distances_of, look_around
 from webapp.sag.estimate import estimate_of
 from webapp.sag.moved import against_today
@@ -23,6 +25,11 @@ class Day:
         self.plan = current_plan(db, survey.id)
         self.settings = thresholds(current_settings(db, survey.id))
         self.readings = [final(one) for one in readings_of(db, survey.id)]
+        self.meters = meters_of(db, survey.id)
+
+    def settled(self, new):
+        """Return a NewReading with what its several raw values give; None as it is."""
+        return new and settle(new, self.settings)
 
     def asks(self, new, saved_at=None):
         """Return the findings to ask about before this reading is stored: none for one that is stored already.
@@ -32,9 +39,10 @@ class Day:
         if new is None or any(one.id == new.id for one in self.readings):
             return []
         around = look_around(
-            self.survey, self.plan, new.station_code, new.taken_at, self.readings, replicate=new.replicate
+            self.survey, self.plan, new.station_code, new.taken_at, self.readings, replicate=new.replicate, point=new
         )
-        return to_ask(findings_on_new(self.survey, self.settings, new, around, self.now), new, self.now, saved_at)
+        findings = findings_on_new(self.survey, self.settings, new, around, self.now, self.meters)
+        return to_ask(findings, new, self.now, saved_at)
 
     def holds(self, reading):
         """Count a reading that was stored after the others were fetched."""

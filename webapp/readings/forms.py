@@ -18,27 +18,35 @@ from webapp.readings.new import FURTHEST_AHEAD, NewReading
 
 # Beyond what can be measured, but a slip that is worth an offer: °F in the °C box, percent in the mg/L box.
 WIDE = {"do_mg_l": 400.0, "water_temp_c": 113.0}
-# What the form asks for under "More about this reading".
-MORE = (
-    "do_percent",
-    "percent_basis",
-    "conductance_us_cm",
-    "pressure",
-    "pressure_unit",
-    "pressure_source",
-    "position",
-    "sensor_depth_m",
-    "velocity_m_s",
-    "velocity_method",
-    "float_distance",
-    "float_time_s",
-    "meter",
-    "replicate",
-    "note",
-    "latitude",
-    "longitude",
-    "position_radius_m",
-)
+# What the form asks for under each of its folds, by the fold's name, and what opens it once it is filled in.
+FOLDS = {
+    "timed": ("values", "soak_s", "unstable_reason"),
+    "point": ("position", "distance_left_m", "sensor_depth_m"),
+    "more": (
+        "do_percent",
+        "percent_basis",
+        "conductance_us_cm",
+        "ph",
+        "pressure",
+        "pressure_unit",
+        "pressure_source",
+        "velocity_m_s",
+        "velocity_method",
+        "float_distance",
+        "float_time_s",
+        "meter",
+        "meter_other",
+        "replicate",
+        "note",
+        "latitude",
+        "longitude",
+        "position_radius_m",
+    ),
+}
+OPENS = {"timed": ("values",), "point": (), "more": ("do_percent", "note", "velocity_m_s")}
+# What a link to the form of the next point or of a repeat may set: never a measured value.
+GIVEN = ("position", "distance_left_m", "sensor_depth_m", "meter", "replicate")
+UNSTABLE = "unstable"
 WEATHER = "a weather value"
 # The names that calc.quality uses for two of the fields.
 FIELD_OF = {"do_percent_meter": "do_percent", "pressure_value": "pressure"}
@@ -47,11 +55,16 @@ FIELD_OF = {"do_percent_meter": "do_percent", "pressure_value": "pressure"}
 def parse_reading(source, show, station_code, now):
     """Return (NewReading, errors); the reading is None where the errors leave no numbers to check."""
     fields = Fields(source, show)
+    otherwise = fields.holds("do_percent") or fields.holds("values")
+    oxygen = _measured(fields, "do_mg_l", "oxygen", required=not otherwise)
+    series = _series(fields, oxygen)
     new = NewReading(
         id=fields.uuid("submission_id"),
         station_code=station_code,
         taken_at=_time(fields, now),
-        do_mg_l=_measured(fields, "do_mg_l", "oxygen", required=not fields.holds("do_percent")),
+        do_mg_l=series[-1]["do_mg_l"] if series else oxygen,
+        series=series,
+        soak_s=fields.number("soak_s", "seconds in the water", 0, LONGEST_SOAK_S, "plain", False),
         water_temp_c=_measured(fields, "water_temp_c", "water temperature", required=True),
         **_velocity(fields),
         **{name: _measured(fields, name, label) for name, label in _PLAIN},
@@ -66,17 +79,29 @@ def parse_reading(source, show, station_code, now):
     return (new if usable else None), fields.errors
 
 
-def fresh_form(show, last, now):
-    """Return the texts of a fresh form: the time, and what a crew sets once a day, as in their last reading."""
+def fresh_form(show, last, now, meters=(), given=None):
+    """Return the texts of a fresh form: the time, and what a crew sets once a day, as in their last reading.
+
+    meters are those of the survey, given what the link to the form says of the next point.
+    """
     pressure = (last.entered.get("pressure") or {}) if last else {}
     return {
         "submission_id": str(uuid.uuid4()),
         "taken_at": show.typed_time(now),
         "units": show.unit_system,
-        "meter": last.meter if last else "",
+        "meter": _usual_meter(last, meters),
         "pressure_source": last.pressure_source if last else "standard",
         "pressure_unit": pressure.get("unit") or ("[in_i'Hg]" if show.unit_system == "us" else "mm[Hg]"),
+        **{name: text[:60] for name in GIVEN if (text := (given or {}).get(name))},
     }
+
+
+def _usual_meter(last, meters):
+    """Return the name of the meter that was used last; of the only one in service before the first reading."""
+    in_service = [one.name for one in meters if not one.out_of_service]
+    if last:
+        return last.meter
+    return in_service[0] if len(in_service) == 1 else ""
 
 
 def saved_at(source):
@@ -97,6 +122,8 @@ _PLAIN = (
     ("depth_m", "depth of the water"),
     ("do_percent", "saturation the meter shows"),
     ("conductance_us_cm", "specific conductance"),
+    ("ph", "pH"),
+    ("distance_left_m", "distance from the left edge"),
     ("sensor_depth_m", "depth of the sensor"),
     ("latitude", "latitude"),
     ("longitude", "longitude"),
@@ -119,6 +146,22 @@ _TOO_HIGH = {
     "and leave this box empty if the meter can't show mg/L.",
     "water_temp_c": "No river is that warm. Check the unit that the meter shows.",
 }
+
+
+def _series(fields, do_mg_l):
+    """Return the several raw values; a number in the oxygen box that is none of them is one more, the last."""
+    text = fields.text("values", "values", 2000, required=False)
+    if not text:
+        return ()
+    try:
+        series = read_values(text, fields.show)
+    except BadValues as trouble:
+        fields.refuse("values", str(trouble))
+        return ()
+    fields.entered["values"] = {"text": text, "unit": "mg/L"}
+    if do_mg_l is None or "do_mg_l" in fields.errors or any(one["do_mg_l"] == do_mg_l for one in series):
+        return series
+    return (*series, {"after_s": None, "do_mg_l": do_mg_l, "water_temp_c": None})
 
 
 def _time(fields, now):
@@ -166,19 +209,32 @@ def _velocity(fields):
 
 
 def _words(fields):
+    longest = READINGS.column("meter").longest
+    other = fields.text("meter_other", "meter's name", longest, required=False)
     return {
         "percent_basis": fields.choice("percent_basis", "basis of the percent", PERCENT_BASES, "local"),
         "position": fields.choice("position", "position across the river", POSITIONS, ""),
-        "meter": fields.text("meter", "meter's name", READINGS.column("meter").longest, required=False),
+        "meter": other or fields.text("meter", "meter's name", longest, required=False),
+        "unstable_reason": fields.text("unstable_reason", "reason", 300, required=False),
         "replicate": fields.ticked("replicate"),
         "note": fields.text("note", "note", READINGS.column("note").longest, required=False),
     }
 
 
 def unanswered(findings, source):
-    """Return the findings that the crew has not yet answered with "keep it"."""
+    """Return the findings that the crew has not yet answered with "keep it".
+
+    Values that had not settled are answered by the reason why they are saved, and by nothing else.
+    """
     kept = set(_marks(source, "kept")) | set(_marks(source, "keep"))
-    return [one for one in findings if _mark(one, source) not in kept]
+    why = (source.get("unstable_reason") or "").strip()
+    return [one for one in findings if not (why if one.name == UNSTABLE else _mark(one, source) in kept)]
+
+
+def without_reason(findings, source):
+    """Return the message for values that had not settled and were kept without saying why; none for others."""
+    kept = source.get("keep") and any(one.name == UNSTABLE for one in findings)
+    return {"unstable_reason": "Say why it is saved although it had not settled."} if kept else {}
 
 
 def answers(findings, source):
@@ -201,9 +257,11 @@ def _mark(finding, source):
 
 
 def unfolded(form, errors, findings):
-    """Return whether something under "More about this reading" needs to be seen."""
+    """Return the names of the folds with something that needs to be seen."""
     touched = set(errors) | {FIELD_OF.get(one.field, one.field) for one in findings}
-    return bool(touched & set(MORE)) or any(form.get(name) for name in ("do_percent", "note", "velocity_m_s"))
+    return {
+        fold for fold, names in FOLDS.items() if touched & set(names) or any(form.get(name) for name in OPENS[fold])
+    }
 
 
 def with_suggestion(source, findings, show):

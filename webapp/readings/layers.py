@@ -28,6 +28,7 @@ class FinalReading:
 
     raw holds each as it was recorded, corrections the events; drift is the event whose line do_mg_l was moved along, or
     None, and before_drift_mg_l oxygen before that. review is OPEN, KEPT, ASKED or ANSWERED, reviewer_id who decided.
+    series holds the several raw values, stable what was said of them when it was recorded.
     """
 
     id: str
@@ -58,6 +59,7 @@ class FinalReading:
     review: str = OPEN
     reviewer_id: str = ""
     stable: bool | None = None
+    series: tuple = ()
 
     @property
     def state(self):
@@ -114,6 +116,7 @@ def final(reading):
         review=review,
         reviewer_id=reviewer_id,
         stable=reading.stable,
+        series=tuple(reading.series or ()),
         **numbers,
     )
 

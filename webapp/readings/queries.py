@@ -1,16 +1,28 @@
 """Readings of a survey. Whoever asks has shown by surveys.queries.get_survey that the person is on it."""
 
-from sqlalchemy import select
+from sqlalchemy import func, select
 from sqlalchemy.orm import joinedload, selectinload
 
 from webapp.errors import NotFound
-from webapp.models import Reading, ReadingEvent, Station
+from webapp.models import MeterCheck, MeterCheckEvent, Reading, ReadingEvent, Station, Visit, VisitEntry
 
 
 def readings_of(db, survey_id):
     """Return the survey's readings with station, author and events, in the order they were taken."""
     query = _with_all(select(Reading).where(Reading.survey_id == survey_id))
     return db.scalars(query.order_by(Reading.taken_at, Reading.received_at, Reading.id)).all()
+
+
+def mark_of(db, survey_id):
+    """Return how many rows there are of all that readings are judged by. None is ever changed or taken away."""
+    counted = (
+        select(func.count()).where(Reading.survey_id == survey_id),
+        select(func.count(ReadingEvent.id)).join(Reading).where(Reading.survey_id == survey_id),
+        select(func.count()).where(MeterCheck.survey_id == survey_id),
+        select(func.count(MeterCheckEvent.id)).join(MeterCheck).where(MeterCheck.survey_id == survey_id),
+        select(func.count(VisitEntry.id)).join(Visit).where(Visit.survey_id == survey_id),
+    )
+    return tuple(db.execute(select(*(one.scalar_subquery() for one in counted))).one())
 
 
 def find_reading(db, reading_id):

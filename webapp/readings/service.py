@@ -11,6 +11,8 @@ from webapp.errors import Conflict
 from webapp.models import Reading
 from webapp.readings import queries
 from webapp.readings.new import NewReading
+from webapp.readings.settling import settle, thresholds
+from webapp.surveys.queries import current_settings
 from webapp.surveys.service import remember
 
 __all__ = ["NewReading", "add_reading", "oxygen_of", "put_reading", "station_pressure_of", "velocity_of"]
@@ -37,7 +39,7 @@ _CONTENT = (
     "unstable_reason",
     "distance_left_m",
 )
-_AS_TYPED = ("do_mg_l", "pressure", "velocity_m_s", "float_distance", "float_time_s")
+_AS_TYPED = ("do_mg_l", "values", "pressure", "velocity_m_s", "float_distance", "float_time_s")
 
 
 def add_reading(db, survey, new, by_id, plan_version, received_at):
@@ -59,6 +61,8 @@ def put_reading(db, survey, new, by_id, plan_version, received_at):
     if (stored := queries.find_reading(db, new.id)) is not None:
         return _the_same(stored, survey, new)
     station = queries.get_station(db, survey.id, new.station_code)
+    if new.series:
+        new = settle(new, thresholds(current_settings(db, survey.id)))
     values = asdict(new)
     del values["station_code"], values["surface_velocity_m_s"]
     values["kept_findings"], values["series"] = list(new.kept_findings), list(new.series)
@@ -75,8 +79,8 @@ def put_reading(db, survey, new, by_id, plan_version, received_at):
         **values,
     )
     reading.station = station
-    db.add(reading)
     remember(db, survey.id, by_id, "reading saved", "reading", new.id)
+    db.add(reading)
     return reading
 
 

@@ -3,12 +3,17 @@
 from bisect import bisect_right
 from dataclasses import dataclass
 from datetime import timedelta
+from zoneinfo import ZoneInfo
 
 from webapp.readings.expected import expected_at_stations, prediction_or_reasons
 from webapp.readings.layers import FinalReading, final
 
 NEIGHBOURLY = timedelta(hours=24)
 OCCASION = timedelta(hours=2)
+# A station that is read again after this long, on the same day, shows whether the river moved meanwhile.
+ANCHOR = timedelta(hours=1)
+# Two depths of the sensor, or two distances from the left edge, that are one point of the section.
+SAME_POINT_M = 0.1
 # A meter that is stuck shows it within a few stations; further back nothing is asked.
 _RECENT_STATIONS = 12
 _FURTHEST_BACK = 200
@@ -28,6 +33,8 @@ class Surroundings:
     """Distances in km below the outfall, times in h; None where it can't be told.
 
     expected is the prediction at the station; missing says what the plan lacks where there is no prediction at all.
+    repeats is the reading that a replicate repeats, anchor the first one at this point on the same day, if it was
+    taken long enough ago to show what the river did meanwhile.
     """
 
     code: str
@@ -43,6 +50,7 @@ class Surroundings:
     arrives_at: object
     hours_late: float | None
     run_span_h: float | None
+    anchor: FinalReading | None = None
 
     @property
     def above_outfall(self):
@@ -62,9 +70,21 @@ def where(plan_version, code):
     return station, next((row for row in tables["access"] if row["name"] == station.get("access")), {})
 
 
-def look_around(survey, plan_version, code, taken_at, readings, reading_id=None, replicate=False):
+def look_around(survey, plan_version, code, taken_at, readings, reading_id=None, replicate=False, point=None):
     """Return the Surroundings of a reading at a station and time; readings are all of the survey."""
-    return Neighbourhood(survey, plan_version, readings).around(code, taken_at, reading_id, replicate)
+    return Neighbourhood(survey, plan_version, readings).around(code, taken_at, reading_id, replicate, point)
+
+
+def same_point(one, other):
+    """Return whether two readings at a station are of one point of the section, as far as anybody said."""
+    across = True
+    if None not in (one.distance_left_m, other.distance_left_m):
+        across = abs(one.distance_left_m - other.distance_left_m) <= SAME_POINT_M
+    elif one.position and other.position:
+        across = one.position == other.position
+    if None in (one.sensor_depth_m, other.sensor_depth_m):
+        return across
+    return across and abs(one.sensor_depth_m - other.sensor_depth_m) <= SAME_POINT_M
 
 
 class Neighbourhood:
@@ -72,6 +92,7 @@ class Neighbourhood:
 
     def __init__(self, survey, plan_version, readings):
         self._survey = survey
+        self._zone = ZoneInfo(survey.time_zone)
         self._distances = distances_of(plan_version)
         self._prediction, self._missing = prediction_or_reasons(survey, plan_version)
         self._expected = expected_at_stations(survey, plan_version)
@@ -85,9 +106,13 @@ class Neighbourhood:
         self._down = sorted(places)
         self._up = self._down[::-1]
 
-    def around(self, code, taken_at, reading_id=None, replicate=False):
-        """Return the Surroundings of a reading at a station and time; reading_id is its own, which does not count."""
+    def around(self, code, taken_at, reading_id=None, replicate=False, point=None):
+        """Return the Surroundings of a reading at a station and time; reading_id is its own, which does not count.
+
+        point is a reading whose point of the section it shares, where its own is not among the readings.
+        """
         survey, distance = self._survey, self._distances.get(code)
+        here = self._here(code, taken_at, reading_id, point)
         expected = self._expected.get(code)
         travel_h = expected.travel_time_h if expected and distance >= 0 else None
         arrives_at = arrival_of(survey, travel_h)
@@ -99,12 +124,13 @@ class Neighbourhood:
             expected=expected,
             upstream=self._neighbour(-1, distance, taken_at),
             downstream=self._neighbour(1, distance, taken_at),
-            repeats=self._repeated(code, taken_at, reading_id) if replicate else None,
+            repeats=_repeated(here, taken_at) if replicate else None,
             recent_do_mg_l=self._recent(code, taken_at),
             travel_time_h=travel_h,
             arrives_at=arrives_at,
             hours_late=hours_after(arrives_at, taken_at),
             run_span_h=self._run_span_h(taken_at) if survey.sampling == "snapshot" else None,
+            anchor=self._anchor(here, taken_at),
         )
 
     def _neighbour(self, side, distance, taken_at):
@@ -125,15 +151,17 @@ class Neighbourhood:
         place = bisect_right(here, taken_at, key=_when)
         return here[max(0, place - 1) : place + 1]
 
-    def _repeated(self, code, taken_at, reading_id):
-        """Return the reading that a replicate repeats: the last one at the station on this occasion."""
+    def _here(self, code, taken_at, reading_id, point):
+        """Return the readings at this point of a station up to a time, but for the reading itself."""
         here = self._at.get(code, [])
-        for one in reversed(here[: bisect_right(here, taken_at, key=_when)]):
-            if taken_at - one.taken_at > OCCASION:
-                return None
-            if one.id != reading_id:
-                return one
-        return None
+        point = point or next((one for one in here if one.id == reading_id), None)
+        before = [one for one in here[: bisect_right(here, taken_at, key=_when)] if one.id != reading_id]
+        return before if point is None else [one for one in before if same_point(one, point)]
+
+    def _anchor(self, here, taken_at):
+        day = taken_at.astimezone(self._zone).date()
+        first = next((one for one in here if one.taken_at.astimezone(self._zone).date() == day), None)
+        return first if first is not None and taken_at - first.taken_at >= ANCHOR else None
 
     def _recent(self, code, taken_at):
         """Return oxygen at the stations read before this one, one value each, the latest last."""
@@ -163,6 +191,11 @@ def arrival_of(survey, travel_time_h):
 def hours_after(arrives_at, taken_at):
     """Return how long after the parcel a reading was taken, negative before it. [h] None without an arrival."""
     return None if arrives_at is None else (taken_at - arrives_at).total_seconds() / 3600
+
+
+def _repeated(here, taken_at):
+    """Return the reading that a replicate repeats: the last one at its point on this occasion."""
+    return here[-1] if here and taken_at - here[-1].taken_at <= OCCASION else None
 
 
 def _when(reading):

@@ -56,21 +56,26 @@ def save(survey_id, code):
     if form.get("author_id", current_user.id) != current_user.id:
         return _belongs_to_another(survey, code, day.plan, form)
     show = forms.show_of_form(form, Show.of(survey))
-    reading, errors = forms.parse_reading(form, show, code, day.now)
-    asks = day.asks(reading, forms.saved_at(form))
+    reading, errors, asks = _read(day, form, show, code)
     if taken := forms.with_suggestion(form, asks, show):
         form = taken
-        reading, errors = forms.parse_reading(form, show, code, day.now)
-        asks = day.asks(reading, forms.saved_at(form))
+        reading, errors, asks = _read(day, form, show, code)
     if errors:
         return _form_page(survey, show, code, day.plan, form, 422, errors, [one for one in asks if one.suggestion])
     if open_asks := forms.unanswered(asks, form):
-        return _form_page(survey, show, code, day.plan, form, 422, {}, open_asks)
+        return _form_page(survey, show, code, day.plan, form, 422, forms.without_reason(open_asks, form), open_asks)
     try:
         stored = service.add_reading(db, survey, reading.keeping(asks), current_user.id, day.plan, day.now)
     except Conflict as conflict:
         return _form_page(survey, show, code, day.plan, form, 409, conflict=conflict.message)
     return _stored(day, stored)
+
+
+def _read(day, form, show, code):
+    """Return the reading that a form holds, its errors, and what to ask about it."""
+    reading, errors = forms.parse_reading(form, show, code, day.now)
+    reading = day.settled(reading)
+    return reading, errors, day.asks(reading, forms.saved_at(form))
 
 
 @bp.get("/surveys/<survey_id>/readings/<reading_id>/check")

@@ -1,0 +1,166 @@
+"""Every reading of a survey judged by today's settings: quality, reasons, its checks, its visit. Nothing is stored."""
+
+import threading
+from collections import OrderedDict
+from dataclasses import dataclass
+
+from calc.findings import Finding
+from calc.quality_meter import Bracket
+from calc.quality_section import not_mixed, stratified
+from webapp.meters.queries import checks_of
+from webapp.meters.verdicts import Brackets, JudgedCheck, judged_checks
+from webapp.plan.queries import current_plan
+from webapp.readings import queries
+from webapp.readings.asking import findings_on_stored, thresholds
+from webapp.readings.layers import FinalReading, final
+from webapp.readings.occasions import Occasion, occasions_of
+from webapp.readings.quality_words import quality_of, reasons_of, severity_of
+from webapp.readings.surroundings import Neighbourhood, Surroundings
+from webapp.surveys.queries import current_settings
+from webapp.visits.layers import final_visit
+from webapp.visits.queries import visits_of
+
+_KEPT_SURVEYS = 4
+
+
+@dataclass(frozen=True)
+class Judged:
+    """A reading and what is to be said of it.
+
+    findings are those of today's settings without the hazards, kept the names of those that were asked about on site
+    and kept. grade is that of the check after it, empty without one. severity is 0 where nothing wants a look.
+    """
+
+    reading: FinalReading
+    author_id: str
+    author: str
+    around: Surroundings
+    findings: tuple[Finding, ...]
+    kept: tuple[str, ...]
+    bracket: Bracket
+    check_before: JudgedCheck | None
+    check_after: JudgedCheck | None
+    occasion: Occasion
+    repeats_id: str
+    quality: str
+    reasons: tuple[str, ...]
+    severity: float
+
+    @property
+    def grade(self):
+        """Return the grade of the check that closes it, empty where none does."""
+        return self.check_after.verdict.grade if self.check_after else ""
+
+    @property
+    def visit_id(self):
+        """Return the id of its visit, empty where nobody opened one."""
+        return self.occasion.visit.id if self.occasion.visit else ""
+
+    @property
+    def visit_no(self):
+        """Return which occupation of its station it belongs to."""
+        return self.occasion.visit_no
+
+    @property
+    def section(self):
+        """Return the verdict on the section it is a point of."""
+        return self.occasion.section
+
+    @property
+    def layers(self):
+        """Return whether the water was layered there."""
+        return self.occasion.layers
+
+
+@dataclass(frozen=True)
+class Judgement:
+    """All readings of a survey, judged: by id, in time order, and by the occasions they were taken on."""
+
+    by_id: dict[str, Judged]
+    occasions: list[Occasion]
+    checks: list[JudgedCheck]
+
+    def of_station(self, code):
+        """Return the occasions at a station, the latest last."""
+        return [one for one in self.occasions if one.station_code == code]
+
+
+def judge(survey, plan_version, settings, readings, checks, visits):
+    """Return the Judgement of a survey.
+
+    readings, checks and visits are all rows of the survey with what hangs on them; readings in time order; settings
+    are calc's.
+    """
+    finals = [final(one) for one in readings]
+    authors = {one.id: one.author_id for one in readings}
+    occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings)
+    occasion_of = {reading.id: one for one in occasions for reading in one.readings}
+    judged = judged_checks(checks, settings)
+    brackets, around = Brackets(judged, settings), Neighbourhood(survey, plan_version, finals)
+    by_id = {
+        one.id: _judged(survey, settings, one, now, around, brackets, occasion_of[one.id])
+        for one, now in zip(readings, finals, strict=True)
+    }
+    return Judgement(by_id, occasions, judged)
+
+
+def _judged(survey, settings, reading, now, neighbourhood, brackets, occasion):
+    around = neighbourhood.around(now.station_code, now.taken_at, now.id, now.replicate)
+    bracket, before, after = brackets.of(now.meter, now.taken_at)
+    findings = findings_on_stored(
+        survey,
+        settings,
+        now,
+        around,
+        reading.received_at,
+        source=reading.pressure_source,
+        bracket=bracket,
+        air_temp_c=occasion.visit.facts.get("air_temp_c") if occasion.visit else None,
+    )
+    findings += (*not_mixed(occasion.section), *stratified(occasion.layers))
+    findings = tuple(one for one in findings if not one.hazard)
+    reasons = reasons_of(reading, now, [one.name for one in findings], settings.oxygen_low_mg_l)
+    return Judged(
+        reading=now,
+        author_id=reading.author_id,
+        author=reading.author.name,
+        around=around,
+        findings=findings,
+        kept=tuple(str(one.get("name")) for one in reading.kept_findings),
+        bracket=bracket,
+        check_before=before,
+        check_after=after,
+        occasion=occasion,
+        repeats_id=around.repeats.id if around.repeats else "",
+        quality=quality_of(now, reasons),
+        reasons=reasons,
+        severity=severity_of(now, reasons),
+    )
+
+
+_kept = OrderedDict()
+_keeping = threading.Lock()
+
+
+def judgement_of(db, survey):
+    """Return the Judgement of a survey as it is now; kept in memory until anything it rests on changes."""
+    plan, settings = current_plan(db, survey.id), current_settings(db, survey.id)
+    mark = (queries.mark_of(db, survey.id), plan and plan.id, settings and settings.id, _facts(survey))
+    with _keeping:
+        held, found = _kept.get(survey.id, (None, None))
+        if held == mark:
+            _kept.move_to_end(survey.id)
+            return found
+    rows = (queries.readings_of(db, survey.id), checks_of(db, survey.id), visits_of(db, survey.id))
+    found = judge(survey, plan, thresholds(settings), *rows)
+    with _keeping:
+        _kept[survey.id] = (mark, found)
+        _kept.move_to_end(survey.id)
+        while len(_kept) > _KEPT_SURVEYS:
+            _kept.popitem(last=False)
+    return found
+
+
+def _facts(survey):
+    """Return what of a survey's own facts its readings are judged by."""
+    return survey.elevation_m, survey.sampling, survey.release_at, survey.time_zone, survey.created_at
