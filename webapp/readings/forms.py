@@ -15,6 +15,7 @@ from webapp.readings.columns import (
     VELOCITY_METHODS,
 )
 from webapp.readings.new import FURTHEST_AHEAD, NewReading
+from webapp.readings.values import LONGEST_SOAK_S, BadValues, read_values
 
 # Beyond what can be measured, but a slip that is worth an offer: °F in the °C box, percent in the mg/L box.
 WIDE = {"do_mg_l": 400.0, "water_temp_c": 113.0}

@@ -99,9 +99,11 @@ class Neighbourhood:
         self._used = sorted((one for one in map(final, readings) if not one.set_aside), key=_when)
         self._times = [one.taken_at for one in self._used]
         self._run_starts = _run_starts(self._times)
-        self._at = {}
+        self._by_id = {one.id: one for one in self._used}
+        self._at, self._on_day = {}, {}
         for one in self._used:
             self._at.setdefault(one.station_code, []).append(one)
+            self._on_day.setdefault((one.station_code, self._day(one.taken_at)), []).append(one)
         places = [(place, code) for code, place in self._distances.items() if code in self._at]
         self._down = sorted(places)
         self._up = self._down[::-1]
@@ -112,7 +114,7 @@ class Neighbourhood:
         point is a reading whose point of the section it shares, where its own is not among the readings.
         """
         survey, distance = self._survey, self._distances.get(code)
-        here = self._here(code, taken_at, reading_id, point)
+        point = point or self._by_id.get(reading_id)
         expected = self._expected.get(code)
         travel_h = expected.travel_time_h if expected and distance >= 0 else None
         arrives_at = arrival_of(survey, travel_h)
@@ -124,13 +126,13 @@ class Neighbourhood:
             expected=expected,
             upstream=self._neighbour(-1, distance, taken_at),
             downstream=self._neighbour(1, distance, taken_at),
-            repeats=_repeated(here, taken_at) if replicate else None,
+            repeats=self._repeated(code, taken_at, reading_id, point) if replicate else None,
             recent_do_mg_l=self._recent(code, taken_at),
             travel_time_h=travel_h,
             arrives_at=arrives_at,
             hours_late=hours_after(arrives_at, taken_at),
             run_span_h=self._run_span_h(taken_at) if survey.sampling == "snapshot" else None,
-            anchor=self._anchor(here, taken_at),
+            anchor=self._anchor(code, taken_at, reading_id, point),
         )
 
     def _neighbour(self, side, distance, taken_at):
@@ -151,17 +153,27 @@ class Neighbourhood:
         place = bisect_right(here, taken_at, key=_when)
         return here[max(0, place - 1) : place + 1]
 
-    def _here(self, code, taken_at, reading_id, point):
-        """Return the readings at this point of a station up to a time, but for the reading itself."""
+    def _repeated(self, code, taken_at, reading_id, point):
+        """Return the reading that a replicate repeats: the last one at its point on this occasion."""
         here = self._at.get(code, [])
-        point = point or next((one for one in here if one.id == reading_id), None)
-        before = [one for one in here[: bisect_right(here, taken_at, key=_when)] if one.id != reading_id]
-        return before if point is None else [one for one in before if same_point(one, point)]
+        for one in reversed(here[: bisect_right(here, taken_at, key=_when)]):
+            if taken_at - one.taken_at > OCCASION:
+                return None
+            if one.id != reading_id and (point is None or same_point(one, point)):
+                return one
+        return None
 
-    def _anchor(self, here, taken_at):
-        day = taken_at.astimezone(self._zone).date()
-        first = next((one for one in here if one.taken_at.astimezone(self._zone).date() == day), None)
-        return first if first is not None and taken_at - first.taken_at >= ANCHOR else None
+    def _anchor(self, code, taken_at, reading_id, point):
+        """Return the first reading at this point on the same day, where it was taken long enough ago."""
+        for one in self._on_day.get((code, self._day(taken_at)), ()):
+            if taken_at - one.taken_at < ANCHOR:
+                return None
+            if one.id != reading_id and (point is None or same_point(one, point)):
+                return one
+        return None
+
+    def _day(self, instant):
+        return instant.astimezone(self._zone).date()
 
     def _recent(self, code, taken_at):
         """Return oxygen at the stations read before this one, one value each, the latest last."""
@@ -191,11 +203,6 @@ def arrival_of(survey, travel_time_h):
 def hours_after(arrives_at, taken_at):
     """Return how long after the parcel a reading was taken, negative before it. [h] None without an arrival."""
     return None if arrives_at is None else (taken_at - arrives_at).total_seconds() / 3600
-
-
-def _repeated(here, taken_at):
-    """Return the reading that a replicate repeats: the last one at its point on this occasion."""
-    return here[-1] if here and taken_at - here[-1].taken_at <= OCCASION else None
 
 
 def _when(reading):
