@@ -1,6 +1,5 @@
 """What is odd about a reading: asked about once before it is stored, told again whenever it is shown."""
 
-from dataclasses import replace
 from datetime import timedelta
 
 from calc.findings import Finding
@@ -46,11 +45,11 @@ def findings_on_new(survey, settings, new, around, now, meters=()):
     return findings + meter_findings(new.meter, meters)
 
 
-def findings_on_stored(survey, settings, reading, around, now, *, source="standard", bracket=None, air_temp_c=None):
+def findings_on_stored(survey, settings, reading, around, now, *, source="standard", **known):
     """Return every finding on a reading as it stands, a FinalReading; its pressure is that of the station already.
 
-    source is where the pressure came from; a value read at the water is held against the elevation again. bracket is
-    the calc Bracket of the meter checks around it, air_temp_c what its visit says.
+    source is where the pressure came from; a value read at the water is held against the elevation again. known is
+    what else calc's ReadingContext takes: bracket, air_temp_c, saturation_mg_l.
     """
     read_here = source in ("meter", "barometer")
     values = ReadingValues(
@@ -69,8 +68,8 @@ def findings_on_stored(survey, settings, reading, around, now, *, source="standa
         ph=reading.ph,
         stability=stability_of(reading.series, settings),
     )
-    context = _context(survey, around, reading.pressure_mmhg, reading.taken_at, now)
-    findings = reading_findings(values, replace(context, bracket=bracket, air_temp_c=air_temp_c), settings)
+    context = _context(survey, around, reading.pressure_mmhg, reading.taken_at, now, **known)
+    findings = reading_findings(values, context, settings)
     return findings + _since_the_anchor(reading.do_mg_l, around, settings)
 
 
@@ -107,7 +106,7 @@ def to_ask(findings, new, now, saved_at=None):
     return [one for one in findings if not one.hazard and one.name not in leave]
 
 
-def _context(survey, around, pressure_mmhg, taken_at, now):
+def _context(survey, around, pressure_mmhg, taken_at, now, **known):
     expected = around.expected
     return ReadingContext(
         elevation_m=survey.elevation_m,
@@ -128,6 +127,7 @@ def _context(survey, around, pressure_mmhg, taken_at, now):
         snapshot_span_h=around.run_span_h,
         hours_after_now=_hours(taken_at - now),
         hours_before_survey=_hours(survey.release_at - taken_at) if survey.release_at else None,
+        **known,
     )
 
 

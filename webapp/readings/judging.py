@@ -15,6 +15,7 @@ from webapp.readings.asking import findings_on_stored, thresholds
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.occasions import Occasion, occasions_of
 from webapp.readings.quality_words import quality_of, reasons_of, severity_of
+from webapp.readings.saturations import saturations_of
 from webapp.readings.surroundings import Neighbourhood, Surroundings
 from webapp.surveys.queries import current_settings
 from webapp.visits.layers import final_visit
@@ -97,14 +98,15 @@ def judge(survey, plan_version, settings, readings, checks, visits):
     occasion_of = {reading.id: one for one in occasions for reading in one.readings}
     judged = judged_checks(checks, settings)
     brackets, around = Brackets(judged, settings), Neighbourhood(survey, plan_version, finals)
+    full = saturations_of(finals)
     by_id = {
-        one.id: _judged(survey, settings, one, now, around, brackets, occasion_of[one.id])
-        for one, now in zip(readings, finals, strict=True)
+        one.id: _judged(survey, settings, one, now, around, brackets, occasion_of[one.id], float(saturation))
+        for one, now, saturation in zip(readings, finals, full, strict=True)
     }
     return Judgement(by_id, occasions, judged)
 
 
-def _judged(survey, settings, reading, now, neighbourhood, brackets, occasion):
+def _judged(survey, settings, reading, now, neighbourhood, brackets, occasion, saturation_mg_l):
     around = neighbourhood.around(now.station_code, now.taken_at, now.id, now.replicate)
     bracket, before, after = brackets.of(now.meter, now.taken_at)
     findings = findings_on_stored(
@@ -116,6 +118,7 @@ def _judged(survey, settings, reading, now, neighbourhood, brackets, occasion):
         source=reading.pressure_source,
         bracket=bracket,
         air_temp_c=occasion.visit.facts.get("air_temp_c") if occasion.visit else None,
+        saturation_mg_l=saturation_mg_l,
     )
     findings += (*not_mixed(occasion.section), *stratified(occasion.layers))
     findings = tuple(one for one in findings if not one.hazard)

@@ -6,15 +6,9 @@ The on-site check computes the same for one reading; here calc is called once ov
 import math
 from dataclasses import dataclass
 
-import numpy as np
-
-from calc.oxygen import salinity_psu, saturation_mg_l
 from webapp.readings.check import at_measured_temperature
+from webapp.readings.saturations import saturations_of
 from webapp.readings.surroundings import arrival_of, hours_after
-
-_SATURATION_RANGE_C = (0, 40)
-_PRESSURE_RANGE_MMHG = (380, 836)
-_CONDUCTANCE_RANGE_US_CM = (0, 59000)
 
 
 @dataclass(frozen=True)
@@ -41,7 +35,7 @@ def derive(survey, stations, prediction, finals):
     """
     places = {row["code"]: row.get("distance_km") for row in stations}
     expected = {code: _at(prediction, place) for code, place in places.items()}
-    saturation = _saturations(finals)
+    saturation = saturations_of(finals)
     return [
         _one(survey, final, places.get(final.station_code), expected.get(final.station_code), float(value))
         for final, value in zip(finals, saturation, strict=True)
@@ -50,21 +44,6 @@ def derive(survey, stations, prediction, finals):
 
 def _at(prediction, distance_km):
     return None if prediction is None or distance_km is None else prediction.at(distance_km)
-
-
-def _saturations(finals):
-    """Return each reading's saturation, NaN where a value is missing or outside the equations. [mg/L]"""
-    temperature = _within([final.water_temp_c for final in finals], *_SATURATION_RANGE_C)
-    pressure = _within([final.pressure_mmhg for final in finals], *_PRESSURE_RANGE_MMHG)
-    # Without a conductance the water is taken for fresh; one beyond the equation leaves saturation unknown.
-    conductance = [0.0 if final.conductance_us_cm is None else final.conductance_us_cm for final in finals]
-    salinity = _within(salinity_psu(_within(conductance, *_CONDUCTANCE_RANGE_US_CM)), 0, 40)
-    return saturation_mg_l(temperature, pressure, salinity)
-
-
-def _within(values, low, high):
-    numbers = np.array([np.nan if value is None else value for value in values], dtype=float)
-    return np.where((numbers >= low) & (numbers <= high), numbers, np.nan)
 
 
 def _one(survey, final, distance_km, expected, saturation):
