@@ -21,7 +21,7 @@ from calc.quality_bottle import (
     past_hold_time,
     receipt_warm,
 )
-from calc.quality_bracket import KINDS, Bracket, MeterCheckTime, bracket, bracket_finding
+from calc.quality_bracket import KINDS, Bracket, MeterCheckTime, bracket, bracket_finding, brackets
 from calc.quality_day import (
     Completeness,
     anchor_moved,
@@ -120,6 +120,7 @@ __all__ = [
     "bottle_without_reading",
     "bracket",
     "bracket_finding",
+    "brackets",
     "calibration_missing",
     "check_verdict",
     "cold_water",

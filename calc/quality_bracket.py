@@ -1,7 +1,10 @@
 """Whether a reading lies between two passing checks of its meter."""
 
+import itertools
 import math
 from dataclasses import dataclass
+
+import numpy as np
 
 from calc.errors import CalcError
 from calc.findings import Finding, exceeds, known
@@ -9,6 +12,7 @@ from calc.settings import Settings
 
 KINDS = ("as_found", "adjusted", "read_back", "field", "zero", "end_of_day", "after_cleaning")
 
+_AFTER_READINGS = ("end_of_day", "after_cleaning")
 _CLOSING = ("as_found", "field", "end_of_day", "read_back")
 # Checks typed with the same minute, in the order in which they are made.
 _ORDER = ("as_found", "field", "end_of_day", "after_cleaning", "adjusted", "read_back", "zero")
@@ -95,18 +99,32 @@ def bracket(time_h, checks, settings=_DEFAULTS):
     A meter that is adjusted or cleaned before it is checked can't tell any more what it would have read: such a check
     comes too late for the readings before it, and they have no check after.
 
-    In the same minute as a reading, an end-of-day check counts as after it, a field check as both, others as before.
+    In the same minute as a reading, checks at the end of day and after cleaning count as after it, a field check as
+    both, the others as before.
     """
-    (time,) = known(time_h)
+    return brackets((time_h,), checks, settings)[0]
+
+
+def brackets(times_h, checks, settings=_DEFAULTS):
+    """Return the Bracket of each of many readings, as bracket does for one, with the checks put in order once."""
     timed = [(*known(check.at_h), place) for place, check in enumerate(checks) if check.kind != "zero"]
-    order = sorted(
-        (at, _ORDER.index(checks[place].kind), place)
-        for at, place in timed
-        if not math.isnan(at - time) and not exceeds(abs(at - time), settings.bracket_longest_h)
-    )
-    before = _check_before(time, order, checks)
-    after = _check_after(time, order, checks)
-    if None not in (before, after) and exceeds(checks[after].at_h - checks[before].at_h, settings.bracket_longest_h):
+    order = sorted((at, _ORDER.index(checks[place].kind), place) for at, place in timed if not math.isnan(at))
+    starts = [at for at, _, _ in order]
+    times = known(*times_h)
+    firsts = np.searchsorted(starts, times, side="left").tolist()
+    return [
+        Bracket("no_check_before", None, None) if math.isnan(time) else _bracket(time, order, first, checks, settings)
+        for time, first in zip(times, firsts, strict=True)
+    ]
+
+
+def _bracket(time, order, first, checks, settings):
+    """Return the bracket of a reading; first is the place in the order of the first check not before it."""
+    before, after = _check_before(time, order, first, checks), _check_after(time, order, first, checks)
+    longest = settings.bracket_longest_h
+    if before is not None and exceeds(time - checks[before].at_h, longest):
+        before = None
+    if after is not None and exceeds(checks[after].at_h - (time if before is None else checks[before].at_h), longest):
         after = None
     if before is None:
         state = "no_check_before"
@@ -119,20 +137,23 @@ def bracket(time_h, checks, settings=_DEFAULTS):
     return Bracket(state, before, after)
 
 
-def _check_before(time, order, checks):
-    found = [place for at, _, place in order if at < time or (at == time and checks[place].kind != "end_of_day")]
-    return found[-1] if found else None
+def _check_before(time, order, first, checks):
+    before = order[first - 1][2] if first else None
+    for at, _, place in itertools.islice(order, first, None):
+        if at > time:
+            break
+        if checks[place].kind not in _AFTER_READINGS:
+            before = place
+    return before
 
 
-def _check_after(time, order, checks):
-    for at, _, place in order:
+def _check_after(time, order, first, checks):
+    for at, _, place in itertools.islice(order, first, None):
         kind = checks[place].kind
-        if at < time or (at == time and kind not in ("field", "end_of_day")):
+        if at == time and kind not in ("field", *_AFTER_READINGS):
             continue
-        if kind in _CLOSING:
-            return place
-        # Adjusted or cleaned before it was checked.
-        return None
+        # Adjusted or cleaned before it was checked, it can't tell.
+        return place if kind in _CLOSING else None
     return None
 
 

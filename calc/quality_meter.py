@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from calc.errors import CalcError
 from calc.findings import exceeds, known, or_nan, shown
 from calc.oxygen import salinity_psu, saturation_mg_l
-from calc.quality_bracket import KINDS, Bracket, MeterCheckTime, bracket, bracket_finding
+from calc.quality_bracket import KINDS, Bracket, MeterCheckTime, bracket, bracket_finding, brackets
 from calc.quality_drift import DO_NOT_REPORT, drift_limit, grade
 from calc.quality_due import (
     calibration_missing,
@@ -33,6 +33,7 @@ __all__ = [
     "MeterCheckTime",
     "bracket",
     "bracket_finding",
+    "brackets",
     "calibration_missing",
     "check_verdict",
     "expected_value",

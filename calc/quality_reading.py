@@ -156,14 +156,11 @@ def reading_findings(reading, context, settings):
     temperature_slips = temperature_unit(
         reading.water_temp_c, (context.upstream_temp_c, context.downstream_temp_c, context.predicted_temp_c), settings
     )
-    if pressure_slips or temperature_slips:
-        saturation, saturation_760 = math.nan, math.nan
-    else:
-        saturation, saturation_760 = _saturations(reading, context)
+    saturation = math.nan if pressure_slips or temperature_slips else _saturation(reading, context)
     return (
         *(wading(reading.depth_m, reading.velocity_m_s, settings) if reading.platform in ("", "wade") else ()),
         *cold_water(reading.water_temp_c, settings),
-        *_oxygen(reading, context, saturation, saturation_760, settings),
+        *_oxygen(reading, context, saturation, settings),
         *(temperature_slips or _temperature(reading, context, settings)),
         *(pressure_slips or pressure_against_elevation(context.station_pressure_mmhg, context.elevation_m, settings)),
         *_water(reading, context, settings),
@@ -188,19 +185,23 @@ def _pressure_slips(reading, context, settings):
     ) + pressure_unit(reading.pressure_value, reading.pressure_unit, elevation, settings)
 
 
-def _saturations(reading, context):
-    """Return saturation at the station pressure and at 760 mmHg, NaN where it can't be told. [mg/L]"""
-    water_temp, conductance, pressure, saturation = known(
-        reading.water_temp_c, reading.conductance_us_cm, context.station_pressure_mmhg, context.saturation_mg_l
-    )
+def _saturation(reading, context):
+    """Return saturation at the station pressure, NaN where it can't be told. [mg/L]"""
+    (saturation,) = known(context.saturation_mg_l)
+    if not math.isnan(saturation):
+        return saturation
+    water_temp, pressure = known(reading.water_temp_c, context.station_pressure_mmhg)
+    return or_nan(saturation_mg_l, water_temp, pressure, _salinity(reading))
+
+
+def _salinity(reading):
+    """Return the salinity, 0 where it is not known. [-]"""
+    (conductance,) = known(reading.conductance_us_cm)
     salinity = or_nan(salinity_psu, conductance)
-    salinity = 0.0 if math.isnan(salinity) else salinity
-    if math.isnan(saturation):
-        saturation = or_nan(saturation_mg_l, water_temp, pressure, salinity)
-    return saturation, or_nan(saturation_mg_l, water_temp, 760.0, salinity)
+    return 0.0 if math.isnan(salinity) else salinity
 
 
-def _oxygen(reading, context, saturation, saturation_760, settings):
+def _oxygen(reading, context, saturation, settings):
     slips = percent_as_concentration(reading.do_mg_l, saturation, settings)
     if slips:
         return slips
@@ -208,13 +209,23 @@ def _oxygen(reading, context, saturation, saturation_760, settings):
     percent = 100 * do / saturation if saturation > 0 else math.nan
     return (
         *(supersaturation(percent, settings) or oxygen_unlikely(do, settings)),
-        *percent_against_concentration(do, reading.do_percent_meter, saturation, saturation_760, settings),
+        *_percent_on_meter(reading, do, saturation, settings),
         *air_signature(percent, reading.water_temp_c, context.air_temp_c, settings),
         *frozen_value(do, context.recent_do_mg_l, settings),
         *unstable(reading.stability, settings),
         *replicate_spread(do, context.replicate_do_mg_l, settings),
         *_oxygen_steps(do, context, settings, reading.position),
     )
+
+
+def _percent_on_meter(reading, do, saturation, settings):
+    """Return the finding on the meter's percentage; saturation at 760 mmHg is only worked out to explain one."""
+    percent = reading.do_percent_meter
+    if not percent_against_concentration(do, percent, saturation, math.nan, settings):
+        return ()
+    (water_temp,) = known(reading.water_temp_c)
+    saturation_760 = or_nan(saturation_mg_l, water_temp, 760.0, _salinity(reading))
+    return percent_against_concentration(do, percent, saturation, saturation_760, settings)
 
 
 def _oxygen_steps(do, context, settings, position):

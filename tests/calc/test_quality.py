@@ -187,6 +187,12 @@ def test_a_fall_the_plan_expects_is_no_step():
     assert findings(**expected) == ()
 
 
+def test_a_percentage_relative_to_760_mmhg_is_explained():
+    # Saturation at 22 °C is 8.22 mg/L at 716 mmHg and 8.74 at 760: 6.1 mg/L is 74.2 % here and 69.8 % there.
+    (finding,) = findings({"do_percent_meter": 69.8})
+    assert "relative to 760 mmHg" in finding.cause
+
+
 def test_the_saturation_on_the_page_is_the_one_checked_against():
     assert names(findings(saturation_mg_l=7.0)) == ["percent_against_concentration"]
 

@@ -3,9 +3,12 @@ import math
 from types import MappingProxyType
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from calc.errors import CalcError
-from calc.quality_bracket import Bracket, MeterCheckTime, bracket, bracket_finding
+from calc.findings import known
+from calc.quality_bracket import KINDS, Bracket, MeterCheckTime, bracket, bracket_finding, brackets
 from calc.quality_meter import check_verdict
 from calc.settings import Settings
 
@@ -120,6 +123,31 @@ def test_a_reading_in_the_minute_of_a_check_lies_on_the_side_where_it_is_made(ti
     # A reading just before 7.2 has the adjusted check before it and a failed read back after it.
     checks = (*MORNING[:2], MeterCheckTime(7.2, "read_back", time_h > 7.195), MeterCheckTime(17.0, kind, True))
     assert bracket(time_h, checks).state == state
+
+
+def test_an_evening_typed_with_the_minute_of_the_last_reading_closes_it():
+    evening = [MeterCheckTime(17.0, kind, kind != "end_of_day", True) for kind in ("end_of_day", "after_cleaning")]
+    assert bracket(17.0, (*MORNING, *evening)) == Bracket("drift", 2, 3)
+    assert bracket(17.0, (*MORNING, evening[1])) == Bracket("no_check_after", 2, None)
+
+
+TIMES = st.one_of(st.none(), st.just(NAN), st.integers(0, 60).map(float))
+CHECKS = st.lists(st.builds(MeterCheckTime, TIMES, st.sampled_from(KINDS), st.sampled_from([True, False, None])))
+
+
+@settings(max_examples=200, deadline=None)
+@given(st.lists(TIMES), CHECKS)
+def test_what_brackets_a_reading_passed_and_lies_around_it_however_the_checks_fall(times, checks):
+    for time, found in zip(times, brackets(times, checks), strict=True):
+        assert found == bracket(time, checks)
+        if found.before is not None:
+            assert checks[found.before].at_h <= time
+        if found.after is not None:
+            assert checks[found.after].at_h >= time
+        if found.state == "bracketed":
+            assert checks[found.before].passes and checks[found.after].passes
+            between = [one.kind for one in checks if known(one.at_h)[0] > time and one.at_h < checks[found.after].at_h]
+            assert set(between) <= {"zero"}
 
 
 @pytest.mark.parametrize(
