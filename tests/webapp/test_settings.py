@@ -5,7 +5,9 @@ import re
 import pytest
 
 from calc.settings import SETTINGS, Settings
+from tests.webapp.sheets import put_readings
 from webapp.models import SettingsVersion
+from webapp.readings.judging import judgement_of
 from webapp.settings.forms import parse_change
 from webapp.settings.topics import TOPICS, limits_of
 from webapp.surveys.queries import current_settings, history_of
@@ -178,3 +180,21 @@ def test_a_version_that_lacks_a_newer_setting_has_its_default(app, browser_as, a
         db.commit()
     assert browser_as("lead").post(address, {"based_on": "1", "zero_mg_l": "0.1", "reason": "x"}).status_code == 303
     assert stored()[-1].thresholds == Settings(snapshot_h=4.0, zero_mg_l=0.1).as_dict()
+
+
+def test_a_change_says_how_many_readings_are_judged_otherwise(db, browser_as, address, survey, people):
+    ids = put_readings(db, survey, people)
+    lead, before = browser_as("lead"), said_of_all(db, survey)
+    form = {"based_on": "1", "oxygen_low_mg_l": "4.5", "reason": "the sensor's own limit"}
+    page = lead.get(lead.post(address, form).location).text
+    after = said_of_all(db, survey)
+    moved = {one for one in before if after[one] != before[one]}
+    assert ids["D3"] in moved  # it reads 4.25
+    assert ids["U1"] not in moved  # it reads 8.1
+    assert f"{len(moved)} of 4 readings are judged otherwise than before" in page
+    assert history_of(db, survey.id)[-1].particulars["otherwise"] == len(moved)
+
+
+def said_of_all(db, survey):
+    db.rollback()
+    return {one: (judged.quality, judged.reasons) for one, judged in judgement_of(db, survey).by_id.items()}

@@ -7,6 +7,7 @@ from sqlalchemy.exc import IntegrityError
 from webapp.errors import Conflict
 from webapp.models import SettingsVersion
 from webapp.settings import queries
+from webapp.settings.rejudged import judged_otherwise
 from webapp.settings.topics import SETTINGS, TOPICS, typed, values_of
 from webapp.surveys.queries import current_settings
 from webapp.surveys.service import remember
@@ -45,16 +46,19 @@ def change_settings(db, survey, change, by_id):
             "typed is still here: look once more, then save again."
         )
     before = values_of(current.thresholds)
+    after = before | change.values
+    otherwise, readings = judged_otherwise(db, survey, after)
     version = SettingsVersion(
         survey_id=survey.id,
         number=current.number + 1,
-        thresholds=before | change.values,
+        thresholds=after,
         reason=change.reason,
         made_by_id=by_id,
     )
     db.add(version)
     changed = {key: [before[key], value] for key, value in change.values.items()}
     particulars = {"number": version.number, "reason": change.reason, "changed": changed}
+    particulars |= {"otherwise": otherwise, "readings": readings}
     try:
         db.flush()
         remember(db, survey.id, by_id, "settings changed", "settings version", version.id, particulars)
