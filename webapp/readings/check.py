@@ -9,6 +9,8 @@ from calc.oxygen import salinity_psu, saturation_mg_l
 from webapp.readings.asking import OF_THE_RUN, findings_on_stored
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.meaning import ABOVE, FALLING, LOWEST, RISING, Facts, afterwards, sentence
+from webapp.readings.repeats import Repeat, repeat_of
+from webapp.readings.settling import spread_of
 from webapp.readings.surroundings import Surroundings, distances_of, look_around
 
 # A sag is flat: as near to its lowest as a meter can tell.
@@ -26,7 +28,7 @@ class OnSiteCheck:
     """What the check shows, in SI, None where it can't be told; what is predicted is at the measured temperature.
 
     kept holds {"name", "says"} of the findings that the crew was asked about; findings are those of today's settings,
-    hazards the ones about people.
+    hazards the ones about people. spread is calc's Stability of the several raw values, repeat what a replicate shows.
     """
 
     reading: FinalReading
@@ -49,6 +51,8 @@ class OnSiteCheck:
     findings: tuple[Finding, ...]
     hazards: tuple[Finding, ...]
     kept: tuple[dict, ...]
+    repeat: Repeat | None = None
+    spread: object = None
 
     @property
     def unasked(self):
@@ -92,6 +96,8 @@ def on_site_check(survey, plan_version, settings, reading, readings):
         findings=tuple(one for one in findings if not one.hazard),
         hazards=tuple(one for one in findings if one.hazard and _worth_telling(one, now, settings)),
         kept=tuple(reading.kept_findings),
+        repeat=repeat_of(now, around.repeats, settings),
+        spread=spread_of(now.series, settings),
     )
 
 

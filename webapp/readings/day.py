@@ -1,14 +1,20 @@
 """What a survey knows at one moment: its plan, settings and readings, each fetched once for the page or the save."""
 
 from datetime import UTC, datetime
+from functools import partial
 
 from webapp.display import Show
 from webapp.meters.queries import meters_of
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import findings_on_new, thresholds, to_ask
 from webapp.readings.check import on_site_check
+from webapp.readings.expected import prediction_or_reasons
+from webapp.readings.judging import judgement_of
 from webapp.readings.layers import final, placed
+from webapp.readings.occasions import occasions_of
+from webapp.readings.points import before_reading, points_left, section_reason
 from webapp.readings.queries import readings_of
+from webapp.readings.repeats import due_of, local_day
 from webapp.readings.settling import settle
 from webapp.readings.surroundings import distances_of, look_around
 from webapp.sag.estimate import estimate_of
@@ -24,7 +30,9 @@ class Day:
         self.now = datetime.now(UTC)
         self.plan = current_plan(db, survey.id)
         self.settings = thresholds(current_settings(db, survey.id))
-        self.readings = [final(one) for one in readings_of(db, survey.id)]
+        stored = readings_of(db, survey.id)
+        self.authors = {one.id: one.author_id for one in stored}
+        self.readings = [final(one) for one in stored]
         self.meters = meters_of(db, survey.id)
 
     def settled(self, new):
@@ -46,12 +54,31 @@ class Day:
 
     def holds(self, reading):
         """Count a reading that was stored after the others were fetched."""
-        if all(one.id != reading.id for one in self.readings):
+        if reading.id not in self.authors:
+            self.authors[reading.id] = reading.author_id
             self.readings.append(final(reading))
 
     def check(self, reading):
         """Return the OnSiteCheck of a stored reading."""
         return on_site_check(self.survey, self.plan, self.settings, reading, self.readings)
+
+    def still_to_read(self, reading):
+        """Return (why left, centre and right are wanted at the station, the Points left there) after a reading.
+
+        Told by the clock alone, without the visits: it is for the crew that stands there now.
+        """
+        now = final(reading)
+        occasions = occasions_of(sorted(self.readings, key=lambda one: one.taken_at), self.authors, (), self.settings)
+        here = next(one for one in occasions if any(each.id == now.id for each in one.readings))
+        prediction, _ = prediction_or_reasons(self.survey, self.plan)
+        why = section_reason(self.plan, prediction, occasions, now.station_code)
+        return why, points_left(now, here, bool(why), self.settings)
+
+    def replicate_due(self, reading):
+        """Return a sentence where the crew of a stored reading owes a replicate that day; empty where not."""
+        day = partial(local_day, self.survey)
+        own = [one for one in self.readings if self.authors[one.id] == reading.author_id]
+        return due_of([one for one in own if day(one.taken_at) == day(reading.taken_at)], self.settings)
 
     def today(self):
         """Return today's sag from all readings, or why there is none."""
@@ -69,3 +96,24 @@ class Day:
     def placed(self):
         """Return the readings that a chart can draw."""
         return placed(self.readings, self.plan.tables["stations"] if self.plan else [])
+
+
+class Fresh:
+    """What a form for a reading to come needs of a survey."""
+
+    def __init__(self, db, survey):
+        self._db = db
+        self.survey = survey
+        self.now = datetime.now(UTC)
+        self.plan = current_plan(db, survey.id)
+        self.meters = meters_of(db, survey.id)
+
+    def before(self, code):
+        """Return {"before", "across"}: what is known of a station, and why three points are wanted there."""
+        settings = thresholds(current_settings(self._db, self.survey.id))
+        judged = judgement_of(self._db, self.survey)
+        prediction, _ = prediction_or_reasons(self.survey, self.plan)
+        return {
+            "before": before_reading(self.plan, prediction, judged.of_station(code), settings, code, self.now),
+            "across": section_reason(self.plan, prediction, judged.occasions, code),
+        }

@@ -1,10 +1,8 @@
 """The reading form: what a crew typed, into a NewReading or a message beside each field."""
 
-import json
 import uuid
-from dataclasses import replace
-from datetime import UTC, datetime
 
+from webapp import answers
 from webapp.forms import Fields
 from webapp.readings.columns import (
     PERCENT_BASES,
@@ -97,26 +95,23 @@ def fresh_form(show, last, now, meters=(), given=None):
     }
 
 
+def meter_choices(meters, form):
+    """Return (name, words) of the meters to choose from: those in service, and whatever the form names already."""
+    if not meters:
+        return []
+    names = [one.name for one in meters if not one.out_of_service]
+    named = form.get("meter") or ""
+    if named and named not in names:
+        names.append(named)
+    return [("", "Not noted"), *((one, one) for one in names)]
+
+
 def _usual_meter(last, meters):
     """Return the name of the meter that was used last; of the only one in service before the first reading."""
     in_service = [one.name for one in meters if not one.out_of_service]
     if last:
         return last.meter
     return in_service[0] if len(in_service) == 1 else ""
-
-
-def saved_at(source):
-    """Return when a phone saved the reading, for one that waited there; None where it says nothing that can be read."""
-    try:
-        written = datetime.fromisoformat(source.get("saved_at") or "")
-    except ValueError:
-        return None
-    return written.astimezone(UTC) if written.tzinfo and 1990 <= written.year <= 2200 else None
-
-
-def show_of_form(source, show):
-    """Return the Show of the units that the form was filled in with, should the survey's have changed meanwhile."""
-    return replace(show, unit_system=source["units"]) if source.get("units") in ("si", "us") else show
 
 
 _PLAIN = (
@@ -227,34 +222,15 @@ def unanswered(findings, source):
 
     Values that had not settled are answered by the reason why they are saved, and by nothing else.
     """
-    kept = set(_marks(source, "kept")) | set(_marks(source, "keep"))
     why = (source.get("unstable_reason") or "").strip()
-    return [one for one in findings if not (why if one.name == UNSTABLE else _mark(one, source) in kept)]
+    not_kept = {one.name for one in answers.unanswered(findings, source, FIELD_OF)}
+    return [one for one in findings if (not why if one.name == UNSTABLE else one.name in not_kept)]
 
 
 def without_reason(findings, source):
     """Return the message for values that had not settled and were kept without saying why; none for others."""
     kept = source.get("keep") and any(one.name == UNSTABLE for one in findings)
     return {"unstable_reason": "Say why it is saved although it had not settled."} if kept else {}
-
-
-def answers(findings, source):
-    """Return the marks of the findings kept so far, and those that "keep it" adds, as the form carries them."""
-    kept = sorted(set(_marks(source, "kept")) | set(_marks(source, "keep")))
-    return json.dumps(kept), json.dumps([_mark(one, source) for one in findings])
-
-
-def _marks(source, name):
-    try:
-        marks = json.loads(source.get(name) or "[]")
-    except (ValueError, RecursionError):
-        return []
-    return [mark for mark in marks if isinstance(mark, str)] if isinstance(marks, list) else []
-
-
-def _mark(finding, source):
-    """Return what identifies a finding that was asked about: its name and the text it was about."""
-    return f"{finding.name}={source.get(FIELD_OF.get(finding.field, finding.field)) or ''}"
 
 
 def unfolded(form, errors, findings):

@@ -1,10 +1,9 @@
 """The reading form and the on-site check."""
 
-from datetime import UTC, datetime
-
-from flask import Blueprint, redirect, render_template, request, url_for
+from flask import Blueprint, redirect, request, url_for
 from flask_login import current_user, login_required
 
+from webapp.answers import answers, saved_at, show_of_form
 from webapp.charts import sag_chart
 from webapp.db import get_db
 from webapp.display import Show
@@ -12,9 +11,8 @@ from webapp.errors import Conflict
 from webapp.fieldsheet import service as fieldsheet
 from webapp.htmx import page_or_part, wants_fragment
 from webapp.people.access import needs
-from webapp.plan import queries as plan_queries
-from webapp.readings import columns, copies, forms, queries, service
-from webapp.readings.day import Day
+from webapp.readings import columns, forms, queries, service
+from webapp.readings.day import Day, Fresh
 from webapp.readings.surroundings import where
 from webapp.surveys import queries as survey_queries
 
@@ -39,9 +37,10 @@ def new(survey_id, code):
     db = get_db()
     survey = survey_queries.get_survey(db, survey_id, current_user.id)
     queries.get_station(db, survey_id, code)
-    show = Show.of(survey)
-    form = forms.fresh_form(show, queries.last_by(db, survey_id, current_user.id), datetime.now(UTC))
-    return _form_page(survey, show, code, plan_queries.current_plan(db, survey_id), form, fresh=True)
+    show, day = Show.of(survey), Fresh(db, survey)
+    last = queries.last_by(db, survey_id, current_user.id)
+    form = forms.fresh_form(show, last, day.now, day.meters, request.args)
+    return _form_page(day, show, code, form, fresh=True, **day.before(code))
 
 
 @bp.post("/surveys/<survey_id>/stations/<code>/reading")
@@ -54,20 +53,20 @@ def save(survey_id, code):
     day = Day(db, survey)
     form = request.form.to_dict()
     if form.get("author_id", current_user.id) != current_user.id:
-        return _belongs_to_another(survey, code, day.plan, form)
-    show = forms.show_of_form(form, Show.of(survey))
+        return _belongs_to_another(day, code, form)
+    show = show_of_form(form, Show.of(survey))
     reading, errors, asks = _read(day, form, show, code)
     if taken := forms.with_suggestion(form, asks, show):
         form = taken
         reading, errors, asks = _read(day, form, show, code)
     if errors:
-        return _form_page(survey, show, code, day.plan, form, 422, errors, [one for one in asks if one.suggestion])
+        return _form_page(day, show, code, form, 422, errors, [one for one in asks if one.suggestion])
     if open_asks := forms.unanswered(asks, form):
-        return _form_page(survey, show, code, day.plan, form, 422, forms.without_reason(open_asks, form), open_asks)
+        return _form_page(day, show, code, form, 422, forms.without_reason(open_asks, form), open_asks)
     try:
         stored = service.add_reading(db, survey, reading.keeping(asks), current_user.id, day.plan, day.now)
     except Conflict as conflict:
-        return _form_page(survey, show, code, day.plan, form, 409, conflict=conflict.message)
+        return _form_page(day, show, code, form, 409, conflict=conflict.message)
     return _stored(day, stored)
 
 
@@ -75,7 +74,7 @@ def _read(day, form, show, code):
     """Return the reading that a form holds, its errors, and what to ask about it."""
     reading, errors = forms.parse_reading(form, show, code, day.now)
     reading = day.settled(reading)
-    return reading, errors, day.asks(reading, forms.saved_at(form))
+    return reading, errors, day.asks(reading, saved_at(form))
 
 
 @bp.get("/surveys/<survey_id>/readings/<reading_id>/check")
@@ -85,19 +84,6 @@ def check(survey_id, reading_id):
     db = get_db()
     survey = survey_queries.get_survey(db, survey_id, current_user.id)
     return _check_page(Day(db, survey), queries.get_reading(db, survey_id, reading_id))
-
-
-@bp.post("/phone/copy")
-@needs("log")
-def take_copy():
-    """Store the readings of a file that a phone saved, and list what became of each."""
-    upload = request.files.get("file")
-    try:
-        read = copies.read_copy(upload.read() if upload else b"")
-    except copies.BadCopy as bad:
-        return render_template("fieldpack/copy.html", trouble=str(bad), taken=()), 422
-    taken = copies.take_copies(get_db(), read, current_user)
-    return render_template("fieldpack/copy.html", trouble="", taken=taken)
 
 
 @bp.get("/surveys/<survey_id>/readings/<reading_id>/check/today")
@@ -122,21 +108,21 @@ def _stored(day, reading):
     return response
 
 
-def _belongs_to_another(survey, code, plan, form):
+def _belongs_to_another(day, code, form):
     """Answer a reading that somebody else recorded on this phone: it waits for them, under their name."""
-    response = _form_page(survey, Show.of(survey), code, plan, form, 409, conflict=NOT_YOURS)
+    response = _form_page(day, Show.of(day.survey), code, form, 409, conflict=NOT_YOURS)
     response.headers["X-Belongs-To"] = "another"
     return response
 
 
-def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(), conflict="", fresh=False):
-    kept, keep = forms.answers(asks, form)
-    station, place = where(plan, code)
+def _form_page(day, show, code, form, status=200, errors=None, asks=(), conflict="", fresh=False, **known):
+    kept, keep = answers(asks, form, forms.FIELD_OF)
+    station, place = where(day.plan, code)
     return page_or_part(
         "readings/new.html",
         "readings/_form.html",
         status,
-        survey=survey,
+        survey=day.survey,
         show=show,
         tab="fieldsheet",
         code=code,
@@ -150,6 +136,8 @@ def _form_page(survey, show, code, plan, form, status=200, errors=None, asks=(),
         conflict=conflict,
         fresh=fresh,
         unfolded=forms.unfolded(form, errors or {}, asks),
+        meters=forms.meter_choices(day.meters, form),
+        **{"before": None, "across": "", **known},
         **OPTIONS,
     )
 

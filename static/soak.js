@@ -1,0 +1,90 @@
+// A timed reading: seconds since the probe went in, and the values that the meter showed meanwhile, each with its
+// seconds and the temperature then. They stand as text in the form, so that all of them can be seen and corrected.
+const SECOND = 1000;
+let ticking;
+let awake;
+
+const timer = () => document.querySelector("[data-soak]");
+const began = (it) => Number(it.form.elements.soak_began.value);
+const secondsOf = (it) => Math.round((Date.now() - began(it)) / SECOND);
+const changed = (field) => field.dispatchEvent(new Event("input", { bubbles: true }));
+
+function parts() {
+  const box = timer();
+  return box && { box, form: box.closest("form"), says: box.querySelector("[data-soak-says]") };
+}
+
+function tick() {
+  const it = parts();
+  const shown = it?.box.querySelector("[data-soak-seconds]");
+  if (!it || !began(it)) return stop();
+  shown.textContent = `${secondsOf(it)} s since the probe went in`;
+}
+
+function stop() {
+  clearInterval(ticking);
+  ticking = undefined;
+  awake?.release().catch(() => {});
+  awake = undefined;
+}
+
+// The screen stays lit while the probe soaks, where the phone allows it.
+function run() {
+  if (ticking) return;
+  tick();
+  ticking = setInterval(tick, SECOND);
+  navigator.wakeLock?.request("screen").then((lock) => { awake = lock; }, () => {});
+}
+
+function start(it) {
+  it.form.elements.soak_began.value = Date.now();
+  changed(it.form.elements.soak_began);
+  stop();
+  run();
+  it.form.elements.do_mg_l.focus();
+}
+
+// What stands in the boxes now becomes one more value; the oxygen box is free for the next.
+function take(it) {
+  const { do_mg_l: oxygen, water_temp_c: temperature, values, soak_s: soaked } = it.form.elements;
+  const value = oxygen.value.trim();
+  const says = (words) => { it.says.textContent = words; };
+  if (!/^[-+]?\d*[.,]?\d+$/.test(value)) {
+    says("Enter the oxygen that the meter shows, then take it.");
+    return oxygen.focus();
+  }
+  const warmth = temperature.value.trim();
+  const when = began(it) ? `@${secondsOf(it)}` : "";
+  const warm = when && warmth && !/[\s;/@]/.test(warmth) ? `/${warmth}` : "";
+  values.value = [values.value.trim(), `${value}${when}${warm}`].filter(Boolean).join("\n");
+  if (when) soaked.value = secondsOf(it);
+  oxygen.value = "";
+  changed(values);
+  navigator.vibrate?.(40);
+  const taken = values.value.split(/[\s;]+/).map((one) => one.split(/[@/]/)[0]);
+  says(`${taken.length} ${taken.length === 1 ? "value" : "values"}: ${taken.join(" ")}`);
+  return oxygen.focus();
+}
+
+function show() {
+  const it = parts();
+  if (!it) return stop();
+  it.box.hidden = false;
+  if (began(it)) run();
+}
+
+document.addEventListener("click", ({ target }) => {
+  const it = parts();
+  if (it && target.closest("[data-soak-start]")) start(it);
+  if (it && target.closest("[data-soak-take]")) take(it);
+});
+// While the clock runs, Enter on the phone's keyboard takes the value instead of saving the reading.
+document.addEventListener("keydown", (event) => {
+  const it = parts();
+  if (!it || event.key !== "Enter" || event.target.name !== "do_mg_l" || !began(it) || !event.target.value) return;
+  event.preventDefault();
+  take(it);
+});
+document.addEventListener("htmx:afterSettle", show);
+document.addEventListener("htmx:historyRestore", show);
+show();
