@@ -6,11 +6,14 @@ from datetime import datetime
 from sqlalchemy import func, select
 from sqlalchemy.orm import joinedload
 
-from webapp.approval.lock import OWN, PEOPLE
+from webapp.approval.lock import IMPORTED, OWN, PEOPLE
+from webapp.approval.lock import REVIEWED as MARKED
 from webapp.errors import NotFound
 from webapp.models import FrozenDataset, History, SurveyEvent
 
 DRAFT, REVIEWED, APPROVED = "draft", "reviewed", "approved"
+# What an import brings has lines of its own.
+_NO_CHANGE = OWN | PEOPLE | {IMPORTED}
 WORDS = {DRAFT: "Draft", REVIEWED: "Reviewed", APPROVED: "Approved"}
 
 
@@ -39,11 +42,30 @@ def state_of(db, survey_id):
         return State(DRAFT, last)
     if last.kind == "approved":
         return State(APPROVED, last)
-    query = select(History).where(History.survey_id == survey_id, History.what.not_in(OWN | PEOPLE))
-    changed = db.scalar(query.where(History.at > last.made_at).order_by(History.at.desc()).limit(1))
-    if changed is None:
+    told = db.scalar(select(History.particulars).where(History.what == MARKED, History.entity_id == last.id)) or {}
+    if told.get("changes") == count_changes(db, survey_id):
         return State(REVIEWED, last)
-    return State(DRAFT, last, changed.at, changed.what)
+    query = select(History).where(History.survey_id == survey_id, History.what.not_in(_NO_CHANGE))
+    changed = db.scalar(query.order_by(History.at.desc(), History.id.desc()).limit(1))
+    return State(DRAFT, last, changed and changed.at, changed.what if changed else "")
+
+
+def count_changes(db, survey_id):
+    """Return how many lines of a survey's history tell of a change to it.
+
+    They are counted, not compared by their times: an import brings lines of earlier times.
+    """
+    query = select(func.count()).where(History.survey_id == survey_id, History.what.not_in(_NO_CHANGE))
+    return db.scalar(query)
+
+
+def mark_of(db, survey_id):
+    """Return a mark of a survey as it is now: how many changes it has seen, and its last event."""
+    count = select(func.count()).where(History.survey_id == survey_id).scalar_subquery()
+    last = select(SurveyEvent.id).where(SurveyEvent.survey_id == survey_id)
+    last = last.order_by(SurveyEvent.made_at.desc(), SurveyEvent.id.desc()).limit(1).scalar_subquery()
+    changes, event_id = db.execute(select(count, last)).one()
+    return f"{changes}-{event_id or ''}"
 
 
 def events_of(db, survey_id):
