@@ -5,6 +5,7 @@ import pytest
 
 from tests.webapp.plans import put_plan
 from webapp.models import Meter, MeterCheck, ReadingEvent, Visit, VisitEntry, new_id
+from webapp.plan.prediction import prediction_of
 from webapp.plan.queries import current_plan, stations_of
 from webapp.readings.judging import judgement_of
 from webapp.readings.new import NewReading
@@ -151,3 +152,11 @@ def test_what_is_judged_once_is_kept_until_something_changes(day):
     day.check(0, "as_found", 8.22)
     assert day.judgement() is not before
     assert day.judged(reading).check_before.check.value == 8.22
+
+
+def test_a_section_whose_mean_is_far_from_the_mass_balance_is_not_mixed(day):
+    mixed = prediction_of(day.survey, day.plan).mixing.conductance_us_cm
+    points = [day.read(3, position=where, conductance_us_cm=0.8 * mixed) for where in ("left", "centre", "right")]
+    assert day.judged(points[0]).section.says.startswith("Not mixed: mean conductance is 20 % from the mass balance")
+    nearer = [day.read(9, position=where, conductance_us_cm=0.95 * mixed) for where in ("left", "centre", "right")]
+    assert day.judged(nearer[0]).section.mixed is True

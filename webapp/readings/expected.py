@@ -1,5 +1,6 @@
 """What is expected at each station under the conditions of the day, kept beside the prediction: every reading asks."""
 
+import math
 from dataclasses import dataclass, field
 from functools import lru_cache
 
@@ -35,3 +36,17 @@ def expected_at_stations(survey, plan_version):
     if prediction is None:
         return {}
     return _kept(_Key(plan_version.id, survey.elevation_m, prediction, plan_version.tables["stations"]))
+
+
+def mixed_conductance(survey, plan_version):
+    """Return the conductance that the mass balance gives below the outfall, by station code. [µS/cm]
+
+    Only for stations above the next inflow, and where the plan knows the conductance of both waters.
+    """
+    prediction, _ = prediction_or_reasons(survey, plan_version)
+    mixed = prediction.mixing if prediction is not None else None
+    if mixed is None or not math.isfinite(mixed.conductance_us_cm):
+        return {}
+    further = min((one.distance_km for one in prediction.river.inflows if one.distance_km > 0), default=math.inf)
+    stations = plan_version.tables["stations"]
+    return {row["code"]: mixed.conductance_us_cm for row in stations if 0 <= row["distance_km"] < further}

@@ -12,6 +12,7 @@ from webapp.meters.verdicts import Brackets, JudgedCheck, judged_checks
 from webapp.plan.queries import current_plan
 from webapp.readings import queries
 from webapp.readings.asking import findings_on_stored, thresholds
+from webapp.readings.expected import mixed_conductance
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.occasions import Occasion, occasions_of
 from webapp.readings.quality_words import quality_of, reasons_of, severity_of
@@ -94,7 +95,8 @@ def judge(survey, plan_version, settings, readings, checks, visits):
     """
     finals = [final(one) for one in readings]
     authors = {one.id: one.author_id for one in readings}
-    occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings)
+    balance = mixed_conductance(survey, plan_version)
+    occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings, balance)
     occasion_of = {reading.id: one for one in occasions for reading in one.readings}
     judged = judged_checks(checks, settings)
     brackets, around = Brackets(judged, settings), Neighbourhood(survey, plan_version, finals)

@@ -1,6 +1,7 @@
 """Readings at one station by one crew at one time: told by a visit, or by the clock where nobody opened one."""
 
-from dataclasses import dataclass
+import math
+from dataclasses import dataclass, replace
 from datetime import timedelta
 
 from calc.quality_section import Layers, SectionPoint, SectionVerdict, section_verdict, stratification
@@ -46,10 +47,11 @@ class Occasion:
         return max(times, default=None)
 
 
-def occasions_of(finals, authors, visits, settings):
+def occasions_of(finals, authors, visits, settings, balance):
     """Return the Occasions of a survey in the order of their stations and times.
 
-    finals are FinalReadings in time order, authors the id of who recorded each by reading id, visits FinalVisits.
+    finals are FinalReadings in time order, authors the id of who recorded each by reading id, visits FinalVisits,
+    balance the conductance expected of the mixed water by station code, where known. [µS/cm]
     """
     by_station = {}
     for one in finals:
@@ -60,9 +62,9 @@ def occasions_of(finals, authors, visits, settings):
     for code in sorted(by_station):
         readings, here = by_station[code]
         groups = _grouped(readings, authors, sorted(here, key=_arrival))
-        made = [_occasion(code, visit, tuple(some), settings) for visit, some in groups]
+        made = [_occasion(code, visit, tuple(some), settings, balance.get(code, math.nan)) for visit, some in groups]
         made.sort(key=lambda one: (one.started_at is None, one.started_at, one.visit.id if one.visit else ""))
-        found += [_numbered(one, number) for number, one in enumerate(made, 1)]
+        found += [replace(one, visit_no=number) for number, one in enumerate(made, 1)]
     return found
 
 
@@ -98,7 +100,7 @@ def _holds(visit, taken_at):
     return visit.arrived_at - _SLACK <= taken_at <= last
 
 
-def _occasion(code, visit, readings, settings):
+def _occasion(code, visit, readings, settings, expected_us_cm):
     points = [
         SectionPoint(
             vertical_of(one),
@@ -111,7 +113,8 @@ def _occasion(code, visit, readings, settings):
         for one in readings
         if not one.set_aside
     ]
-    return Occasion(code, 0, visit, readings, section_verdict(points, settings), stratification(points, settings))
+    section = section_verdict(points, settings, expected_us_cm)
+    return Occasion(code, 0, visit, readings, section, stratification(points, settings))
 
 
 def vertical_of(reading):
@@ -119,7 +122,3 @@ def vertical_of(reading):
     if reading.distance_left_m is not None:
         return f"{reading.distance_left_m:g} m from the left edge"
     return _ACROSS.get(reading.position, "")
-
-
-def _numbered(one, number):
-    return Occasion(one.station_code, number, one.visit, one.readings, one.section, one.layers)
