@@ -40,7 +40,7 @@ export function number(text, { scale, shift } = { scale: 1, shift: 0 }) {
   return Number(plain.replace(",", ".")) * scale + shift;
 }
 
-function pressure(pack, fields) {
+export function pressureOf(pack, fields) {
   const typed = number(fields.pressure, pack.typed.si[fields.pressure_unit]);
   if (typed === undefined) return pack.standard;
   return fields.pressure_source === "weather" ? (along(pack.weather.x, pack.weather.y, typed) ?? typed) : typed;
@@ -63,7 +63,7 @@ export function checkOnPhone(pack, { code, fields }) {
   const units = pack.typed[fields.units] ?? pack.typed.si;
   const celsius = number(fields.water_temp_c, units.water_temp_c);
   const conductance = fields.conductance_us_cm ? number(fields.conductance_us_cm, units.conductance_us_cm) : undefined;
-  const mmhg = pressure(pack, fields);
+  const mmhg = pressureOf(pack, fields);
   const full = saturation(pack, celsius, mmhg, conductance);
   const percentOf = fields.percent_basis === "760" ? saturation(pack, celsius, 760, conductance) : full;
   const oxygen = number(fields.do_mg_l) ?? (number(fields.do_percent) / 100) * percentOf;

@@ -1,6 +1,7 @@
-// What waits as QR codes, one reading each, and what another phone's camera found in one: both without signal.
+// What waits as QR codes, one record each, and what another phone's camera found in one: both without signal.
 import { records } from "./waiting_store.js";
 import { asLetters, fromLetters, takeCopies } from "./copies.js";
+import { isReading, placeOf, timeOf, valueOf } from "./kinds.js";
 import { qrPicture } from "./qr_code.js";
 
 // About as much as a camera still reads from the screen of a small phone.
@@ -13,8 +14,9 @@ let shown = [];
 let at = 0;
 let found;
 
-function titleOf({ authorName, code, fields }) {
-  return `reading of ${authorName} at ${code}, time ${fields.taken_at.replace("T", " ")}`;
+function titleOf(record) {
+  const which = isReading(record) ? `reading of ${record.authorName} at ${record.code}` : `${placeOf(record)}, of ${record.authorName}`;
+  return `${which}, time ${timeOf(record)}`;
 }
 
 function showCode() {
@@ -53,11 +55,10 @@ function offerTaking() {
   found = fromLetters(location.hash.slice(PREFIX.length));
   part("taking").hidden = false;
   part("take-code").hidden = !found;
-  const { do_mg_l: oxygen, do_percent: percent } = found?.fields ?? {};
-  const read = oxygen ? `${oxygen} mg/L` : `${percent} %`;
+  const value = found && valueOf(found);
   part("taking-says").textContent = found
-    ? `A ${titleOf(found)}: ${read}, ${found.surveyName}.`
-    : "There is no whole reading in this code. Show it on the other phone and scan it again, or take its file.";
+    ? `${isReading(found) ? "A " : ""}${titleOf(found)}${value ? `: ${value}` : ""}, ${found.surveyName}.`
+    : "There is nothing whole in this code. Show it on the other phone and scan it again, or take its file.";
 }
 
 async function takeCode() {

@@ -1,10 +1,9 @@
-// Copies of waiting readings, in a file or in a code: the same records, under the same ids, so nothing doubles.
+// Copies of what waits, in a file or in a code: the same records, under the same ids, so nothing doubles.
 import { takeOver } from "./waiting_store.js";
-import { plural } from "./phone.js";
+import { addressOf, counted, fitsKind, timeOf } from "./kinds.js";
 import { send } from "./sending.js";
 
 const KIND = "waiting readings";
-const addressOf = ({ survey, code }) => `/surveys/${survey}/stations/${encodeURIComponent(code)}/reading`;
 
 export function asFile(records) {
   return JSON.stringify({ bankside: KIND, v: 1, saved_at: new Date().toISOString(), records }, null, 1);
@@ -14,7 +13,7 @@ export function isRecord(one) {
   const texts = ["id", "survey", "code", "author", "authorName", "surveyName", "state"];
   const typed = one?.fields && Object.values(one.fields).every((text) => typeof text === "string");
   return typed && texts.every((name) => typeof one[name] === "string") && Number.isFinite(one.keptAt)
-    && one.fields.submission_id === one.id && /^\/surveys\/[^/]+\/stations\/[^/]+\/reading$/.test(one.url);
+    && one.fields.submission_id === one.id && fitsKind(one);
 }
 
 // The records of a file's text, or null.
@@ -41,7 +40,7 @@ export function fromLetters(letters) {
     const bytes = Uint8Array.from(atob(letters.replace(/-/g, "+").replace(/_/g, "/")), (letter) => letter.charCodeAt(0));
     const kept = JSON.parse(new TextDecoder("utf-8", { fatal: true }).decode(bytes));
     const record = { url: addressOf(kept), ...kept, id: kept.fields.submission_id, tries: 0 };
-    const waits = record.v === 1 && ["waiting", "refused"].includes(record.state) && typeof record.fields.taken_at === "string";
+    const waits = record.v === 1 && ["waiting", "refused"].includes(record.state) && Boolean(timeOf(record));
     return waits && isRecord(record) ? record : null;
   } catch {
     return null;
@@ -51,6 +50,6 @@ export function fromLetters(letters) {
 // Into this phone's own list, and off to the server from here, if it answers.
 export async function takeCopies(records, say) {
   const added = await takeOver(records.map((one) => ({ ...one, nextAt: 0 })));
-  say(`${plural(added, "reading", "readings")} taken over, ${records.length - added} here already.`);
+  say(`${counted(added) || "Nothing"} taken over, ${records.length - added.length} here already.`);
   return send();
 }

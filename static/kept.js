@@ -1,50 +1,63 @@
-// What stands in place of the form once a reading is on this phone, until the server's own answer takes its place.
+// What stands in place of the form once an entry is on this phone, until the server's own answer takes its place.
 import { changeRecord, get } from "./waiting_store.js";
 import { parsed } from "./phone.js";
 import { form, freshen, untouched } from "./typing.js";
+import { kindOf, placeOf, timeOf, wordsOf } from "./kinds.js";
 import { checkOnPhone } from "./check.js";
+import { otherCheck } from "./check_other.js";
 import { age, facts, sentence } from "./check_words.js";
 
 const template = document.querySelector("#kept");
+const place = form()?.closest("section").id;
 let shown;
 
 function put(section) {
-  document.querySelector("#reading").replaceWith(section);
+  document.getElementById(place).replaceWith(section);
   window.htmx?.process(section);
   section.querySelector("h1")?.focus();
   window.scrollTo(0, 0);
 }
 
 // The sheet on this phone doesn't know what was read since it was fetched: the next station is the next one down.
-function offerNext(link, pack, record) {
-  const here = pack?.stations.findIndex((one) => one.code === record.code) ?? -1;
-  const next = here >= 0 ? pack.stations[here + 1] : undefined;
-  link.hidden = !next || !navigator.serviceWorker?.controller;
-  if (!next) return;
-  link.href = `/surveys/${record.survey}/stations/${encodeURIComponent(next.code)}/reading`;
-  link.textContent = `Next: ${next.code}`;
+function offerNext(link, pack, { kind, survey, code }) {
+  const here = pack?.stations.findIndex((one) => one.code === code) ?? -1;
+  const next = kind === "visit" ? pack?.stations[here] : pack?.stations[here + 1];
+  link.hidden = here < 0 || !next || !navigator.serviceWorker?.controller;
+  if (link.hidden) return;
+  link.href = `/surveys/${survey}/stations/${encodeURIComponent(next.code)}/reading`;
+  link.textContent = kind === "visit" ? `Read at ${next.code}` : `Next: ${next.code}`;
+}
+
+// The phone's own check, as the lines that it shows; null where it has none.
+function checkOf(pack, record) {
+  if (kindOf(record) !== "reading") return otherCheck(pack, record);
+  const check = checkOnPhone(pack, record);
+  return check && { ...check, number: check.oxygen.toFixed(2), sentence: sentence(check), lines: facts(check) };
 }
 
 async function showKept({ detail: record }) {
   const view = template.content.firstElementChild.cloneNode(true);
   const at = (name) => view.querySelector(`[data-${name}]`);
-  at("title").textContent = `${record.code}, ${record.fields.taken_at.replace("T", " ")}`;
-  at("again").addEventListener("click", again);
+  view.id = place;
+  at("title").textContent = `${placeOf(record)}, ${timeOf(record)}`;
+  at("again").textContent = wordsOf(record).again;
+  at("again").addEventListener("click", () => again(record));
   const carries = Boolean(navigator.serviceWorker?.controller);
   at("leave").hidden = !carries;
   at("stay").hidden = carries;
   shown = record.id;
   put(view);
   const pack = await get("packs", record.survey).catch(() => undefined);
-  offerNext(at("next"), pack, record);
-  const check = pack && checkOnPhone(pack, record);
-  at("no-check").hidden = Boolean(check);
+  if (kindOf(record) !== "check") offerNext(at("next"), pack, record);
+  const check = pack && checkOf(pack, record);
+  at("no-check").hidden = Boolean(check) || ["visit", "bottle"].includes(kindOf(record));
   if (!check) return;
   at("phone-check").hidden = false;
-  at("oxygen").textContent = check.oxygen.toFixed(2);
-  at("sentence").textContent = sentence(check);
+  at("oxygen").textContent = check.number ?? "";
+  at("oxygen").parentElement.hidden = check.number === undefined;
+  at("sentence").textContent = check.sentence;
   at("age").textContent = age(pack);
-  for (const [name, words] of facts(check)) {
+  for (const [name, words] of check.lines) {
     const [term, fact] = ["dt", "dd"].map((tag) => document.createElement(tag));
     term.textContent = name;
     fact.textContent = words;
@@ -54,18 +67,19 @@ async function showKept({ detail: record }) {
   await changeRecord(record, { check });
 }
 
-function again() {
+function again(record) {
   if (!untouched) return location.reload();
-  const section = parsed(untouched).querySelector("#reading");
+  const section = parsed(untouched).getElementById(place);
   shown = undefined;
   put(section);
-  return freshen(form(), true);
+  freshen(form(), true);
+  return document.dispatchEvent(new CustomEvent("bankside:again", { detail: record }));
 }
 
 // The server's answer takes the place of what this phone showed, and says where it differs.
 function takeAnswer({ detail: { record, verdict, html } }) {
   if (shown !== record.id || !verdict.changes.state) return;
-  const section = parsed(html).querySelector("#reading");
+  const section = parsed(html).getElementById(place);
   if (!section) return;
   const { differs } = verdict.changes;
   if (differs) {

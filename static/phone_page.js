@@ -1,6 +1,7 @@
-// The page about this phone: every reading it keeps, what became of it, and what to do about it.
+// The page about this phone: everything it keeps, what became of it, and what to do about it.
 import { all, records } from "./waiting_store.js";
-import { clock, person, plural } from "./phone.js";
+import { clock, person } from "./phone.js";
+import { counted, isReading, placeOf, timeOf, valueOf } from "./kinds.js";
 import { send } from "./sending.js";
 
 const main = document.querySelector("main");
@@ -18,15 +19,15 @@ function state(record) {
 
 function card(record) {
   const item = document.querySelector("#waiting-record").content.firstElementChild.cloneNode(true);
-  const { do_mg_l: oxygen, do_percent: percent, taken_at: taken } = record.fields;
-  const read = oxygen ? `${oxygen} mg/L` : `${percent} %`;
-  item.querySelector("[data-title]").textContent = `${record.code}, ${taken.replace("T", " ")}: ${read}, ${record.surveyName}`;
+  const value = valueOf(record);
+  const title = `${placeOf(record)}, ${timeOf(record)}${value ? `: ${value}` : ""}, ${record.surveyName}`;
+  item.querySelector("[data-title]").textContent = title;
   item.querySelector("[data-state]").textContent = state(record);
   const open = item.querySelector("[data-open]");
-  open.hidden = record.author !== person;
-  open.textContent = OPENS[record.state];
-  open.href = record.state === "sent"
-    ? `/surveys/${record.survey}/readings/${record.id}/check` : `${record.url}#waiting=${record.id}`;
+  const sentTo = record.shownAt || (isReading(record) ? `/surveys/${record.survey}/readings/${record.id}/check` : "");
+  open.hidden = record.author !== person || (record.state === "sent" && !sentTo.startsWith("/surveys/"));
+  open.textContent = record.state === "sent" && !isReading(record) ? "See it" : OPENS[record.state];
+  open.href = record.state === "sent" ? sentTo : `${record.url}#waiting=${record.id}`;
   return item;
 }
 
@@ -59,8 +60,8 @@ async function showPacks() {
 part("send-now").addEventListener("click", async () => {
   part("outcome").textContent = "Asking the server…";
   await send(true);
-  const left = (await records()).filter((one) => one.state === "waiting" && one.author === person).length;
-  part("outcome").textContent = left ? `${plural(left, "reading", "readings")} could not be sent yet.` : "All sent.";
+  const left = (await records()).filter((one) => one.state === "waiting" && one.author === person);
+  part("outcome").textContent = left.length ? `${counted(left)} could not be sent yet.` : "All sent.";
 });
 document.addEventListener("bankside:waiting", show);
 show();

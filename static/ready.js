@@ -1,6 +1,7 @@
 // "Make ready for the river", on the field sheet: fetch what a day without signal needs, check it, and say so.
 import { get, records } from "./waiting_store.js";
-import { clock, plural } from "./phone.js";
+import { clock } from "./phone.js";
+import { counted } from "./kinds.js";
 import { fetchPack, missing } from "./fieldpack.js";
 import { hours } from "./check_words.js";
 
@@ -52,7 +53,7 @@ async function markStations() {
   for (const code of new Set(unsent.map((one) => one.code))) {
     const line = document.createElement("p");
     line.dataset.waitsHere = "";
-    line.textContent = `${plural(unsent.filter((one) => one.code === code).length, "reading", "readings")} on this phone, not sent yet`;
+    line.textContent = `${counted(unsent.filter((one) => one.code === code))} on this phone, not sent yet`;
     document.getElementById(`station-${code}`)?.append(line);
   }
 }

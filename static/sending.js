@@ -1,4 +1,4 @@
-// Sends what waits on this phone: one sender at a time, each reading until the server has named its id as stored.
+// Sends what waits on this phone: one sender at a time, each record until the server has named its id as stored.
 import { changeRecord, get, inStore, records } from "./waiting_store.js";
 import { differences } from "./check_words.js";
 import { ask, newId, parsed, phone } from "./phone.js";
@@ -38,15 +38,16 @@ export function reasons(html) {
 }
 
 // What an answer means for a record: changes to it, and whether the round can go on.
-export function judge(record, { status, stored, owner, address, html, wait }) {
-  if (stored === record.id) return { changes: { state: "sent", sentAt: Date.now(), reason: "" }, goOn: true };
+export function judge(record, { status, stored, owner, address, shownAt, html, wait }) {
+  const sent = { state: "sent", sentAt: Date.now(), shownAt: shownAt ?? "", reason: "" };
+  if (stored === record.id) return { changes: sent, goOn: true };
   if (owner) return { changes: { author: record.fields.author_id }, goOn: true };
   if (address.includes("/sign-in") || status === 400 || status === 401) return { changes: {}, signedOut: true };
   if (status >= 400 && status < 500 && status !== 408 && status !== 429) {
     const reason = reasons(html) || `The server answered ${status}.`;
     return { changes: { state: "refused", reason }, goOn: true };
   }
-  // A proxy's or a hotspot's page, or a server in trouble: it says nothing about the reading.
+  // A proxy's or a hotspot's page, or a server in trouble: it says nothing about the record.
   const tries = (record.tries ?? 0) + 1;
   const pause = Math.max(wait * 1000, Math.min(MINUTE, 1000 * 2 ** tries) * (0.5 + Math.random() / 2));
   return { changes: { tries, nextAt: Date.now() + pause }, goOn: status < 500 && status !== 429 };
@@ -58,7 +59,8 @@ async function sendOne(record, token) {
   if (!answer) return { lost: true };
   const { reply, html } = answer;
   const header = (name) => reply.headers.get(name);
-  const said = { stored: header("X-Stored-Id"), owner: header("X-Belongs-To"), wait: Number(header("Retry-After")) || 0 };
+  const named = { stored: header("X-Stored-Id"), owner: header("X-Belongs-To"), shownAt: header("HX-Push-Url") };
+  const said = { ...named, wait: Number(header("Retry-After")) || 0 };
   const verdict = judge(record, { status: reply.status, address: reply.url, html, ...said });
   const theirs = parsed(html).querySelector("[data-check]")?.dataset;
   if (verdict.changes.state === "sent") verdict.changes.differs = record.check ? differences(record.check, theirs) : "";

@@ -1,10 +1,11 @@
-// The reading form on this phone: what is typed is kept as it is typed, and is there again when the page comes back.
+// A form that may wait on this phone: what is typed is kept as it is typed, and is there again when the page comes back.
 import { get, put, remove } from "./waiting_store.js";
 import { clock, newId, nowIn, person } from "./phone.js";
+import { timeFields } from "./kinds.js";
 
 export const form = () => document.querySelector("form[data-waiting]");
-// The form as it came: without a worker no page can be opened without signal, so the next reading begins from this.
-export const untouched = form()?.hasAttribute("data-fresh") ? document.querySelector("#reading").outerHTML : "";
+// The form as it came: without a worker no page can be opened without signal, so the next entry begins from this.
+export const untouched = form()?.hasAttribute("data-fresh") ? form().closest("section").outerHTML : "";
 export const draftKey = (it) => `${person} ${it.getAttribute("action")}`;
 
 // Everything a form holds, with the answer that was pressed, but without the token of this session.
@@ -22,8 +23,10 @@ export function fill(it, fields) {
     if (field.type === "checkbox") field.checked = Boolean(text);
     else field.value = text;
   }
-  const folded = it.querySelector("details");
-  if (folded && (fields.note || fields.do_percent || fields.pressure || fields.conductance_us_cm)) folded.open = true;
+  const changed = (field) => field.type !== "hidden" && field.value !== field.defaultValue;
+  for (const fold of it.querySelectorAll("details")) {
+    if ([...fold.querySelectorAll("input, textarea")].some(changed)) fold.open = true;
+  }
 }
 
 export function say(words) {
@@ -37,10 +40,11 @@ export function cannotKeep() {
   say("This phone keeps nothing for this page. Save only with signal, and write the numbers on paper too.");
 }
 
-// A page that comes from a cache carries the id of a reading that may be stored by now, and the time of that hour.
+// A page that comes from a cache carries the id of an entry that may be stored by now, and the time of that hour.
 export function freshen(it, fromPhone) {
   it.elements.submission_id.value = newId();
-  if (fromPhone) it.elements.taken_at.value = nowIn(it.dataset.zone);
+  const time = timeFields.map((name) => it.elements[name]).find(Boolean);
+  if (fromPhone && time && !it.elements.visit_id?.value) time.value = nowIn(it.dataset.zone);
   it.removeAttribute("data-fresh");
 }
 
@@ -49,7 +53,7 @@ async function bringBack(it) {
   const record = asked && (await get("waiting", asked));
   if (record && record.author === person && record.state !== "sent") {
     fill(it, record.fields);
-    return say(record.reason || "This reading waits on this phone. Save it again to change it.");
+    return say(record.reason || "This waits on this phone. Save it again to change it.");
   }
   const draft = await get("drafts", draftKey(it));
   if (!draft) return;

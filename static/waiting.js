@@ -1,18 +1,20 @@
-// A reading is written on this phone first and sent after: the server's answer says whether it may be let go.
+// What is saved is written on this phone first and sent after: the server's answer says whether it may be let go.
 import { changeRecord, keepRecord } from "./waiting_store.js";
 import { person, phone } from "./phone.js";
 import { judge, send } from "./sending.js";
 import { cannotKeep, draftKey, fieldsOf, fill } from "./typing.js";
 
-// The form's own request gives up before the sender takes the reading over.
+// The form's own request gives up before the sender takes the record over.
 const SENDER_LATER_MS = 20000;
 let saving;
 
 function recordOf(it, button) {
-  const { survey, surveyName, code } = it.dataset;
+  const { survey, surveyName, code = "", kind = "reading", what = "" } = it.dataset;
   const fields = fieldsOf(it, button);
   return {
     v: 1,
+    kind,
+    what,
     id: fields.submission_id,
     url: it.getAttribute("action"),
     survey,
@@ -54,6 +56,7 @@ async function answered({ detail: { requestConfig, xhr } }) {
     stored: xhr.getResponseHeader("X-Stored-Id"),
     owner: xhr.getResponseHeader("X-Belongs-To"),
     address: xhr.responseURL,
+    shownAt: xhr.getResponseHeader("HX-Push-Url"),
     html: xhr.responseText,
     wait: Number(xhr.getResponseHeader("Retry-After")) || 0,
   }) : { changes: {} };
@@ -66,7 +69,7 @@ async function answered({ detail: { requestConfig, xhr } }) {
 if (person) {
   document.addEventListener("htmx:confirm", keepFirst);
   document.addEventListener("htmx:afterRequest", answered);
-  // A sign-in page is no answer to a reading.
+  // A sign-in page is no answer to a save.
   document.addEventListener("htmx:beforeSwap", (event) => {
     if (event.detail.xhr.responseURL.includes("/sign-in")) event.detail.shouldSwap = false;
   });

@@ -1,6 +1,7 @@
 // The line on every page: how much waits on this phone, since when, what was refused; and the sign-in over the page.
 import { forgetOld, records } from "./waiting_store.js";
-import { ask, clock, parsed, person, phone, plural } from "./phone.js";
+import { ask, clock, parsed, person, phone } from "./phone.js";
+import { counted } from "./kinds.js";
 import { send } from "./sending.js";
 import { settlePerson } from "./whose.js";
 
@@ -14,12 +15,12 @@ function words(mine, others) {
   const said = [];
   if (waiting.length) {
     const old = Date.now() - waiting[0].keptAt > DAY_MS ? " That is more than a day: find signal, or save them as a file." : "";
-    said.push(`${plural(waiting.length, "reading waits", "readings wait")} on this phone, since ${clock(waiting[0].keptAt)}.${old}`);
+    said.push(`${counted(waiting)} ${waiting.length === 1 ? "waits" : "wait"} on this phone, since ${clock(waiting[0].keptAt)}.${old}`);
   }
-  if (refused.length) said.push(`${plural(refused.length, "reading needs", "readings need")} another look before the server takes it.`);
+  if (refused.length) said.push(`${counted(refused)} ${refused.length === 1 ? "needs" : "need"} another look before the server takes it.`);
   for (const name of new Set(others.map((one) => one.authorName))) {
-    const count = others.filter((one) => one.authorName === name).length;
-    said.push(`${plural(count, "reading", "readings")} by ${name} ${count === 1 ? "waits" : "wait"} until they sign in.`);
+    const theirs = others.filter((one) => one.authorName === name);
+    said.push(`${counted(theirs)} by ${name} ${theirs.length === 1 ? "waits" : "wait"} until they sign in.`);
   }
   return said.join(" ");
 }
@@ -73,7 +74,7 @@ if ("kept" in document.documentElement.dataset) {
   from.hidden = false;
 }
 settlePerson().then(forgetOld).then(show).then(send).catch(() => {
-  line.querySelector("a").textContent = "This phone keeps no readings: save only with signal";
+  line.querySelector("a").textContent = "This phone keeps nothing: save only with signal";
   line.classList.add("some");
   line.hidden = false;
 });

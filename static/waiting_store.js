@@ -48,7 +48,7 @@ export async function records() {
   return (await all("waiting")).sort((one, other) => one.keptAt - other.keptAt);
 }
 
-// A saved reading takes the place of what was being typed, in one transaction: never neither, never both.
+// What is saved takes the place of what was being typed, in one transaction: never neither, never both.
 export async function keepRecord(record, draftKey) {
   await inStore(["waiting", "drafts"], "readwrite", (waiting, drafts) => {
     waiting.put(record);
@@ -67,15 +67,15 @@ export async function changeRecord({ id, keptAt }, changes) {
   changed();
 }
 
-// Take over the records of a copy: one that is here already stays as it is.
+// Take over the records of a copy and return those; one that is here already stays as it is.
 export async function takeOver(copies) {
-  let added = 0;
+  const added = [];
   await inStore("waiting", "readwrite", (store) => {
     for (const copy of copies) {
       store.get(copy.id).onsuccess = ({ target: { result } }) => {
         if (result) return;
         store.put(copy);
-        added += 1;
+        added.push(copy);
       };
     }
   });

@@ -1,7 +1,7 @@
 // A copy of what waits, as a file; taking one over; and whether this phone keeps what is written on it.
 import { get, put, records } from "./waiting_store.js";
 import { asFile, fromFile, takeCopies } from "./copies.js";
-import { plural } from "./phone.js";
+import { counted } from "./kinds.js";
 
 const LOW_BYTES = 50e6;
 const main = document.querySelector("main");
@@ -15,7 +15,7 @@ async function saveCopy() {
   link.download = `bankside-waiting-${new Date().toISOString().slice(0, 16).replace(/[-:]/g, "")}.json`;
   link.click();
   setTimeout(() => URL.revokeObjectURL(link.href), 60000);
-  say(`${plural(waiting.length, "reading", "readings")} written to the file ${link.download}. They also still wait here.`);
+  say(`${counted(waiting)} written to the file ${link.download}. They also still wait here.`);
 }
 
 async function takeCopy() {
@@ -34,7 +34,7 @@ async function storage() {
   const kept = await navigator.storage?.persisted?.();
   part("storage-kept").textContent = kept
     ? "This phone promises not to delete it by itself."
-    : "This phone makes no promise to keep it: send when there is signal, and don't let readings wait for days.";
+    : "This phone makes no promise to keep it: send when there is signal, and let nothing wait for days.";
   part("persist").hidden = Boolean(kept) || !navigator.storage?.persist;
   const { quota, usage } = (await navigator.storage?.estimate?.()) ?? {};
   const room = quota - usage;

@@ -103,7 +103,7 @@ def test_code_takes_a_reading_to_another_phone_without_signal_and_it_is_stored_o
         second.get_by_role("button", name="Take it over", exact=True).tap()
         expect(second.locator("[data-taking-says]")).to_contain_text("taken over")
         assert second.url == f"{server.address}/phone"
-    expect(second.locator("[data-taking-says]")).to_contain_text("0 readings taken over, 1 here already.")
+    expect(second.locator("[data-taking-says]")).to_contain_text("Nothing taken over, 1 here already.")
     assert second.evaluate(ALL_KEPT) == other.evaluate(ALL_KEPT)
     assert other.evaluate(ALL_KEPT)[0]["fields"]["note"] == "by code: Fluß"
     server.start()
@@ -145,7 +145,7 @@ def test_codes_are_turned_one_at_a_time_and_a_long_reading_goes_by_file(phone): 
     expect(title).to_contain_text("2 of 3")
     assert picture.locator("path").get_attribute("d") != drawn
     phone.get_by_role("button", name="Next").tap()
-    expect(phone.get_by_text("This reading is too long for a code. Save what waits as a file instead.")).to_be_visible()
+    expect(phone.get_by_text("This is too long for a code. Save what waits as a file instead.")).to_be_visible()
     expect(picture).to_have_count(0)
     phone.get_by_role("button", name="Previous").tap()
     expect(title).to_contain_text("2 of 3")
@@ -156,7 +156,7 @@ def test_codes_are_turned_one_at_a_time_and_a_long_reading_goes_by_file(phone): 
 @pytest.mark.parametrize("letters", ["", "%00", "bm90IGEgcmVhZGluZw", "eyJ2IjoxLCJmaWVsZHMiOnt9fQ"])
 def test_code_that_holds_no_reading_is_answered_plainly(phone, letters):  # noqa: F811
     phone.goto(f"/phone#take={letters}")
-    expect(phone.get_by_text("There is no whole reading in this code.")).to_be_visible()
+    expect(phone.get_by_text("There is nothing whole in this code.")).to_be_visible()
     expect(phone.get_by_role("button", name="Take it over", exact=True)).to_be_hidden()
     assert phone.console_errors == []
     assert kept(phone) == []

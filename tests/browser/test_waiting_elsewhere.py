@@ -97,7 +97,7 @@ def test_browser_that_refuses_to_keep_anything_says_so_and_still_sends(opened, s
     page.survey = survey_address(page)
     fill(page, "7,4", "nothing kept")
     expect(page.get_by_text("This phone keeps nothing for this page.")).to_be_visible()
-    expect(page.locator(LINE)).to_contain_text("This phone keeps no readings: save only with signal")
+    expect(page.locator(LINE)).to_contain_text("This phone keeps nothing: save only with signal")
     save(page)
     expect(page.locator("main")).to_contain_text("Saved on the server", timeout=20000)
     assert [one[1:] for one in stored("nothing kept")] == [(7.4, "crew")]

@@ -1,11 +1,16 @@
 import io
 import json
+import uuid
 
 import pytest
 
 from tests.webapp.plans import put_plan
-from webapp.models import History, SurveyMember
+from webapp.meters import service as meters
+from webapp.meters.new import NewMeter
+from webapp.meters.queries import checks_of
+from webapp.models import History, SurveyEvent, SurveyMember
 from webapp.readings import queries
+from webapp.visits.queries import visits_of
 
 IDS = ["0b8f6f2c-32cb-4a52-9a6f-0f5b0d3b1c11", "0b8f6f2c-32cb-4a52-9a6f-0f5b0d3b1c12"]
 
@@ -40,7 +45,7 @@ def test_copy_is_stored_under_the_name_of_who_took_the_readings(browser_as, db, 
     answer = send(browser_as(role), copy_of())
     assert "2 stored" in answer.text
     assert authors(db, survey) == dict.fromkeys(IDS, people["crew"].id)
-    assert db.query(History).filter_by(what="readings taken from a phone's file").one().particulars == {"readings": 2}
+    assert db.query(History).filter_by(what="records taken from a phone's file").one().particulars == {"reading": 2}
 
 
 def test_copy_taken_twice_doubles_nothing(browser_as, db, survey, copy_of):
@@ -76,6 +81,52 @@ def test_crew_stores_nothing_under_anothers_name(browser_as, db, survey, people,
 def test_what_cannot_be_stored_is_listed_with_why(browser_as, db, survey, copy_of, changed, said):
     answer = send(browser_as("lead"), copy_of(**changed))
     assert (answer.status_code, said in answer.text) == (200, True)
+    assert authors(db, survey) == {}
+
+
+VISIT = {"submission_id": IDS[1], "arrived_at": "2026-08-12T13:05", "stage_m": "0.41"}
+
+
+def test_each_kind_is_stored_through_its_own_service_and_one_without_a_kind_is_a_reading(
+    browser_as, db, survey, people, copy_of
+):
+    meter = meters.add_meter(db, survey, NewMeter(str(uuid.uuid4()), "Meter A"), people["lead"].id)
+    check = {"submission_id": str(uuid.uuid4()), "taken_at": "2026-08-12T06:05", "meter": meter.id, "kind": "as_found",
+             "parameter": "do", "standard": "air_saturated_water", "value": "8.9", "water_temp_c": "19"}  # fmt: skip
+    copy = json.loads(copy_of())
+    one, other = copy["records"]
+    other |= {"kind": "visit", "what": "Visit at D3", "fields": VISIT}
+    third = one | {"kind": "check", "code": "", "what": "Meter check, Meter A", "fields": check}
+    copy["records"].append(third)
+    page = send(browser_as("crew"), json.dumps(copy).encode()).text
+    assert "3 stored" in page and "Visit at D3, 2026-08-12 13:05" in page
+    db.rollback()
+    assert list(authors(db, survey)) == [IDS[0]]
+    [visit] = visits_of(db, survey.id)
+    assert (visit.station.code, visit.opened_by_id, visit.entries[0].facts["stage_m"]) == (
+        "D3",
+        people["crew"].id,
+        0.41,
+    )
+    [stored] = checks_of(db, survey.id)
+    assert (stored.meter.name, stored.author_id) == ("Meter A", people["crew"].id)
+    page = send(browser_as("crew"), json.dumps(copy).encode()).text
+    assert "0 stored</strong>, 3 there already, 0 not stored" in page
+
+
+def test_kind_that_nobody_knows_is_not_stored_and_the_rest_is(browser_as, db, survey, copy_of):
+    copy = json.loads(copy_of())
+    copy["records"][1]["kind"] = "constructor"
+    assert (
+        "1 stored</strong>, 0 there already, 1 not stored" in send(browser_as("crew"), json.dumps(copy).encode()).text
+    )
+    assert list(authors(db, survey)) == [IDS[0]]
+
+
+def test_record_that_is_refused_half_way_leaves_nothing_behind(browser_as, db, survey, people, copy_of):
+    db.add(SurveyEvent(survey_id=survey.id, kind="approved", reason="done", made_by_id=people["office"].id))
+    db.commit()
+    assert "2 not stored" in send(browser_as("crew"), copy_of()).text
     assert authors(db, survey) == {}
 
 

@@ -1,5 +1,6 @@
 """The field pack: what a phone carries of one survey, so that the on-site check works without signal."""
 
+from calc.units import FOOT_M
 from webapp.display import Show
 from webapp.fieldpack.tables import pressure_tables, saturation_tables
 from webapp.fieldsheet.service import sheet_of
@@ -35,6 +36,7 @@ def pack_of(survey, plan, settings_version, readings, made_at):
         "parcel_h": settings.parcel_h,
         "parcel_share": settings.parcel_percent / 100,
         "criterion": survey.do_criterion_mg_l,
+        "wading": _wading(settings),
         "stations": [{"code": stop.code, "km": stop.distance_km, "place": stop.place} for stop in stops],
         "sag": sag,
         "today": _today(survey, plan, settings, readings, sag) if sag else None,
@@ -79,9 +81,21 @@ def _typed(show):
     lines = {
         "water_temp_c": _line(lambda value: show.to_si("temperature", value)),
         "conductance_us_cm": _line(lambda value: show.to_si("conductance", value)),
+        "wading_depth_m": _line(lambda value: show.to_si("depth", value)),
+        "wading_velocity_m_s": _line(lambda value: show.to_si("velocity", value)),
     }
     return lines | {
         unit: _line(lambda value, unit=unit: show.to_si("pressure", value, unit)) for unit in PRESSURE_UNITS
+    }
+
+
+def _wading(settings):
+    """Return the limits of depth times velocity and of depth, and how many ft²/s a m²/s is. [m²/s, m]"""
+    return {
+        "stop": settings.wading_stop_m2_s,
+        "caution": settings.wading_caution_m2_s,
+        "depth": settings.wading_depth_m,
+        "ft2": round(1 / FOOT_M**2, 6),
     }
 
 

@@ -3,12 +3,13 @@
 import json
 from datetime import UTC, datetime
 
-from flask import Blueprint, Response, jsonify, render_template, url_for
+from flask import Blueprint, Response, current_app, jsonify, render_template, request, url_for
 from flask_login import current_user, login_required
 
 from webapp.db import get_db
-from webapp.fieldpack import service
+from webapp.fieldpack import copies, service
 from webapp.look import asset, read_script, script_names
+from webapp.people.access import needs
 from webapp.plan.queries import current_plan
 from webapp.readings.queries import readings_of
 from webapp.surveys.queries import current_settings, get_survey
@@ -42,12 +43,35 @@ def pack(survey_id):
         url_for("surveys.list_surveys"),
         url_for(".phone"),
         url_for("fieldsheet.sheet", survey_id=survey_id),
-        *(url_for("readings.new", survey_id=survey_id, code=one["code"]) for one in made["stations"]),
+        *_forms(survey_id, [one["code"] for one in made["stations"]]),
     ]
     made["files"] = _files()
     response = jsonify(made)
     response.headers["Cache-Control"] = "no-store"
     return response
+
+
+def _forms(survey_id, codes):
+    """Return the address of every form that a crew may need without signal."""
+    at_station = [one for one in ("readings.new", "visits.new", "bottles.new") if one in current_app.view_functions]
+    of_survey = [one for one in ("meters.new_check",) if one in current_app.view_functions]
+    return [
+        *(url_for(one, survey_id=survey_id) for one in of_survey),
+        *(url_for(one, survey_id=survey_id, code=code) for code in codes for one in at_station),
+    ]
+
+
+@bp.post("/phone/copy")
+@needs("log")
+def take_copy():
+    """Store the records of a file that a phone saved, and list what became of each."""
+    upload = request.files.get("file")
+    try:
+        read = copies.read_copy(upload.read() if upload else b"")
+    except copies.BadCopy as bad:
+        return render_template("fieldpack/copy.html", trouble=str(bad), taken=()), 422
+    taken = copies.take_copies(get_db(), read, current_user)
+    return render_template("fieldpack/copy.html", trouble="", taken=taken)
 
 
 @bp.get("/worker.js")

@@ -2,17 +2,17 @@
 
 from sqlalchemy import func, select
 
-from webapp.models import Person, PlanVersion, Reading, ReadingEvent, Seen
+from webapp.models import Person, PlanVersion, Reading, ReadingEvent, Seen, Visit, VisitEntry
 
 
 def counts_of(db, survey_id):
-    """Return (number of the newest plan version, readings, decisions about readings) of a survey, in one query."""
+    """Return (number of the newest plan version, readings, decisions about them, entries of visits), in one query."""
     newest = select(func.max(PlanVersion.number)).where(PlanVersion.survey_id == survey_id)
     readings = select(func.count(Reading.id)).where(Reading.survey_id == survey_id)
     events = select(func.count(ReadingEvent.id)).join(Reading).where(Reading.survey_id == survey_id)
-    number, *others = db.execute(
-        select(newest.scalar_subquery(), readings.scalar_subquery(), events.scalar_subquery())
-    ).one()
+    entries = select(func.count(VisitEntry.id)).join(Visit).where(Visit.survey_id == survey_id)
+    counts = (one.scalar_subquery() for one in (newest, readings, events, entries))
+    number, *others = db.execute(select(*counts)).one()
     return (number or 0, *others)
 
 

@@ -15,6 +15,8 @@ from webapp.plan.queries import current_plan
 from webapp.readings.asking import thresholds
 from webapp.readings.queries import readings_of
 from webapp.surveys.queries import current_settings, get_survey
+from webapp.visits.line import visits_on_sheet
+from webapp.visits.queries import visits_of
 
 bp = Blueprint("fieldsheet", __name__)
 SHEET = "/surveys/<survey_id>/sheet"
@@ -70,7 +72,7 @@ def _context(survey):
     mark = news.mark_of(db, survey)  # before what it stands for: a change meanwhile comes with the next update
     plan, readings = current_plan(db, survey.id), readings_of(db, survey.id)
     seen = queries.find_seen(db, survey.id, current_user.id)
-    settings = thresholds(current_settings(db, survey.id)) if survey.sampling == "snapshot" else None
+    settings = thresholds(current_settings(db, survey.id))
     return {
         "survey": survey,
         "show": show,
@@ -80,6 +82,7 @@ def _context(survey):
         "plan_number": plan.number if plan else 0,
         "sheet": service.sheet_of(survey, plan, readings, current_user.name),
         "news": news.news_of(db, survey, show, plan, seen, current_user.name),
+        "visits": visits_on_sheet(show, visits_of(db, survey.id), settings),
         "window": snapshot.window_of(survey, plan, settings, readings),
         "now": datetime.now(UTC),
     }

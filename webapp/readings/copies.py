@@ -1,5 +1,6 @@
 """A reading out of a phone's copy."""
 
+from webapp.answers import show_of_form
 from webapp.display import Show
 from webapp.plan.queries import current_plan
 from webapp.readings import forms, queries, service
@@ -10,7 +11,7 @@ def take(db, survey, copied, now):
 
     Raises NotFound, Conflict.
     """
-    show = forms.show_of_form(copied.form, Show.of(survey))
+    show = show_of_form(copied.form, Show.of(survey))
     new, errors = forms.parse_reading(copied.form, show, copied.code, now)
     if errors or new is None:
         return False, errors
