@@ -1,10 +1,10 @@
 """The meters of a survey and the checks on them. Whoever asks has shown that they are on the survey."""
 
-from sqlalchemy import select
+from sqlalchemy import func, select
 from sqlalchemy.orm import joinedload, selectinload
 
 from webapp.errors import NotFound
-from webapp.models import Meter, MeterCheck, MeterCheckEvent
+from webapp.models import History, Meter, MeterCheck, MeterCheckEvent, Person
 
 _WITH = (
     joinedload(MeterCheck.meter),
@@ -43,3 +43,24 @@ def get_check(db, survey_id, check_id):
 def find_check(db, check_id):
     """Return the check of that id, of whatever survey, or None."""
     return db.scalar(select(MeterCheck).where(MeterCheck.id == check_id).options(*_WITH))
+
+
+def last_check_by(db, survey_id, person_id):
+    """Return the check that a person saved last on a survey, or None."""
+    query = select(MeterCheck).where(MeterCheck.survey_id == survey_id, MeterCheck.author_id == person_id)
+    return db.scalar(query.order_by(MeterCheck.received_at.desc(), MeterCheck.id).limit(1))
+
+
+def surveys_with_meters(db, surveys):
+    """Return (survey, how many meters it has) of those among surveys that have any."""
+    ids = [one.id for one in surveys]
+    query = select(Meter.survey_id, func.count()).where(Meter.survey_id.in_(ids)).group_by(Meter.survey_id)
+    counts = dict(db.execute(query).all()) if ids else {}
+    return [(one, counts[one.id]) for one in surveys if one.id in counts]
+
+
+def changes_of(db, survey_id, meter_id):
+    """Return the lines of the history about a meter with who made them, oldest first."""
+    query = select(History, Person.name).outerjoin(Person, Person.id == History.person_id)
+    query = query.where(History.survey_id == survey_id, History.entity == "meter", History.entity_id == meter_id)
+    return db.execute(query.order_by(History.at, History.id)).all()
