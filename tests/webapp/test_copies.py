@@ -124,7 +124,7 @@ def test_kind_that_nobody_knows_is_not_stored_and_the_rest_is(browser_as, db, su
 
 
 def test_record_that_is_refused_half_way_leaves_nothing_behind(browser_as, db, survey, people, copy_of):
-    db.add(SurveyEvent(survey_id=survey.id, kind="approved", reason="done", made_by_id=people["office"].id))
+    db.add(SurveyEvent(survey_id=survey.id, kind="approved", version="", made_by_id=people["office"].id))
     db.commit()
     assert "2 not stored" in send(browser_as("crew"), copy_of()).text
     assert authors(db, survey) == {}
