@@ -15,6 +15,7 @@ POSITIONS = {
     "centre": "Centre",
     "right": "Right, looking downstream",
 }
+POSITIONS_SHORT = {"left": "Left", "centre": "Centre", "right": "Right"}
 PERCENT_BASES = {"local": "the air pressure here", "760": "760 mmHg"}
 VELOCITY_METHODS = {"": "Not noted", "meter": "current meter", "float": "surface float"}
 
@@ -27,6 +28,9 @@ READINGS = Table(
         Column("station", "Station", required=True, longest=12, also=("code", "station code")),
         Column("taken_at", "Time at the water", "time", True, also=("time", "date", "date time", "observed at")),
         Column("do_mg_l", "Oxygen", "oxygen", False, -0.5, 30, ("do", "dissolved oxygen", "oxygen")),
+        Column("values", "Several values", longest=2000, also=("raw values", "oxygen values"),
+               help="With blanks between them, for example 6.1 6.3 6.2: their median is the oxygen."),
+        Column("unstable_reason", "Why they had not settled", longest=300, also=("unstable reason",)),
         Column("water_temp_c", "Water temperature", "temperature", False, -1, 45, ("temperature", "temp", "t")),
         Column("depth_m", "Depth of the water", "depth", False, 0, 100, ("depth", "total depth")),
         Column("do_percent", "Saturation the meter shows", "percent", False, -5, 400,

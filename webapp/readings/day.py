@@ -8,13 +8,14 @@ from webapp.meters.queries import meters_of
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import findings_on_new, thresholds, to_ask
 from webapp.readings.check import on_site_check
-from webapp.readings.expected import prediction_or_reasons
+from webapp.readings.expected import mixed_conductance, prediction_or_reasons
 from webapp.readings.judging import judgement_of
 from webapp.readings.layers import final, placed
 from webapp.readings.occasions import occasions_of
 from webapp.readings.points import before_reading, points_left, section_reason
 from webapp.readings.queries import readings_of
 from webapp.readings.repeats import due_of, local_day
+from webapp.readings.section_words import spreads
 from webapp.readings.settling import settle
 from webapp.readings.surroundings import distances_of, look_around
 from webapp.sag.estimate import estimate_of
@@ -26,6 +27,7 @@ class Day:
     """A survey now; readings are FinalReadings, and grow by what is stored meanwhile."""
 
     def __init__(self, db, survey):
+        self._db = db
         self.survey = survey
         self.now = datetime.now(UTC)
         self.plan = current_plan(db, survey.id)
@@ -68,7 +70,9 @@ class Day:
         Told by the clock alone, without the visits: it is for the crew that stands there now.
         """
         now = final(reading)
-        occasions = occasions_of(sorted(self.readings, key=lambda one: one.taken_at), self.authors, (), self.settings)
+        in_order = sorted(self.readings, key=lambda one: one.taken_at)
+        balance = mixed_conductance(self.survey, self.plan)
+        occasions = occasions_of(in_order, self.authors, (), self.settings, balance)
         here = next(one for one in occasions if any(each.id == now.id for each in one.readings))
         prediction, _ = prediction_or_reasons(self.survey, self.plan)
         why = section_reason(self.plan, prediction, occasions, now.station_code)
@@ -83,6 +87,21 @@ class Day:
     def today(self):
         """Return today's sag from all readings, or why there is none."""
         return estimate_of(self.survey, self.plan, self.settings, self.readings)
+
+    def among_all(self, reading):
+        """Return what all readings and checks of the survey say of a stored one, for its check.
+
+        {"against", "sag", "judged", "spread_words"}: against today's sag, the sag where it is to be drawn, the Judged,
+        and how far the points of its section lie apart.
+        """
+        against = self.against_today(reading)
+        judged = judgement_of(self._db, self.survey).by_id[reading.id]
+        return {
+            "against": against,
+            "sag": self.today() if against is not None and against.expected is not None else None,
+            "judged": judged,
+            "spread_words": spreads(judged.section),
+        }
 
     def against_today(self, reading):
         """Return what a stored reading says against today's sag; None where it does not count or has no place."""

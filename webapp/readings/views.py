@@ -143,12 +143,11 @@ def _form_page(day, show, code, form, status=200, errors=None, asks=(), conflict
 
 
 def _check_page(day, reading, part="readings/_check.html", waits=False):
-    """Answer with the check; waits leaves what takes an estimate of the sag to be fetched after it."""
+    """Answer with the check; waits leaves what takes all readings or an estimate of the sag for later."""
     survey, show = day.survey, Show.of(day.survey)
     check = day.check(reading)
-    against = None if waits else day.against_today(reading)
-    sag = day.today() if against is not None and against.expected is not None else None
-    prediction = check.around.prediction
+    context = {"against": None} if waits else day.among_all(reading)
+    prediction, sag = check.around.prediction, context.pop("sag", None)
     return page_or_part(
         "readings/check.html",
         part,
@@ -157,9 +156,12 @@ def _check_page(day, reading, part="readings/_check.html", waits=False):
         tab="fieldsheet",
         reading=reading,
         check=check,
-        against=against,
+        still=day.still_to_read(reading),
+        due=day.replicate_due(reading),
+        positions_short=columns.POSITIONS_SHORT,
         waits=waits,
         chart=prediction and sag_chart(show, prediction, day.placed(), reading.id, survey.do_criterion_mg_l, today=sag),
         next=fieldsheet.next_stop(survey, day.plan, day.readings, current_user.name),
         now=day.now,
+        **context,
     )
