@@ -2,10 +2,10 @@
 
 import json
 import uuid
-from bisect import bisect_left
 from collections import Counter
 from dataclasses import dataclass
 from datetime import UTC, datetime
+from statistics import median
 
 from webapp.display import QUANTITIES, Show, plain_digits
 from webapp.errors import Conflict
@@ -17,19 +17,21 @@ from webapp.readings.day import Day
 from webapp.readings.layers import NUMBERS, final
 from webapp.readings.new import FURTHEST_AHEAD, NewReading
 from webapp.readings.service import oxygen_of, put_reading, station_pressure_of, velocity_of
-from webapp.readings.surroundings import look_around
+from webapp.readings.surroundings import Neighbourhood
+from webapp.readings.values import BadValues, read_values
 from webapp.review.queries import stored_ids
 from webapp.surveys.service import remember
 from webapp.tablefile import BadCell, read_table, write_table
 from webapp.tablehead import written_head
 
-# How many readings on either side in time a new one is compared with.
-_BESIDE = 150
 _IMPORTED = uuid.UUID("6f1d0a5e-3c0b-5d0f-9a43-6a2f1c7be0d4")
-_MEASURED = ("do_mg_l", "water_temp_c", "depth_m", "do_percent", "conductance_us_cm", "pressure", "velocity_m_s")
-_WORDS = {"percent_basis": "local", "position": "", "meter": "", "replicate": False, "note": ""}
-_PLAIN = ("do_mg_l", "water_temp_c", "depth_m", "do_percent", "conductance_us_cm", "sensor_depth_m", "latitude",
-          "longitude", "position_radius_m")  # fmt: skip
+_MEASURED = ("do_mg_l", "values", "water_temp_c", "depth_m", "do_percent", "conductance_us_cm", "ph", "pressure",
+             "velocity_m_s")  # fmt: skip
+_WORDS = {"percent_basis": "local", "position": "", "meter": "", "replicate": False, "note": "", "unstable_reason": ""}
+_PLAIN = ("do_mg_l", "water_temp_c", "depth_m", "do_percent", "conductance_us_cm", "ph", "sensor_depth_m",
+          "distance_left_m", "latitude", "longitude", "position_radius_m")  # fmt: skip
+# A sheet may hold the median beside its values, rounded by hand.
+_ROUNDED_MG_L = 0.05
 
 
 @dataclass(frozen=True)
@@ -60,7 +62,7 @@ def checked(db, survey, text):
         codes = set(stations_of(db, survey.id))
         latest = datetime.now(UTC) + FURTHEST_AHEAD
         for number, row, typed in zip(file.numbers, file.rows, file.cells, strict=True):
-            errors += _impossible(number, row, typed, codes, latest)
+            errors += [*_impossible(number, row, typed, codes, latest), *_unreadable(number, row, Show.of(survey))]
     order = {column.label: at for at, column in enumerate(READINGS.columns)}
     errors.sort(key=lambda cell: (cell.row, order.get(cell.column_label, len(order))))
     return Preview(file, tuple(errors))
@@ -75,31 +77,53 @@ def preview(db, survey, text):
     return Preview(seen.file, (), tuple(new), known)
 
 
-def import_readings(db, survey, rows, by_id, entered=None):
-    """Store the readings that are not here yet, all in one transaction; return (added, known).
+@dataclass(frozen=True)
+class Prepared:
+    """The readings of a sheet with what is odd about each, computed and not yet stored; known are here already."""
+
+    day: Day
+    new: tuple
+    known: int
+
+
+def prepare(db, survey, rows, entered=None):
+    """Return the Prepared of the rows of a sheet: all that takes time and needs no place in the writers' line.
 
     rows are dictionaries by the column keys of READINGS, in SI; entered, where known, is what was typed for each: a
-    dictionary from column key to {"text", "unit"}. The same rows imported twice are stored once.
+    dictionary from column key to {"text", "unit"}.
 
     Raises
     ------
     Conflict
         If the survey has no plan: a reading belongs to one.
-    NotFound
-        If a row names a station that the survey never had.
     """
     day = Day(db, survey)
     if day.plan is None:
         raise Conflict("There is no plan yet, so there are no stations to read at. Make the plan first.")
-    entered = entered or [_in_si(row) for row in rows]
-    new, known = _new_readings(db, survey, rows, entered, day)
+    new, known = _new_readings(db, survey, rows, entered or [_in_si(row) for row in rows], day)
+    return Prepared(day, tuple(new), known)
+
+
+def store(db, survey, prepared, by_id):
+    """Store the prepared readings in one transaction and return (added, known); what came meanwhile is known.
+
+    Raises NotFound where a reading is of a station that the survey never had.
+    """
+    held = stored_ids(db, survey.id, [one.id for one in prepared.new])
+    new = [one for one in prepared.new if one.id not in held]
+    known = prepared.known + len(held)
     with db.no_autoflush:  # the ids are known to be new and unlike each other: one flush for all of them
         for one in new:
-            put_reading(db, survey, one, by_id, day.plan, day.now)
+            put_reading(db, survey, one, by_id, prepared.day.plan, prepared.day.now)
     if new:
         remember(db, survey.id, by_id, "readings imported", particulars={"added": len(new), "known": known})
     db.commit()
     return len(new), known
+
+
+def import_readings(db, survey, rows, by_id, entered=None):
+    """Prepare and store the rows of a sheet; return (added, known). The same rows imported twice are stored once."""
+    return store(db, survey, prepare(db, survey, rows, entered), by_id)
 
 
 def columns_in_words(show):
@@ -118,7 +142,11 @@ def empty_sheet(show):
 def entered_of(file):
     """Return what was typed for the numbers of each row of a TableFile, as a reading keeps it."""
     return [
-        {key: {"text": text, "unit": units[key]} for key, text in cells.items() if text and units.get(key)}
+        {
+            key: {"text": text, "unit": units.get(key) or "mg/L"}
+            for key, text in cells.items()
+            if text and (units.get(key) or key == "values")
+        }
         for cells, units in zip(file.cells, file.units, strict=True)
     ]
 
@@ -131,6 +159,8 @@ def _in_si(row):
         unit = row.get(f"{column.key}_unit") or QUANTITIES[column.quantity][0]
         value = Show().shown(column.quantity, row[column.key], unit)
         entered[column.key] = {"text": plain_digits(value), "unit": unit}
+    if row.get("values"):
+        entered["values"] = {"text": row["values"], "unit": "mg/L"}
     return entered
 
 
@@ -155,6 +185,22 @@ def _impossible(number, row, typed, codes, latest):
         yield bad("velocity_method", "Say how the velocity was measured: a float runs faster than the water.")
 
 
+def _unreadable(number, row, show):
+    """Return a BadCell for several values that can't be read, or that are not those of the oxygen beside them."""
+    text, oxygen = row.get("values"), row.get("do_mg_l")
+    if not text:
+        return
+    label = READINGS.column("values").label
+    try:
+        middle = median(one["do_mg_l"] for one in read_values(text, show))
+    except BadValues as bad:
+        yield BadCell(number, label, text[:100], str(bad))
+        return
+    if oxygen is not None and abs(oxygen - middle) > _ROUNDED_MG_L:
+        says = f"Their median is {middle:.2f} mg/L, and the oxygen beside them is {oxygen:g}. Put one of them right."
+        yield BadCell(number, label, text[:100], says)
+
+
 def _new_readings(db, survey, rows, entered, day=None):
     """Return the NewReadings that the survey does not hold yet, with what is odd about each, and how many it does."""
     made = _identified(survey, rows, entered)
@@ -165,10 +211,10 @@ def _new_readings(db, survey, rows, entered, day=None):
 
 def _identified(survey, rows, entered):
     """Return a NewReading for each row; its id follows from what it says, and from how many like it came before."""
-    made, seen = [], Counter()
+    made, seen, show = [], Counter(), Show.of(survey)
     for row, typed in zip(rows, entered, strict=True):
         content = json.dumps([survey.id, row], sort_keys=True, default=_content)
-        made.append(_new(row, typed, str(uuid.uuid5(_IMPORTED, f"{content}#{seen[content]}"))))
+        made.append(_new(row, typed, str(uuid.uuid5(_IMPORTED, f"{content}#{seen[content]}")), show))
         seen[content] += 1
     return made
 
@@ -177,7 +223,7 @@ def _content(value):
     return value.astimezone(UTC).isoformat()
 
 
-def _new(row, typed, reading_id):
+def _new(row, typed, reading_id, show):
     by_float = row.get("velocity_method") == "float"
     return NewReading(
         id=reading_id,
@@ -190,27 +236,21 @@ def _new(row, typed, reading_id):
         velocity_method=row.get("velocity_method") or "",
         **{key: row.get(key) for key in _PLAIN},
         **{key: row[key] if row.get(key) is not None else empty for key, empty in _WORDS.items()},
+        series=read_values(row["values"], show) if row.get("values") else (),
         entered=typed,
     )
 
 
 def _looked_at(survey, new, day):
-    """Return the readings with what the form would have asked about, each beside the others in time."""
-    beside = sorted([*day.readings, *(_as_stored(survey, one) for one in new)], key=lambda one: one.taken_at)
-    times = [one.taken_at for one in beside]
-    looked_at = []
-    for one in new:
-        middle = bisect_left(times, one.taken_at)
-        near = beside[max(0, middle - _BESIDE) : middle + _BESIDE]
-        looked_at.append(one.keeping(_findings(survey, one, near, day)))
-    return looked_at
+    """Return the readings with what the form would have asked about, each beside all the others."""
+    settled = [day.settled(one) for one in new]
+    beside = Neighbourhood(survey, day.plan, [*day.readings, *(_as_stored(survey, one) for one in settled)])
+    return [one.keeping(_findings(survey, one, beside, day)) for one in settled]
 
 
-def _findings(survey, new, near, day):
-    around = look_around(
-        survey, day.plan, new.station_code, new.taken_at, near, reading_id=new.id, replicate=new.replicate
-    )
-    return to_ask(findings_on_new(survey, day.settings, new, around, day.now), new, day.now)
+def _findings(survey, new, beside, day):
+    around = beside.around(new.station_code, new.taken_at, new.id, new.replicate)
+    return to_ask(findings_on_new(survey, day.settings, new, around, day.now, day.meters), new, day.now)
 
 
 def _as_stored(survey, new):
