@@ -28,7 +28,7 @@ class FinalReading:
 
     raw holds each as it was recorded, corrections the events; drift is the event whose line do_mg_l was moved along, or
     None, and before_drift_mg_l oxygen before that. review is OPEN, KEPT, ASKED or ANSWERED, reviewer_id who decided.
-    series holds the several raw values, stable what was said of them when it was recorded.
+    series holds the several raw values, stable what was said of them when it was recorded; decisions counts the events.
     """
 
     id: str
@@ -60,6 +60,7 @@ class FinalReading:
     reviewer_id: str = ""
     stable: bool | None = None
     series: tuple = ()
+    decisions: int = 0
 
     @property
     def state(self):
@@ -117,6 +118,7 @@ def final(reading):
         reviewer_id=reviewer_id,
         stable=reading.stable,
         series=tuple(reading.series or ()),
+        decisions=len(events),
         **numbers,
     )
 

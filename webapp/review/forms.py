@@ -1,10 +1,11 @@
-"""The table's filters, and what somebody decides about a reading."""
+"""What the lists of readings are filtered by, and what somebody decides about a reading."""
 
 import math
 from dataclasses import dataclass
-from datetime import datetime
+from datetime import date, datetime
 
 from webapp.forms import Fields
+from webapp.readings.quality_words import QUALITIES, REASONS
 from webapp.review.numbers import CORRECTABLE
 
 STATES = {
@@ -14,18 +15,35 @@ STATES = {
     "corrected": "Corrected",
     "findings": "With findings",
 }
+LOOKS = {
+    "todo": "To look at",
+    "answered": "Answered by the crew",
+    "asked": "Waiting for the crew",
+    "kept": "Looked at",
+    "all": "All",
+}
+CHECKS = {"all": "All", "bracketed": "Between two passing checks", "not_bracketed": "Not between two passing checks"}
+FILTER_FIELDS = (
+    *("state", "station", "author", "since", "until", "quality", "checks", "review", "reason", "meter", "day"),
+)
 LAST_PAGE = 100_000
 
 
 @dataclass(frozen=True)
 class Filters:
-    """Which readings the table shows."""
+    """Which readings a list shows; an empty text lets every one through."""
 
     station: str = ""
     state: str = "all"
     author: str = ""
     since: datetime | None = None
     until: datetime | None = None
+    quality: str = ""
+    checks: str = "all"
+    review: str = "all"
+    reason: str = ""
+    meter: str = ""
+    day: date | None = None
     page: int = 1
 
 
@@ -38,8 +56,11 @@ class Correction:
     reason: str
 
 
-def parse_filters(source, show):
-    """Return (Filters, {field: message}); a filter that can't be read lets everything through."""
+def parse_filters(source, show, review="all"):
+    """Return (Filters, {field: message}); a filter that can't be read lets everything through.
+
+    review is what is shown of the reviewers' work where nothing is asked.
+    """
     fields = Fields(source, show)
     filters = Filters(
         station=fields.text("station", "station", 20, required=False) or "",
@@ -47,11 +68,25 @@ def parse_filters(source, show):
         author=fields.text("author", "author", 36, required=False) or "",
         since=fields.local_time("since", "earliest time", required=False),
         until=fields.local_time("until", "latest time", required=False),
+        quality=fields.choice("quality", "quality", {"": "", **QUALITIES}, "") or "",
+        checks=fields.choice("checks", "meter checks", CHECKS, "all") or "all",
+        review=fields.choice("review", "state of the review", LOOKS, review) or review,
+        reason=fields.choice("reason", "reason", {"": "", **REASONS}, "") or "",
+        meter=fields.text("meter", "meter", 60, required=False) or "",
+        day=_day(fields),
         page=_page(source.get("page")),
     )
     if filters.since and filters.until and filters.since > filters.until:
         fields.refuse("until", "This is before the earliest time, so nothing can lie between them.")
     return filters, fields.errors
+
+
+def _day(fields):
+    text = fields.text("day", "day", 10, required=False)
+    try:
+        return date.fromisoformat(text) if text else None
+    except ValueError:
+        return fields.refuse("day", "Choose the day from the list.")
 
 
 def _page(text):
@@ -78,9 +113,15 @@ def parse_correction(source, show, final, decided):
         value = fields.number("value", label, column.low, column.high, column.quantity)
     elif fields.text("value", "value", 100, required=False):
         fields.refuse("value", "Either enter a value, or tick that there was none.")
-    if "value" not in fields.errors and based_on(source) == decided and _same(value, getattr(final, name)):
+    stands = standing(final, name)
+    if "value" not in fields.errors and based_on(source) == decided and _same(value, stands):
         fields.refuse("value", "That is what it says already.")
     return (None, fields.errors) if fields.errors else (Correction(name, value, reason), {})
+
+
+def standing(final, name):
+    """Return the number that a correction would replace: oxygen as it is before the correction for drift."""
+    return final.before_drift_mg_l if name == "do_mg_l" else getattr(final, name)
 
 
 def parse_reason(source):
@@ -90,9 +131,66 @@ def parse_reason(source):
     return (None, fields.errors) if fields.errors else (reason, {})
 
 
+def parse_words(source, name, label):
+    """Return (text of a question or an answer, {}) or (None, {field: message})."""
+    fields = Fields(source)
+    words = fields.text(name, label, 500)
+    return (None, fields.errors) if fields.errors else (words, {})
+
+
+@dataclass(frozen=True)
+class Ticked:
+    """The readings of a list that are to be kept together: ids with how many decisions each had, or all that fit."""
+
+    counts: dict
+    all_that_fit: bool
+    reason: str
+
+
+def parse_ticked(source, ticked):
+    """Return (Ticked, {}) or (None, {field: message}); ticked are texts "id.number of decisions"."""
+    fields = Fields(source)
+    reason = _reason(fields)
+    counts = {}
+    for text in ticked:
+        reading_id, _, count = text.rpartition(".")
+        counts[reading_id[:36]] = _count(count)
+    all_that_fit = fields.ticked("all_that_fit")
+    if not counts and not all_that_fit:
+        fields.refuse("ticked", "Tick the readings to keep first.")
+    return (None, fields.errors) if fields.errors else (Ticked(counts, all_that_fit, reason), {})
+
+
+@dataclass(frozen=True)
+class DriftChoice:
+    """A correction to apply or undo: between which checks, what was seen of it, and why; batch is the form's id."""
+
+    start_id: str
+    end_id: str
+    seen: str
+    batch: str
+    reason: str
+
+
+def parse_drift(source):
+    """Return (DriftChoice, {}) or (None, {field: message})."""
+    fields = Fields(source)
+    choice = DriftChoice(
+        start_id=fields.text("start_check", "check before", 36, required=False) or "",
+        end_id=fields.text("end_check", "check after", 36, required=False) or "",
+        seen=fields.text("seen", "state of the page", 64, required=False) or "",
+        batch=fields.uuid("submission_id"),
+        reason=_reason(fields),
+    )
+    return (None, fields.errors) if fields.errors else (choice, {})
+
+
 def based_on(source):
     """Return how many decisions the form's page knew of; -1, which never fits, where it does not say."""
-    text = source.get("based_on") or ""
+    return _count(source.get("based_on") or "")
+
+
+def _count(text):
     return int(text) if text.isascii() and text.isdigit() and len(text) <= 6 else -1
 
 

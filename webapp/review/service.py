@@ -1,15 +1,29 @@
-"""Decisions about readings: corrections, setting aside and using again. Each is a layer over a reading that stays."""
+"""Decisions about readings: layers over a reading that stays, and what a reviewer and the crew say about it."""
 
 from sqlalchemy import select
 
 from webapp.errors import Conflict, NotAllowed
-from webapp.models import Reading, ReadingEvent
-from webapp.readings.layers import final
+from webapp.models import Person, Reading, ReadingEvent
+from webapp.readings.layers import ASKED, KEPT, final
 from webapp.review import queries
 from webapp.review.importing import import_readings
 from webapp.surveys.service import remember
 
-__all__ = ["correct", "import_readings", "may_decide", "restore", "set_aside"]
+__all__ = [
+    "answer",
+    "ask",
+    "correct",
+    "hold",
+    "import_readings",
+    "keep",
+    "may_answer",
+    "may_decide",
+    "may_review",
+    "restore",
+    "set_aside",
+]
+
+OWN = "You took this reading yourself, so somebody else must review it. You can still correct it or set it aside."
 
 
 def may_decide(person, reading):
@@ -17,10 +31,23 @@ def may_decide(person, reading):
     return person.may("correct") or reading.author_id == person.id
 
 
+def may_review(person, reading):
+    """Return whether somebody may review a reading: lead and office, but nobody what they took themselves."""
+    return person.may("correct") and reading.author_id != person.id
+
+
+def may_answer(person, reading):
+    """Return whether somebody may answer the open question about a reading: all who log, but not who asked."""
+    now = final(reading)
+    return now.review == ASKED and person.may("log") and now.reviewer_id != person.id
+
+
 def correct(db, survey_id, reading_id, correction, based_on, person):
     """Store a correction and return the reading. Raises NotFound, NotAllowed, Conflict."""
-    reading = _held(db, survey_id, reading_id, person)
-    old = getattr(final(reading), correction.field)
+    reading = _to_decide(db, survey_id, reading_id, person)
+    now = final(reading)
+    # A drift correction is a line over what stands before it: a reading is corrected below that line.
+    old = now.before_drift_mg_l if correction.field == "do_mg_l" else getattr(now, correction.field)
     event = ReadingEvent(
         kind="corrected",
         field=correction.field,
@@ -34,25 +61,59 @@ def correct(db, survey_id, reading_id, correction, based_on, person):
 
 def set_aside(db, survey_id, reading_id, reason, based_on, person):
     """Keep the reading in the record, but out of use, and return it. Raises NotFound, NotAllowed, Conflict."""
-    reading = _held(db, survey_id, reading_id, person)
-    event = ReadingEvent(kind="set_aside", reason=reason, made_by_id=person.id)
-    return _decide(db, reading, event, based_on, "reading set aside")
+    reading = _to_decide(db, survey_id, reading_id, person)
+    return _decide(db, reading, _said("set_aside", reason, person), based_on, "reading set aside")
 
 
 def restore(db, survey_id, reading_id, reason, based_on, person):
     """Use a reading again that was set aside, and return it. Raises NotFound, NotAllowed, Conflict."""
-    reading = _held(db, survey_id, reading_id, person)
-    event = ReadingEvent(kind="restored", reason=reason, made_by_id=person.id)
-    return _decide(db, reading, event, based_on, "reading used again")
+    reading = _to_decide(db, survey_id, reading_id, person)
+    return _decide(db, reading, _said("restored", reason, person), based_on, "reading used again")
 
 
-def _held(db, survey_id, reading_id, person):
+def keep(db, survey_id, reading_id, reason, based_on, person):
+    """Note that a reviewer looked and lets the reading stand, and return it. Raises NotFound, NotAllowed, Conflict."""
+    reading = _to_review(db, survey_id, reading_id, person)
+    return _decide(db, reading, _said("kept", reason, person), based_on, "reading kept")
+
+
+def ask(db, survey_id, reading_id, question, based_on, person):
+    """Put a question about the reading to the crew, and return it. Raises NotFound, NotAllowed, Conflict."""
+    reading = _to_review(db, survey_id, reading_id, person)
+    return _decide(db, reading, _said("asked", question, person), based_on, "crew asked")
+
+
+def answer(db, survey_id, reading_id, words, based_on, person):
+    """Answer the open question about a reading, and return it. Raises NotFound, NotAllowed, Conflict."""
+    reading = hold(db, survey_id, reading_id)
+    if not person.may("log") or final(reading).reviewer_id == person.id:
+        raise NotAllowed("You asked this question yourself. The crew answers it.")
+    return _decide(db, reading, _said("answered", words, person), based_on, "question answered")
+
+
+def hold(db, survey_id, reading_id):
+    """Return a reading that nobody else decides about until the commit. Raises NotFound."""
     # A database that lets several write at once lets only one of them at this reading; SQLite has one writer anyway.
     db.execute(select(Reading.id).where(Reading.id == reading_id).with_for_update())
-    reading = queries.get_reading(db, survey_id, reading_id)
+    return queries.get_reading(db, survey_id, reading_id)
+
+
+def _to_decide(db, survey_id, reading_id, person):
+    reading = hold(db, survey_id, reading_id)
     if not may_decide(person, reading):
         raise NotAllowed("You can correct or set aside your own readings. For others', ask the lead or the office.")
     return reading
+
+
+def _to_review(db, survey_id, reading_id, person):
+    reading = hold(db, survey_id, reading_id)
+    if not may_review(person, reading):
+        raise NotAllowed(OWN if reading.author_id == person.id else "Readings are reviewed by the lead or the office.")
+    return reading
+
+
+def _said(kind, reason, person):
+    return ReadingEvent(kind=kind, reason=reason, made_by_id=person.id)
 
 
 def _decide(db, reading, event, based_on, what):
@@ -62,15 +123,27 @@ def _decide(db, reading, event, based_on, what):
         return reading
     if based_on != len(events):
         raise Conflict("Somebody decided about this reading since you opened it. See what, then decide again.")
-    if event.kind != "corrected" and (event.kind == "set_aside") == final(reading).set_aside:
-        raise Conflict("It is set aside already." if event.kind == "set_aside" else "It is in use already.")
-    events.append(event)
+    if trouble := _pointless(event.kind, final(reading)):
+        raise Conflict(trouble)
     particulars = {"field": event.field, "old": event.old_value, "new": event.new_value} if event.field else {}
     remember(
         db, reading.survey_id, event.made_by_id, what, "reading", reading.id, particulars | {"reason": event.reason}
     )
+    event.made_by = db.get(Person, event.made_by_id)
+    events.append(event)
     db.commit()
     return reading
+
+
+def _pointless(kind, now):
+    """Return why a decision would change nothing; empty where it does."""
+    return {
+        "set_aside": now.set_aside and "It is set aside already.",
+        "restored": not now.set_aside and "It is in use already.",
+        "kept": now.review == KEPT and "A reviewer let it stand already.",
+        "asked": now.review == ASKED and "A question about it is open already.",
+        "answered": now.review != ASKED and "No question about it is open.",
+    }.get(kind) or ""
 
 
 def _says(event):
