@@ -7,6 +7,8 @@ from calc.travel import LEADING_EDGE_SHARE
 from webapp.plan.day import day_changes
 from webapp.readings.expected import expected_at_stations, prediction_or_reasons
 from webapp.readings.layers import FinalReading, final
+from webapp.readings.repeats import due_of, local_day
+from webapp.readings.section_words import in_short
 
 
 @dataclass(frozen=True)
@@ -89,6 +91,31 @@ def next_stop(survey, plan_version, readings, person_name=""):
     A station that is for somebody else comes after all others.
     """
     return sheet_of(survey, plan_version, readings, person_name).next
+
+
+@dataclass(frozen=True)
+class Points:
+    """What the sheet says of sections and repeats.
+
+    verdicts holds a few words on mixed and layered by station code; due says why the person owes a replicate, and
+    repeat is their last reading of the day, which it may repeat; None where none is due.
+    """
+
+    verdicts: dict[str, str]
+    due: str
+    repeat: FinalReading | None
+
+
+def points_on_sheet(survey, judgement, settings, person_id, now):
+    """Return the Points of a survey for a person; judgement is that of all its readings."""
+    by_code = {}
+    for one in judgement.occasions:
+        by_code.setdefault(one.station_code, []).append(one)
+    own = [one.reading for one in judgement.by_id.values() if one.author_id == person_id]
+    today = [one for one in own if local_day(survey, one.taken_at) == local_day(survey, now) and not one.set_aside]
+    due = due_of(today, settings)
+    verdicts = {code: words for code, some in by_code.items() if (words := in_short(some))}
+    return Points(verdicts, due, max(today, key=lambda one: one.taken_at) if due else None)
 
 
 def _next(stops, finals, person_name):

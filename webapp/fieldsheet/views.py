@@ -13,6 +13,7 @@ from webapp.htmx import wants_fragment
 from webapp.people.access import needs
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import thresholds
+from webapp.readings.judging import judgement_of
 from webapp.readings.queries import readings_of
 from webapp.surveys.queries import current_settings, get_survey
 from webapp.visits.line import visits_on_sheet
@@ -71,7 +72,7 @@ def _context(survey):
     db, show = get_db(), Show.of(survey)
     mark = news.mark_of(db, survey)  # before what it stands for: a change meanwhile comes with the next update
     plan, readings = current_plan(db, survey.id), readings_of(db, survey.id)
-    seen = queries.find_seen(db, survey.id, current_user.id)
+    seen, now = queries.find_seen(db, survey.id, current_user.id), datetime.now(UTC)
     settings = thresholds(current_settings(db, survey.id))
     return {
         "survey": survey,
@@ -83,8 +84,9 @@ def _context(survey):
         "sheet": service.sheet_of(survey, plan, readings, current_user.name),
         "news": news.news_of(db, survey, show, plan, seen, current_user.name),
         "visits": visits_on_sheet(show, visits_of(db, survey.id), settings),
+        "points": service.points_on_sheet(survey, judgement_of(db, survey), settings, current_user.id, now),
         "window": snapshot.window_of(survey, plan, settings, readings),
-        "now": datetime.now(UTC),
+        "now": now,
     }
 
 
