@@ -1,4 +1,5 @@
-// The reading form: where the phone is.
+// The reading form: where the phone is, and the point of the section that the link to the form names.
+const GIVEN = ["position", "distance_left_m", "sensor_depth_m", "meter", "replicate"];
 const TROUBLES = {
   1: "This phone does not give its position to this page. Go on without it.",
   2: "This phone does not know where it is. Go on without it.",
@@ -22,6 +23,19 @@ function notePosition(button) {
   );
 }
 
+// The server fills in the point; a page that was kept on this phone knows nothing of it.
+function takePoint() {
+  const it = document.querySelector('form[data-kind="reading"]');
+  if (!it || !("kept" in document.documentElement.dataset)) return;
+  for (const [name, text] of new URLSearchParams(location.search)) {
+    const field = GIVEN.includes(name) && it.elements[name];
+    if (!field) continue;
+    if (field.type === "checkbox") field.checked = true;
+    else field.value = text;
+    field.closest("details").open = true;
+  }
+}
+
 function showButtons() {
   const here = window.isSecureContext && "geolocation" in navigator;
   for (const button of document.querySelectorAll("[data-position-button]")) button.hidden = !here;
@@ -34,3 +48,4 @@ document.addEventListener("click", (event) => {
 document.addEventListener("htmx:afterSettle", showButtons);
 document.addEventListener("htmx:historyRestore", showButtons);
 showButtons();
+takePoint();

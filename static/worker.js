@@ -36,7 +36,9 @@ async function page(event, path) {
   try {
     const reply = await (kept ? inTime(answer, PATIENCE_MS) : answer);
     if (kept && reply.status >= 500) return marked(kept);
-    if (kept && reply.status === 200 && !reply.redirected) event.waitUntil(renew(cache, path, reply.clone()));
+    // A form that its link filled in ("?position=left") is not the page to keep.
+    const plain = !new URL(event.request.url).search;
+    if (kept && plain && reply.status === 200 && !reply.redirected) event.waitUntil(renew(cache, path, reply.clone()));
     return reply;
   } catch (trouble) {
     const instead = kept ?? (await cache.match("/phone", anyHeaders));
