@@ -160,3 +160,14 @@ def test_a_section_whose_mean_is_far_from_the_mass_balance_is_not_mixed(day):
     assert day.judged(points[0]).section.says.startswith("Not mixed: mean conductance is 20 % from the mass balance")
     nearer = [day.read(9, position=where, conductance_us_cm=0.95 * mixed) for where in ("left", "centre", "right")]
     assert day.judged(nearer[0]).section.mixed is True
+
+
+def test_a_request_that_rolls_back_leaves_what_is_kept_readable(day):
+    check = day.check(0, "as_found", 8.22)
+    reading = day.read(3)
+    kept = day.judgement()
+    day.db.rollback()
+    day.db.close()
+    assert day.judgement() is kept
+    assert kept.by_id[reading].check_before.check.id == check
+    assert kept.checks[0].check.meter.name == "Meter A"

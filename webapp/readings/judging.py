@@ -4,6 +4,8 @@ import threading
 from collections import OrderedDict
 from dataclasses import dataclass
 
+from sqlalchemy.orm import Session
+
 from calc.findings import Finding
 from calc.quality_meter import Bracket
 from calc.quality_section import not_mixed, stratified
@@ -156,8 +158,10 @@ def judgement_of(db, survey):
         if held == mark:
             _kept.move_to_end(survey.id)
             return found
-    rows = (queries.readings_of(db, survey.id), checks_of(db, survey.id), visits_of(db, survey.id))
-    found = judge(survey, plan, thresholds(settings), *rows)
+    # What is kept needs rows of its own: those of a session that rolls back are emptied, and filled by no other.
+    with Session(db.connection(), join_transaction_mode="rollback_only") as aside:
+        rows = (queries.readings_of(aside, survey.id), checks_of(aside, survey.id), visits_of(aside, survey.id))
+        found = judge(survey, current_plan(aside, survey.id), thresholds(settings), *rows)
     with _keeping:
         _kept[survey.id] = (mark, found)
         _kept.move_to_end(survey.id)
