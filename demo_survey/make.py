@@ -1,176 +1,58 @@
-"""Makes the files of the demo survey: an invented river, works and day.
+"""Makes the files of the demo: an invented river and works, a survey that is going on, and one three weeks earlier.
 
 Run from the checkout with `python -m demo_survey.make`. The plan's tables are written in the form that the plan's
-imports take. The readings come from a true river that differs from the plan (slower reaeration and water, more BOD),
-read through calc.sag, with the noise and the slips that SLIPS lists. The same run gives the same files.
+imports take, everything else as it is typed into the forms. The readings come from a true river that differs from the
+plan (slower reaeration and water, more BOD), read through calc.sag, with noise, slips and a meter that drifts. The same
+run gives the same files.
 """
 
-from dataclasses import replace
-from datetime import datetime, timedelta
 from pathlib import Path
-from zoneinfo import ZoneInfo
 
-import numpy as np
-
-from calc.oxygen import percent_saturation
-from calc.sag import predict
+from demo_survey import finished, today
+from demo_survey.river import (
+    ELEVATION_M,
+    PLAN,
+    READ_SD_MG_L,
+    STATION_PLACES,
+    STATIONS,
+    TRUE_BOD,
+    TRUE_FACTORS,
+    WHERE,
+    true_river,
+)
+from demo_survey.rows import facts, table
+from demo_survey.today import RELEASE, SLIPS, SURVEY, readings
 from webapp.display import Show
-from webapp.plan.prediction import predict_plan
 from webapp.plan.tables import PLAN_TABLES
-from webapp.readings.columns import READINGS
 from webapp.tablefile import write_table
 
-HERE = Path(__file__).resolve().parent
-ZONE = ZoneInfo("Atlantic/Azores")
-RELEASE = datetime(2026, 8, 12, 4, 30, tzinfo=ZONE)
-ELEVATION_M = 310.0
-TRUE_FACTORS = {"ka20_per_day": 0.85, "kd20_per_day": 1.1, "velocity_m_s": 0.92}
-TRUE_BOD = 1.2
-READ_SD_MG_L = 0.06
-SLIPS = (
-    "D2: 760 mmHg written as the barometer's, at 310 m: the sea-level value of a weather report",
-    "D2: read 1 h 25 min late for the parcel",
-    "D3: the meter's percent saturation read from a wrong line, 12 points too high",
-    "D1, right: conductance and oxygen differ across the river, which is not mixed yet",
-)
-
-SURVEY = {
-    "name": "Sallow Water, August low flow",
-    "river": "Sallow Water",
-    "purpose": "Does oxygen below Osier works stay above 4.5 mg/L at low flow, and where is it lowest?",
-    "time_zone": "Atlantic/Azores",
-    "unit_system": "si",
-    "distance_rule": "downstream",
-    "outfall_mark": "",
-    "elevation_m": "310",
-    "do_criterion_mg_l": "4.5",
-    "criterion_basis": "daily minimum, invented for the demo",
-    "sampling": "same_parcel",
-    "release_at": RELEASE.strftime("%Y-%m-%dT%H:%M"),
-    "safety_note": "Demo: your emergency number and plan holder stand here. Keep clear of the outfall and Willow weir.",
-}
-
-RIVER = {
-    "ks20_per_day": 0.10,
-    "kd20_per_day": 1.0,
-    "kn20_per_day": 0.35,
-    "sod20_g_m2_per_day": 0.3,
-    "ka_formula": "covar",
-}
-REACHES = [
-    {"name": name, "from_km": start, "to_km": end, "depth_m": depth, "velocity_m_s": speed, "width_m": width,
-     "slope": slope, **RIVER}
-    for name, start, end, depth, speed, width, slope in (
-        ("Above the works", -1.5, 0.0, 0.66, 0.34, 10.0, 0.0011),
-        ("Osier meadows", 0.0, 8.0, 0.70, 0.35, 10.5, 0.0009),
-        ("Long straight", 8.0, 21.0, 0.74, 0.34, 10.5, 0.0008),
-        ("Gravel bends", 21.0, 27.0, 0.60, 0.40, 11.5, 0.0012),
-        ("Lower willows", 27.0, 32.0, 0.72, 0.38, 11.0, 0.0008),
-    )
-]  # fmt: skip
-WATERS = [
-    {"kind": "upstream", "name": "Sallow Water", "flow_m3_s": 1.9, "do_mg_l": 8.3, "water_temp_c": 19.6,
-     "bod5_mg_l": 2.0, "ammonia_mg_n_l": 0.2, "conductance_us_cm": 310},
-    {"kind": "outfall", "name": "Osier works", "distance_km": 0.0, "flow_m3_s": 0.46, "do_mg_l": 4.5,
-     "water_temp_c": 22.5, "bod5_mg_l": 62, "ammonia_mg_n_l": 3.0, "conductance_us_cm": 980},
-    {"kind": "tributary", "name": "Teal beck", "distance_km": 23.4, "flow_m3_s": 0.30, "do_percent": 98,
-     "water_temp_c": 18.4, "bod5_mg_l": 1.6, "ammonia_mg_n_l": 0.1, "conductance_us_cm": 240},
-]  # fmt: skip
-WEIRS = [{"name": "Willow weir", "distance_km": 27.0, "drop_m": 0.8, "quality": "slight", "shape": "vertical"}]
-BASIS = [{"bod_bottle_rate_per_day": 0.23, "settling_ends_km": 8.0}]
-ACCESS = [
-    {"name": name, "distance_km": km, "drive_min": drive, "way": way, "hazards": hazards,
-     "latitude": round(44.2 - km * 0.006, 4), "longitude": round(-33.1 + km * 0.008, 4)}
-    for name, km, drive, way, hazards in (
-        ("Alder bridge", -0.6, 0, "Steps on the left bank, upstream side", "Road without footway"),
-        ("Works fence", 0.9, 6, "Path along the fence, then the gravel bar", "Sewage contact: gloves, cover cuts"),
-        ("Meadow gate", 3.4, 9, "Through the gate, along the hedge", "Cattle; soft bed"),
-        ("Cattle ford", 5.2, 7, "Farm track to the ford", "Soft bed"),
-        ("Poplar footbridge", 6.9, 8, "From the footbridge, centre of the river", "Slippery planks"),
-        ("Old pump house", 8.6, 10, "Concrete steps on the right bank", "Steep steps"),
-        ("Long straight, marker 3", 10.3, 8, "Bank path, then the fishing stand", "Deep at the stand: do not wade"),
-        ("Reed landing", 12.1, 9, "Boat landing, left bank", "Slippery boards"),
-        ("Miller's lane", 13.6, 7, "End of the lane, gravel beach", ""),
-        ("Heron pool", 15.3, 11, "Path from the lay-by", "Deep pool: read from the bank"),
-        ("Stone barn", 17.1, 8, "Track past the barn, ladder at the wall", "Ladder; hold on with both hands"),
-        ("Chapel stairs", 18.8, 9, "Stone stairs by the chapel", "Slippery stone"),
-        ("Ferry house", 20.4, 8, "Old ferry ramp", "Boat traffic"),
-        ("Gravel bar", 22.2, 10, "Across the gravel bar", "Fast water at the outer bank"),
-        ("Teal bridge", 25.2, 12, "From the bridge, upstream rail", "Road bridge: high-visibility clothing"),
-        ("Below Willow weir", 27.6, 9, "Right bank, 500 m below the weir", "Keep clear of the weir"),
-        ("Sluice green", 28.9, 6, "Lawn on the left bank", ""),
-        ("Lower bridge", 31.4, 8, "Steps beside the bridge", "Soft bed"),
-    )
-]  # fmt: skip
-STATION_PLACES = (
-    ("U1", "Alder bridge"), ("D1", "Works fence"), ("D2", "Meadow gate"), ("D3", "Poplar footbridge"),
-    ("D4", "Long straight, marker 3"), ("D5", "Miller's lane"), ("D6", "Stone barn"), ("D7", "Ferry house"),
-    ("D8", "Teal bridge"), ("D9", "Sluice green"),
-)  # fmt: skip
-WHERE = {row["name"]: row["distance_km"] for row in ACCESS}
-STATIONS = [
-    {"code": code, "distance_km": WHERE[place], "access": place, "state": "planned"} for code, place in STATION_PLACES
+__all__ = [
+    "ELEVATION_M",
+    "PLAN",
+    "READ_SD_MG_L",
+    "RELEASE",
+    "SLIPS",
+    "STATIONS",
+    "STATION_PLACES",
+    "SURVEY",
+    "TRUE_BOD",
+    "TRUE_FACTORS",
+    "WHERE",
+    "files",
+    "readings",
+    "true_river",
 ]
-PLAN = {"reaches": REACHES, "waters": WATERS, "weirs": WEIRS, "access": ACCESS, "stations": STATIONS, "basis": BASIS}
 
-# station, hours late for the parcel of the plan, position, replicate, further values written on the sheet
-VISITS = (
-    ("U1", None, "centre", False, {"pressure": 733, "pressure_source": "barometer"}),
-    ("D1", 0.10, "left", False, {"conductance_us_cm": 378, "shift": 0.25}),
-    ("D1", 0.15, "centre", False, {"conductance_us_cm": 436}),
-    ("D1", 0.20, "right", False, {"conductance_us_cm": 517, "shift": -0.35}),
-    ("D2", 1.42, "centre", False, {"pressure": 760, "pressure_source": "barometer"}),
-    ("D2", 1.50, "centre", True, {"pressure": 733, "pressure_source": "barometer"}),
-    ("D3", 0.30, "centre", False, {"percent_off": 12}),
-    ("D4", 0.25, "centre", False, {"pressure": 732, "pressure_source": "meter"}),
-)
-
-
-def true_river():
-    """Return the river as it was on the day: the plan's, with other rates, slower water and more BOD."""
-    river = predict_plan(PLAN, ELEVATION_M).river
-    reaches = tuple(
-        replace(reach, **{name: getattr(reach, name) * factor for name, factor in TRUE_FACTORS.items()})
-        for reach in river.reaches
-    )
-    inflows = tuple(replace(one, water=_stronger(one.water)) for one in river.inflows)
-    return replace(river, head=_stronger(river.head), reaches=reaches, inflows=inflows)
-
-
-def _stronger(water):
-    return replace(water, cbod_mg_l=water.cbod_mg_l * TRUE_BOD)
-
-
-def readings():
-    """Return the readings written down so far, in the order they were taken."""
-    plan = predict_plan(PLAN, ELEVATION_M)
-    river, rng = true_river(), np.random.default_rng(20260812)
-    return [_reading(plan, river, rng, *visit) for visit in VISITS]
-
-
-def _reading(plan, river, rng, code, late_h, position, replicate, sheet):
-    km = WHERE[dict(STATION_PLACES)[code]]
-    truth = predict(river, km)
-    after_h = -0.6 if late_h is None else plan.at(km).travel_time_h + late_h
-    oxygen = round(float(truth.do_mg_l + rng.normal(0, READ_SD_MG_L)) + sheet.get("shift", 0.0), 2)
-    temp = round(float(truth.water_temp_c + rng.normal(0, 0.08)), 1)
-    percent = float(percent_saturation(oxygen, temp, river.pressure_mmhg)) + sheet.get("percent_off", 0)
-    taken_at = (RELEASE + timedelta(hours=after_h)).replace(second=0, microsecond=0)
-    kept = ("conductance_us_cm", "pressure", "pressure_source")
-    return {
-        "station": code, "taken_at": taken_at, "do_mg_l": oxygen, "water_temp_c": temp,
-        "depth_m": round(0.62 + float(rng.uniform(0, 0.2)), 2), "do_percent": round(percent), "percent_basis": "local",
-        "position": position, "meter": "Meter A", "replicate": replicate,
-        **{key: sheet[key] for key in kept if key in sheet},
-    }  # fmt: skip
+HERE = Path(__file__).resolve().parent
 
 
 def files():
-    """Return every file of the demo survey: a dictionary from name to text."""
-    show = Show(time_zone=SURVEY["time_zone"])
+    """Return every file of the demo: a dictionary from name to text."""
+    show = Show(time_zone=today.SURVEY["time_zone"])
     texts = {f"{key}.csv": write_table(rows, PLAN_TABLES[key], show) for key, rows in PLAN.items()}
-    texts["readings.csv"] = write_table(readings(), READINGS, show)
-    texts["survey.csv"] = "".join(f'{key},"{value}"\r\n' for key, value in {"fact": "value", **SURVEY}.items())
+    for folder, survey in (("", today), ("finished/", finished)):
+        texts[f"{folder}survey.csv"] = facts(survey.SURVEY)
+        texts |= {f"{folder}{name}.csv": table(rows) for name, rows in survey.rows().items()}
     return texts
 
 

@@ -31,7 +31,7 @@ def test_a_day_from_the_sign_in_to_the_dataset(phone_of, tmp_path):
 
 
 def _reads_d5_with_a_weather_reports_pressure(page):
-    page.get_by_role("link", name="Field sheet", exact=True).tap()
+    page.get_by_role("link", name="Field sheet", exact=True).first.tap()
     page.get_by_role("link", name="Read at D5").tap()
     page.get_by_label("Oxygen").fill("4,05")
     page.get_by_label("Water temperature").fill("20,1")

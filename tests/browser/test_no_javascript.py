@@ -18,7 +18,7 @@ def test_a_reading_is_saved_and_checked(browser, demo):
     context = browser.new_context(base_url=demo, java_script_enabled=False, **PHONE)
     page = context.new_page()
     sign_in(page, demo, "crew")
-    page.get_by_role("link", name="Field sheet", exact=True).tap()
+    page.get_by_role("link", name="Field sheet", exact=True).first.tap()
     page.get_by_role("link", name="Read here, D7").tap()
     page.get_by_label("Oxygen").fill("5,1")
     page.get_by_label("Water temperature").fill("20")
