@@ -4,7 +4,7 @@ from datetime import UTC, datetime, timedelta
 import pytest
 
 from tests.webapp.plans import put_plan
-from webapp.models import Meter, MeterCheck, ReadingEvent, Visit, VisitEntry, new_id
+from webapp.models import Meter, MeterCheck, ReadingEvent, Survey, Visit, VisitEntry, new_id
 from webapp.plan.prediction import prediction_of
 from webapp.plan.queries import current_plan, stations_of
 from webapp.readings.judging import judgement_of
@@ -165,9 +165,10 @@ def test_a_section_whose_mean_is_far_from_the_mass_balance_is_not_mixed(day):
 def test_a_request_that_rolls_back_leaves_what_is_kept_readable(day):
     check = day.check(0, "as_found", 8.22)
     reading = day.read(3)
-    kept = day.judgement()
+    kept, survey_id = day.judgement(), day.survey.id
     day.db.rollback()
     day.db.close()
+    day.survey = day.db.get(Survey, survey_id)
     assert day.judgement() is kept
     assert kept.by_id[reading].check_before.check.id == check
     assert kept.checks[0].check.meter.name == "Meter A"
