@@ -86,7 +86,8 @@ def ask(db, survey_id, reading_id, question, based_on, person):
 def answer(db, survey_id, reading_id, words, based_on, person):
     """Answer the open question about a reading, and return it. Raises NotFound, NotAllowed, Conflict."""
     reading = hold(db, survey_id, reading_id)
-    if not person.may("log") or final(reading).reviewer_id == person.id:
+    now = final(reading)
+    if not person.may("log") or (now.review == ASKED and now.reviewer_id == person.id):
         raise NotAllowed("You asked this question yourself. The crew answers it.")
     return _decide(db, reading, _said("answered", words, person), based_on, "question answered")
 
