@@ -2,7 +2,6 @@
 // seconds and the temperature then. They stand as text in the form, so that all of them can be seen and corrected.
 const SECOND = 1000;
 let ticking;
-let awake;
 
 const timer = () => document.querySelector("[data-soak]");
 const began = (it) => Number(it.form.elements.soak_began.value);
@@ -14,33 +13,19 @@ function parts() {
   return box && { box, form: box.closest("form"), says: box.querySelector("[data-soak-says]") };
 }
 
+// What was typed may come back to the form at any time: every second looks whether a probe is in.
 function tick() {
   const it = parts();
-  const shown = it?.box.querySelector("[data-soak-seconds]");
-  if (!it || !began(it)) return stop();
-  shown.textContent = `${secondsOf(it)} s since the probe went in`;
+  if (!it || !began(it)) return;
+  it.box.querySelector("[data-soak-seconds]").textContent = `${secondsOf(it)} s since the probe went in`;
 }
 
-function stop() {
-  clearInterval(ticking);
-  ticking = undefined;
-  awake?.release().catch(() => {});
-  awake = undefined;
-}
-
-// The screen stays lit while the probe soaks, where the phone allows it.
-function run() {
-  if (ticking) return;
-  tick();
-  ticking = setInterval(tick, SECOND);
-  navigator.wakeLock?.request("screen").then((lock) => { awake = lock; }, () => {});
-}
-
+// The screen stays lit while the probe soaks, where the phone allows it; leaving the page lets it go dark.
 function start(it) {
   it.form.elements.soak_began.value = Date.now();
   changed(it.form.elements.soak_began);
-  stop();
-  run();
+  navigator.wakeLock?.request("screen").catch(() => {});
+  tick();
   it.form.elements.do_mg_l.focus();
 }
 
@@ -68,9 +53,10 @@ function take(it) {
 
 function show() {
   const it = parts();
-  if (!it) return stop();
+  if (!it) return;
   it.box.hidden = false;
-  if (began(it)) run();
+  ticking ??= setInterval(tick, SECOND);
+  tick();
 }
 
 document.addEventListener("click", ({ target }) => {

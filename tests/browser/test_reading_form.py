@@ -1,0 +1,90 @@
+"""The reading form under a thumb: how many taps a station takes, and a timed reading."""
+
+from datetime import UTC, datetime, timedelta
+
+import pytest
+from playwright.sync_api import expect
+
+from tests.browser.conftest import survey_address
+
+MOST_TAPS = 12
+COUNT = """document.addEventListener("touchstart", () => {
+  sessionStorage.taps = Number(sessionStorage.taps ?? 0) + 1;
+}, { capture: true, passive: true });"""
+
+
+@pytest.fixture
+def thumb(page_as):
+    """A crew's phone with the field sheet open, which from there on counts every touch of the page."""
+    page = page_as("crew")
+    page.add_init_script(COUNT)
+    page.goto(survey_address(page) + "/sheet")
+    page.evaluate("sessionStorage.taps = 0")
+    page.taps = lambda: int(page.evaluate("sessionStorage.taps"))
+    return page
+
+
+def type_into(page, label, text):
+    """Tap a box and type on the phone's keyboard, which is no touch of the page."""
+    page.get_by_label(label, exact=True).tap()
+    page.keyboard.type(text)
+
+
+def goes_on(page, code):
+    """Save, see the check, and tap on to the next station's form."""
+    page.get_by_role("button", name="Save reading").tap()
+    expect(page.locator("#reading")).to_contain_text("Saved on the server")
+    expect(page.locator("#reading h1")).to_contain_text(f"{code},")
+    page.get_by_role("link", name="Next: ").tap()
+    page.get_by_role("heading", name="Reading at ").wait_for()
+
+
+def test_a_station_takes_at_most_twelve_taps_from_the_sheet_to_the_next_form(thumb):
+    thumb.locator("#read-D8").tap()
+    type_into(thumb, "Oxygen", "5,9")
+    type_into(thumb, "Water temperature", "20,1")
+    goes_on(thumb, "D8")
+    assert thumb.taps() <= MOST_TAPS
+    assert thumb.taps() == 5
+    assert thumb.console_errors == []
+
+
+def test_a_timed_reading_of_five_values_takes_at_most_twelve_taps(thumb):
+    began = datetime.now(UTC)
+    thumb.locator("#read-D8").tap()
+    thumb.get_by_text("Timed reading").tap()
+    thumb.clock.set_fixed_time(began)
+    thumb.get_by_role("button", name="Start").tap()
+    for seconds, value in ((65, "6,1"), (100, "6,3"), (135, "6,2"), (170, "6,2"), (205, "6,2")):
+        thumb.clock.set_fixed_time(began + timedelta(seconds=seconds))
+        thumb.keyboard.type(value)
+        thumb.get_by_role("button", name="Take value").tap()
+    assert thumb.get_by_label("Values, one after the other").input_value().split() == [
+        "6,1@65", "6,3@100", "6,2@135", "6,2@170", "6,2@205"
+    ]  # fmt: skip
+    type_into(thumb, "Water temperature", "20,1")
+    thumb.get_by_role("button", name="Save reading").tap()
+    expect(thumb.locator("#reading")).to_contain_text("Median of 5 values, 6.10 to 6.30 mg/L at the end: stable.")
+    assert thumb.locator(".oxygen-now").inner_text().startswith("6.20")
+    thumb.get_by_role("link", name="Next: ").tap()
+    thumb.get_by_role("heading", name="Reading at ").wait_for()
+    assert thumb.taps() <= MOST_TAPS
+
+
+def test_enter_takes_a_value_while_the_clock_runs_and_says_what_is_missing(thumb):
+    thumb.locator("#read-D9").tap()
+    thumb.get_by_text("Timed reading").tap()
+    thumb.get_by_role("button", name="Take value").tap()
+    expect(thumb.get_by_text("Enter the oxygen that the meter shows")).to_be_visible()
+    thumb.get_by_label("Water temperature").fill("20,3")
+    thumb.get_by_role("button", name="Start").tap()
+    thumb.keyboard.type("5,1")
+    thumb.keyboard.press("Enter")
+    expect(thumb.get_by_text("1 value: 5,1")).to_be_visible()
+    assert thumb.get_by_label("Values, one after the other").input_value().startswith("5,1@")
+    assert thumb.get_by_label("Values, one after the other").input_value().endswith("/20,3")
+    assert thumb.get_by_label("Oxygen", exact=True).input_value() == ""
+    thumb.reload()
+    expect(thumb.get_by_label("Values, one after the other")).to_have_value("5,1@0/20,3")
+    expect(thumb.get_by_text("s since the probe went in")).to_be_visible()
+    thumb.get_by_role("button", name="Begin afresh").tap()
