@@ -10,13 +10,15 @@ from datetime import timedelta
 import pandas
 import pytest
 from frictionless import Package
+from hypothesis import given
+from hypothesis import strategies as st
 
 from tests.conftest import SURVEY_FORM
 from tests.webapp.plans import PLAN, put_plan
 from tests.webapp.sheets import TAKEN, correct, put_readings, set_aside
 from webapp.dataset import service
-from webapp.dataset.fields import decimal, harmless
-from webapp.dataset.readings import rounded
+from webapp.dataset.fields import FORMULA_STARTS, PLAIN_NUMBER, as_written, decimal, exact, harmless
+from webapp.dataset.summary import rounded
 from webapp.models import Reading, Survey
 from webapp.plan.queries import current_plan, stations_of
 
@@ -77,7 +79,7 @@ def test_every_number_column_of_readings_is_numeric_to_pandas(files, tmp_path):
     schema = next(one["schema"] for one in package["resources"] if one["name"] == "readings")
     readings = pandas.read_csv(tmp_path / "package" / "readings.csv")
     numeric = [field["name"] for field in schema["fields"] if field["type"] == "number"]
-    assert len(numeric) == 3 * 8 + 1 + 3 + 10
+    assert len(numeric) == 3 * 9 + 1 + 2 + 1 + 2 + 3 + 10  # layers, drift, spread, limit, place across, place, derived
     assert not [name for name in numeric if not pandas.api.types.is_numeric_dtype(readings[name])]
 
 
@@ -91,7 +93,8 @@ def test_any_change_makes_another_version(browser_as, filled, db, people):
     correct(db, filled, people, reading.id, 8.0, based_on=len(reading.events))
     after = service.dataset_of(db, filled)
     assert before.version != after.version
-    assert int(after.version.split("-")[0]) == int(before.version.split("-")[0]) + 1
+    assert [one.version.split("-")[0] for one in (before, after)] == ["draft", "draft"]
+    assert int(after.version.split("-")[1]) == int(before.version.split("-")[1]) + 1
 
 
 def test_checksums_are_those_of_the_files(files):
@@ -158,9 +161,23 @@ def test_text_that_looks_like_a_formula_is_neutralised(files):
     assert reading_at(files, "D3")["note"] == "'-"
 
 
-@pytest.mark.parametrize("text", ["=1+1", "+SUM(A1)", "-2+3", "@now", "\t=1", "＝1", "-", "+49 650"])
+@pytest.mark.parametrize("text", ["=1+1", "+SUM(A1)", "-2+3", "@now", "\t=1", "\n=1", "＝1", "-", "+49 650", "'a"])
 def test_formula_starts_get_an_apostrophe(text):
     assert harmless(text).startswith("'")
+
+
+@given(st.text())
+def test_any_text_comes_back_as_it_was_written(text):
+    cell = harmless(text)
+    assert as_written(cell) == text.replace("\x00", "")
+    assert not cell.startswith(FORMULA_STARTS) or PLAIN_NUMBER.fullmatch(cell)
+
+
+@given(st.floats(allow_nan=False, allow_infinity=False))
+def test_any_stored_number_reads_back_as_the_same_without_an_exponent(value):
+    digits = exact(value)
+    assert float(digits) == value
+    assert "e" not in digits.lower() and PLAIN_NUMBER.fullmatch(digits)
 
 
 @pytest.mark.parametrize("text", ["-0.3", "+8,1", "-.5", "8.1", "D3", "a=b", ""])
@@ -255,16 +272,29 @@ def test_file_name_is_safe_everywhere(name, slug):
     assert service.slug(name) == slug
 
 
-@pytest.mark.parametrize("note", ['5" pipe, "mud"', "a\r\nb", "a\rb\n", "ä;ß,漢", "\x00x", "\x1a", "NaN", " padded "])
-def test_awkward_text_survives_and_the_package_stays_valid(db, survey, people, tmp_path, note):
+def test_awkward_text_survives_and_the_package_stays_valid(db, survey, people, tmp_path):
+    notes = [
+        '5" pipe, "mud"',
+        "a\r\nb",
+        "a\rb\n",
+        "ä;ß,漢",
+        "\x1a",
+        "NaN",
+        " padded ",
+        "'quoted'",
+        "''",
+        "=1",
+        "'=1",
+        "\n-",
+    ]
     ids = put_readings(db, survey, people)
-    set_aside(db, survey, people, ids["D3"], reason=note)
+    for place, note in enumerate(notes):
+        correct(db, survey, people, ids["D3"], 4.0 + place, based_on=place, reason=note)
     dataset = service.dataset_of(db, survey)
     for name, content in dataset.files.items():
         (tmp_path / name).write_bytes(content)
     assert Package(str(tmp_path / "datapackage.json")).validate().valid
-    (decision,) = rows_in(dataset.files, "corrections.csv")
-    assert decision["reason"] == note.replace("\r\n", "\n").replace("\r", "\n").replace("\x00", "")
+    assert [as_written(row["reason"]) for row in rows_in(dataset.files, "corrections.csv")] == notes
 
 
 def test_station_left_out_of_the_newest_plan_is_still_listed(db, filled, people):

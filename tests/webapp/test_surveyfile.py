@@ -102,7 +102,7 @@ def test_imported_twice_it_adds_nothing(here, there, filled, people):
     again = servers.imported(there, content, people["office"].id)
     assert (again.total, again.differences, again.notes) == (0, (), ())
     with there.reading() as db:
-        assert len(db.scalars(select(History).where(History.what == tables.STAYS_HERE)).all()) == 1
+        assert len(db.scalars(select(History).where(History.what == tables.FILE_IMPORTED)).all()) == 1
 
 
 def test_a_grown_copy_merged_back_adds_only_what_is_new(here, there, filled, people):

@@ -7,18 +7,21 @@ import json
 import math
 import re
 from dataclasses import dataclass, field
-from datetime import datetime
+from datetime import UTC, datetime
 from decimal import Decimal
+from functools import cached_property
 from zoneinfo import ZoneInfo
 
 from webapp.display import QUANTITIES
 
 PLAIN_NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)")
-FORMULA_STARTS = tuple("=+-@\t\r\uff1d\uff0b\uff0d\uff20")
+FORMULA_STARTS = tuple("=+-@\t\r\n\uff1d\uff0b\uff0d\uff20")
+APOSTROPHE = "'"
 # Plain numbers that have a unit all the same.
 _UNITS = {"latitude": "deg", "longitude": "deg"}
 _ENDINGS = {"min": "min", "h": "h"}
 _DECIMALS = 9
+_WHOLE = datetime(2000, 1, 1, tzinfo=UTC)
 _TYPES = {"text": "string", "choice": "string", "yes_no": "boolean", "time": "datetime"}
 
 
@@ -34,13 +37,13 @@ class Field:
     constraints: dict = field(default_factory=dict)
     choices: dict = field(default_factory=dict)
 
-    def descriptor(self):
-        """Return the field as Table Schema writes it."""
+    def descriptor(self, fine=False):
+        """Return the field as Table Schema writes it; fine says that its times are told to the microsecond."""
         parts = {"name": self.name, "type": self.type, "title": self.title}
         if says := self.description():
             parts["description"] = says
         if self.type == "datetime":
-            parts["format"] = "%Y-%m-%dT%H:%M:%S%z"
+            parts["format"] = "%Y-%m-%dT%H:%M:%S.%f%z" if fine else "%Y-%m-%dT%H:%M:%S%z"
         if self.unit:
             parts["unit"] = self.unit
         constraints = dict(self.constraints)
@@ -66,6 +69,12 @@ class DataTable:
     rows: list
     foreign: dict = field(default_factory=dict)
 
+    @cached_property
+    def fine(self):
+        """Return the names of the time columns that need more than seconds: such a column is told so all through."""
+        names = [one.name for one in self.fields if one.type == "datetime"]
+        return {name for name in names if any((row.get(name) or _WHOLE).microsecond for row in self.rows)}
+
 
 def text(name, title, says="", **more):
     """Return a text field."""
@@ -80,6 +89,11 @@ def number(name, title, unit="", says="", **more):
 def whole(name, title, says="", **more):
     """Return a field of whole numbers."""
     return Field(name, title, "integer", "", says, **more)
+
+
+def yes_no(name, title, says="", **more):
+    """Return a field that is true or false."""
+    return Field(name, title, "boolean", "", says, **more)
 
 
 def moment(name, title, says="", **more):
@@ -112,39 +126,66 @@ def unit_of(column):
     return _UNITS.get(column.key) or _ENDINGS.get(column.key.rsplit("_", 1)[-1], "")
 
 
-def written(value, zone):
-    """Return a value as it stands in a CSV cell; zone is the survey's, for times."""
+def written(value, zone, timespec="seconds"):
+    """Return a value as it stands in a CSV cell; zone is the survey's and timespec how fine, for times."""
     if value is None or value == "":
         return ""
+    if isinstance(value, str):
+        return harmless(value)
     if isinstance(value, bool):
         return "true" if value else "false"
     if isinstance(value, datetime):
-        return iso(value, zone)
+        return iso(value, zone, timespec)
     if isinstance(value, int):
         return str(value)
     if isinstance(value, float):
-        return decimal(value)
+        return exact(value)
     if isinstance(value, Decimal):
         return f"{value:f}"
-    return harmless(value if isinstance(value, str) else json.dumps(value, ensure_ascii=False, sort_keys=True))
+    return harmless(as_json(value))
+
+
+def as_json(value):
+    """Return an object or a list as JSON: the same value, the same text."""
+    return json.dumps(value, ensure_ascii=False, sort_keys=True, allow_nan=False)
+
+
+def exact(value):
+    """Return the shortest digits that read back as the same number, with a decimal point and without an exponent."""
+    if not math.isfinite(value):
+        return ""
+    digits = repr(value)
+    if "e" in digits:
+        digits = f"{Decimal(digits):f}"
+    digits = digits.removesuffix(".0")
+    return "0" if digits == "-0" else digits
 
 
 def decimal(value):
-    """Return a number with a decimal point, without an exponent and without the digits that conversion invents."""
+    """Return a computed number with a decimal point and without the digits that conversion invents."""
     if not math.isfinite(value):
         return ""
     digits = f"{round(value, _DECIMALS):.{_DECIMALS}f}".rstrip("0").rstrip(".")
     return "0" if digits == "-0" else digits
 
 
-def iso(instant, zone):
-    """Return an instant in ISO 8601, to the second, with the offset the zone had then."""
-    return instant.astimezone(ZoneInfo(zone)).isoformat(timespec="seconds") if instant else ""
+def iso(instant, zone, timespec="seconds"):
+    """Return an instant in ISO 8601, with the offset the zone had then."""
+    return instant.astimezone(ZoneInfo(zone)).isoformat(timespec=timespec) if instant else ""
 
 
 def harmless(words):
-    """Return text that no spreadsheet takes for a formula: an apostrophe before it, unless it is a plain number."""
-    plain = words.replace("\r\n", "\n").replace("\r", "\n").replace("\x00", "")
-    if plain.startswith(FORMULA_STARTS) and not PLAIN_NUMBER.fullmatch(plain):
-        return "'" + plain
+    """Return text that no spreadsheet takes for a formula.
+
+    An apostrophe goes before a text that begins like a formula and is no plain number, and before one that begins with
+    an apostrophe itself, so that as_written can take exactly one away again.
+    """
+    plain = words.replace("\x00", "")
+    if plain.startswith(APOSTROPHE) or (plain.startswith(FORMULA_STARTS) and not PLAIN_NUMBER.fullmatch(plain)):
+        return APOSTROPHE + plain
     return plain
+
+
+def as_written(cell):
+    """Return the text that a cell was before harmless."""
+    return cell.removeprefix(APOSTROPHE)

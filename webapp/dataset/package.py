@@ -8,6 +8,8 @@ import zipfile
 
 from webapp.dataset.fields import written
 
+# Changes when an import of this Bankside could not read what an older one wrote, or the other way round.
+LAYOUT = 2
 _ZIP_EPOCH = (1980, 1, 1, 0, 0, 0)
 
 
@@ -15,9 +17,9 @@ def csv_bytes(table, zone):
     """Return a table as RFC 4180 CSV in UTF-8: a header, CRLF, quotes only where needed."""
     out = io.StringIO(newline="")
     writer = csv.writer(out, lineterminator="\r\n")
-    names = [field.name for field in table.fields]
-    writer.writerow(names)
-    writer.writerows([written(row.get(name), zone) for name in names] for row in table.rows)
+    columns = [(one.name, "microseconds" if one.name in table.fine else "seconds") for one in table.fields]
+    writer.writerow([name for name, _ in columns])
+    writer.writerows([written(row.get(name), zone, timespec) for name, timespec in columns] for row in table.rows)
     return out.getvalue().encode("utf-8")
 
 
@@ -41,7 +43,7 @@ def descriptor(about, tables, files):
 
 def _resource(table, content):
     schema = {
-        "fields": [field.descriptor() for field in table.fields],
+        "fields": [field.descriptor(field.name in table.fine) for field in table.fields],
         "missingValues": [""],
         "primaryKey": list(table.key),
     }

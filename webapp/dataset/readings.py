@@ -1,20 +1,46 @@
-"""The tables of a dataset that say what was read: readings, decisions about them, and a wide table for people."""
+"""The tables of a dataset that say what was read: readings, and decisions about them."""
 
-from decimal import ROUND_HALF_EVEN, Decimal
+from dataclasses import replace
 
-from webapp.dataset.fields import DataTable, Field, decimal, from_column, moment, number, text, unit_of, whole
-from webapp.dataset.reasons import QUALITIES, reasons_of
+from webapp.dataset.fields import DataTable, from_column, number, text, unit_of, whole
+from webapp.dataset.keeping import foreign_of, kept_rows, kept_table
+from webapp.dataset.kept import kept
+from webapp.dataset.line import rounded_off
 from webapp.readings.columns import READINGS
+from webapp.readings.quality_words import QUALITIES
 from webapp.review.numbers import CORRECTABLE, as_typed
 
 _AS_TYPED = "In the unit beside it, with the decimal mark that was typed."
 _TYPED = {
     "pressure_mmhg": f"{_AS_TYPED} A weather report's is still reduced to sea level here, and no longer in the next.",
     "velocity_m_s": f"{_AS_TYPED} A float's is that of the surface here, and the mean in the next.",
+    "do_mg_l": f"{_AS_TYPED} Of several raw values, their median.",
 }
-_KINDS = {"corrected": "a number was corrected", "set_aside": "it is not used", "restored": "it is used again"}
-_WORDS = ("position", "percent_basis", "pressure_source", "velocity_method", "meter", "replicate", "note")
-_PLACE = ("latitude", "longitude", "position_radius_m")
+KINDS = {
+    "corrected": "a number was corrected",
+    "set_aside": "it is not used",
+    "restored": "it is used again",
+    "kept": "a reviewer looked and found it good",
+    "asked": "a reviewer asked the crew",
+    "answered": "the crew answered",
+    "drift": "it was corrected for the drift of its meter",
+    "drift_undone": "the correction for drift was taken back",
+}
+STATUSES = {
+    "draft": "nobody but its author has decided about it",
+    "reviewed": "a reviewer has",
+    "approved": "the survey is approved",
+}
+BRACKETS = {
+    "bracketed": "between two passing checks of its meter",
+    "drift": "the check after it asks for a correction",
+    "not_reportable": "the check after it is too far off",
+    "no_check_before": "no check of its meter before it",
+    "check_before_failed": "the check before it did not pass",
+    "no_check_after": "no check of its meter after it",
+    "check_after_failed": "the check after it did not pass",
+}
+LAYERED = {**CORRECTABLE, "ph": READINGS.column("ph")}
 _DERIVED = (
     ("distance_km", "Distance below the outfall", "km", "In the newest plan; negative above the outfall."),
     ("saturation_mg_l", "Saturation", "mg/L", "At the temperature, pressure and conductance measured."),
@@ -32,79 +58,160 @@ _DERIVED = (
     ("predicted_high_mg_l", "High end of the band", "mg/L", ""),
     ("difference_mg_l", "Measured less predicted", "mg/L", ""),
 )
+# Columns of READINGS whose limits and choices hold for what is kept.
+_LIMITED = (
+    "position",
+    "percent_basis",
+    "pressure_source",
+    "velocity_method",
+    "distance_left_m",
+    "latitude",
+    "longitude",
+    "position_radius_m",
+)
 
 
-def layers_of(name):
-    """Return the fields of one number: as typed, raw, corrected, final."""
-    column = CORRECTABLE[name]
-    unit, title = unit_of(column), column.label
+def _stored_fields(zone_says):
+    """Return the field of each kept column of a reading by its name in the dataset."""
+    fields = {one.name: one for one in kept()["reading"].fields.values()}
+    for name in _LIMITED:
+        column = from_column(READINGS.column(name))
+        fields[name] = replace(fields[name], constraints=column.constraints, choices=column.choices)
+    for name in ("station_code", "taken_at"):
+        fields[name] = replace(fields[name], constraints={"required": True})
+    for name in ("taken_at", "received_at"):
+        fields[name] = replace(fields[name], says=zone_says)
+    return fields
+
+
+def layers_of(name, stored):
+    """Return the fields of one number: as typed, raw, corrected, for oxygen also without drift, and final."""
+    column = LAYERED[name]
+    unit, title = "[pH]" if name == "ph" else unit_of(column), column.label
     # A percent typed alone gives oxygen beyond what a form takes for mg/L, so oxygen has no limits here.
     limits = {} if name == "do_mg_l" else from_column(column).constraints
+    drift = number(
+        "do_mg_l_drift_corrected", "Oxygen, corrected for drift", unit, "Empty where the meter's drift was not."
+    )
     return (
         text(f"{name}_as_typed", f"{title}, as typed", _TYPED.get(name, _AS_TYPED)),
         text(f"{name}_typed_unit", f"{title}, unit typed in", "UCUM code."),
-        number(f"{name}_raw", f"{title}, as recorded", unit, constraints=limits),
+        replace(stored[f"{name}_raw"], constraints=limits, unit=unit),
         number(f"{name}_corrected", f"{title}, corrected", unit, "Empty where nothing was.", constraints=limits),
+        *((drift,) if name == "do_mg_l" else ()),
         number(f"{name}_final", f"{title}, to use", unit, constraints=limits),
     )
 
 
 def readings_table(lines, zone_says):
     """Return one row per reading, with raw, corrected and final numbers side by side."""
+    stored = _stored_fields(zone_says)
+    first = ("reading_id", "station_code", "taken_at", "received_at", "author", "plan_version")
+    layered = [field for name in LAYERED for field in layers_of(name, stored)]
+    used = {*first, *(field.name for field in layered)}
     fields = (
-        text("reading_id", "Reading's id", "The same in every export.", constraints={"required": True}),
-        text("station_code", "Station", constraints={"required": True}),
-        moment("taken_at", "Time at the water", zone_says, constraints={"required": True}),
-        moment("received_at", "Stored on the server", zone_says),
-        text("author", "Who recorded it"),
-        whole("plan_version", "Plan version at the time"),
-        text("quality", "Quality", choices=QUALITIES),
-        text("reasons", "Reasons", "Plain words, separated by semicolons; empty where there is none."),
-        text("findings", "Checks that found it odd", "Separated by semicolons."),
-        text("set_aside_reason", "Why it is set aside"),
-        text("do_censor", "Oxygen is", choices={"none": "a number", "less_than": "below the reporting limit"}),
-        number("do_reporting_limit_mg_l", "Reporting limit of oxygen", "mg/L", "do_mg_l_final is empty below it."),
-        text("do_source", "Oxygen comes from", choices={"read": "the meter's mg/L", "percent": "the meter's percent"}),
-        *(field for name in CORRECTABLE for field in layers_of(name)),
-        *(from_column(READINGS.column(key)) for key in (*_WORDS, *_PLACE)),
+        *(stored[name] for name in first),
+        whole("visit_no", "Visit", "Counts the occupations of the station."),
+        text("visit_id", "Visit's id", "Empty where nobody opened one."),
+        text("replicate_of", "Repeats", "Id of the reading that it repeats."),
+        *_JUDGED_FIELDS,
+        *layered,
+        *(field for name, field in stored.items() if name not in used),
         *(number(name, title, unit, says) for name, title, unit, says in _DERIVED),
     )
     says = (
-        "One row for each reading. Raw is what was recorded, corrected what it was corrected to, final what to use. "
-        "Computed numbers rest on the final ones, and on the measured oxygen where do_censor says less_than."
+        "One row for each reading. Raw is what was recorded, corrected what it was corrected to, drift_corrected what "
+        "that is without the drift of the meter, final what to use. Computed numbers rest on the final ones, and on "
+        "the measured oxygen where do_censor says less_than."
     )
-    foreign = {"station_code": ("stations", "code"), "plan_version": ("plan_versions", "plan_version")}
+    foreign = {
+        **foreign_of("reading"),
+        "visit_id": ("visits", "visit_id"),
+        "replicate_of": ("readings", "reading_id"),
+        "check_before": ("meter_checks", "check_id"),
+        "check_after": ("meter_checks", "check_id"),
+        "drift_event_id": ("corrections", "event_id"),
+    }
     return DataTable("readings", "Readings", says, fields, ("reading_id",), [_row(one) for one in lines], foreign)
 
 
+_JUDGED_FIELDS = (
+    text("status", "Status", choices=STATUSES),
+    text("reviewed_by", "Reviewed by"),
+    text("quality", "Quality", choices=QUALITIES),
+    text("reasons", "Reasons", "Plain words, separated by semicolons; empty where there is none: see reasons.csv."),
+    text("findings", "Checks that find it odd today", "Separated by semicolons."),
+    text("set_aside_reason", "Why it is set aside"),
+    text("bracket", "Between two checks of its meter", choices=BRACKETS),
+    text("check_before", "Check before it", "Id of the meter check."),
+    text("check_after", "Check after it", "Id of the meter check."),
+    text("drift_grade", "Grade of the check after it", "excellent, good, fair, poor or do not report."),
+    text("correction_ids", "Corrections", "Ids in corrections.csv, separated by semicolons."),
+    text("drift_event_id", "Correction for drift", "Its id in corrections.csv."),
+    whole("n", "Raw values it is the median of"),
+    number("spread_mg_l", "Spread of the raw values", "mg/L", "Highest less lowest."),
+    number(
+        "do_uncertainty_mg_l",
+        "How far oxygen may be off",
+        "mg/L",
+        "The larger error of the checks before and after, and half the spread, added in quadrature; empty where one "
+        "check is missing or drift was corrected.",
+    ),
+    text("do_censor", "Oxygen is", choices={"none": "a number", "less_than": "below the reporting limit"}),
+    number("do_reporting_limit_mg_l", "Reporting limit of oxygen", "mg/L", "do_mg_l_final is empty below it."),
+    text("do_source", "Oxygen comes from", choices={"read": "the meter's mg/L", "percent": "the meter's percent"}),
+)
+
+
 def _row(line):
-    reading, final = line.reading, line.final
-    quality, reasons = reasons_of(line)
-    row = {
-        "reading_id": reading.id,
-        "station_code": final.station_code,
-        "taken_at": final.taken_at,
-        "received_at": reading.received_at,
-        "author": reading.author.name,
-        "plan_version": line.plan_number,
-        "quality": quality,
-        "reasons": ";".join(reasons),
-        "findings": ";".join(line.findings),
-        "set_aside_reason": final.reason,
-        "do_censor": line.censor,
-        "do_reporting_limit_mg_l": line.limit_mg_l if line.censor == "less_than" else None,
-        "do_source": _do_source(reading),
-    }
+    final, row = line.final, dict(line.stored)
     corrected = {event.field for event in final.corrections}
-    for name in CORRECTABLE:
-        row[f"{name}_as_typed"], row[f"{name}_typed_unit"] = as_typed(reading, name)
-        row[f"{name}_raw"] = final.raw[name]
+    for name in LAYERED:
+        row[f"{name}_as_typed"], row[f"{name}_typed_unit"] = as_typed(line.reading, name)
         row[f"{name}_corrected"] = getattr(final, name) if name in corrected else None
         row[f"{name}_final"] = getattr(final, name)
-    if line.censor == "less_than":
-        row["do_mg_l_final"] = None
-    row |= {key: getattr(reading, key) for key in _WORDS} | {key: getattr(final, key) for key in _PLACE}
-    return row | {name: _rounded(getattr(line.derived, name)) for name, *_ in _DERIVED}
+    if "do_mg_l" in corrected:
+        row["do_mg_l_corrected"] = final.before_drift_mg_l
+    if final.drift is not None:
+        row["do_mg_l_drift_corrected"] = rounded_off(final.do_mg_l)
+    row["do_mg_l_final"] = line.final_do_mg_l
+    return {
+        **row,
+        **judged_cells(line),
+        **{name: rounded_off(getattr(line.derived, name)) for name, *_ in _DERIVED},
+    }
+
+
+def judged_cells(line):
+    """Return what is said of a reading, by column."""
+    judged, final = line.judged, line.final
+    return {
+        "visit_no": judged.visit_no,
+        "visit_id": judged.visit_id,
+        "replicate_of": judged.repeats_id,
+        "status": line.status,
+        "reviewed_by": line.reviewer,
+        "quality": judged.quality,
+        "reasons": ";".join(judged.reasons),
+        "findings": ";".join(sorted({one.name for one in judged.findings})),
+        "set_aside_reason": final.reason,
+        "bracket": judged.bracket.state,
+        "check_before": _id(judged.check_before),
+        "check_after": _id(judged.check_after),
+        "drift_grade": judged.grade,
+        "correction_ids": ";".join(event.id for event in final.corrections),
+        "drift_event_id": final.drift.id if final.drift is not None else "",
+        "n": line.values,
+        "spread_mg_l": rounded_off(line.spread_mg_l),
+        "do_uncertainty_mg_l": rounded_off(line.uncertainty_mg_l),
+        "do_censor": line.censor,
+        "do_reporting_limit_mg_l": line.limit_mg_l if line.censor == "less_than" else None,
+        "do_source": _do_source(line.reading),
+    }
+
+
+def _id(judged_check):
+    return "" if judged_check is None else judged_check.check.id
 
 
 def _do_source(reading):
@@ -113,116 +220,23 @@ def _do_source(reading):
     return "percent" if reading.do_percent is not None and not as_typed(reading, "do_mg_l")[0] else "read"
 
 
-def _rounded(value):
-    # Four decimals are far more than was measured, and the same on every machine.
-    return None if value is None else round(value, 4)
-
-
-def corrections_table(lines, zone_says):
+def corrections_table(events, names):
     """Return everything decided about readings afterwards, in the order it was."""
+    rows = kept_rows("reading_event", events, names)
+    for row in rows:
+        row["unit"] = unit_of(LAYERED[row["field"]]) if row["field"] in LAYERED else ""
+    says = "Corrections, drift, readings set aside or used again, and what reviewers said: all, in order."
+    made = kept_table("reading_event", "Corrections", says, rows, (text("unit", "Unit", "UCUM code."),))
+    return replace(
+        made, fields=tuple(replace(one, choices=KINDS) if one.name == "kind" else one for one in made.fields)
+    )
+
+
+def reasons_table(words):
+    """Return what the reasons of a reading mean."""
     fields = (
-        text("event_id", "Decision's id", constraints={"required": True}),
-        text("reading_id", "Reading's id", constraints={"required": True}),
-        text("kind", "What was decided", choices=_KINDS),
-        text("field", "Number corrected"),
-        number("old_value", "It was"),
-        number("new_value", "It became", says="Empty where the number was taken away."),
-        text("unit", "Unit", "UCUM code."),
-        text("reason", "Why", constraints={"required": True}),
-        text("made_by", "Who"),
-        moment("made_at", "When", zone_says),
+        text("reason", "Reason", constraints={"required": True}),
+        text("meaning", "What it means", constraints={"required": True}),
     )
-    events = [(event.made_at, event.id, event) for line in lines for event in line.reading.events]
-    rows = [
-        {
-            "event_id": event.id,
-            "reading_id": event.reading_id,
-            "kind": event.kind,
-            "field": event.field,
-            "old_value": event.old_value,
-            "new_value": event.new_value,
-            "unit": unit_of(CORRECTABLE[event.field]) if event.field in CORRECTABLE else "",
-            "reason": event.reason,
-            "made_by": event.made_by.name,
-            "made_at": event.made_at,
-        }
-        for *_, event in sorted(events, key=lambda one: one[:2])
-    ]
-    says = "Corrections, and readings set aside or used again: all of them, in the order they were made."
-    foreign = {"reading_id": ("readings", "reading_id")}
-    return DataTable("corrections", "Corrections", says, fields, ("event_id",), rows, foreign)
-
-
-# Name, title, unit, decimals; negative decimals are significant figures.
-_SUMMARY = (
-    ("distance_km", "Distance below the outfall", "km", 2),
-    ("travel_time_h", "Travel time", "h", 1),
-    ("hours_late", "Hours after the parcel", "h", 1),
-    ("depth_m", "Depth", "m", 2),
-    ("water_temp_c", "Water temperature", "Cel", 1),
-    ("do_mg_l", "Oxygen", "mg/L", 1),
-    ("pressure_mmhg", "Air pressure at the station", "mm[Hg]", 0),
-    ("conductance_us_cm", "Specific conductance", "uS/cm", -3),
-    ("saturation_mg_l", "Saturation", "mg/L", 1),
-    ("percent_saturation", "Percent saturation", "%", 0),
-    ("deficit_mg_l", "Deficit", "mg/L", 1),
-    ("predicted_do_mg_l", "Predicted oxygen", "mg/L", 1),
-    ("difference_mg_l", "Measured less predicted", "mg/L", 1),
-)
-
-
-def summary_table(lines, zone_says):
-    """Return a wide table for people: one row per reading, each number rounded once."""
-    fields = (
-        text("reading_id", "Reading's id", constraints={"required": True}),
-        text("station_code", "Station"),
-        moment("observed_at", "Time at the water", zone_says),
-        text("position", "Position across the river", choices=READINGS.column("position").choices),
-        *(number(name, title, unit) for name, title, unit, _ in _SUMMARY),
-        Field("do_censor", "Oxygen is", choices={"none": "a number", "less_than": "below the reporting limit"}),
-        number("do_reporting_limit_mg_l", "Reporting limit of oxygen", "mg/L"),
-        text("quality", "Quality", choices=QUALITIES),
-        text("reasons", "Reasons"),
-        text("author", "Who recorded it"),
-        text("note", "Note"),
-    )
-    says = (
-        "For people: final numbers, rounded once, half to even, to what can be measured: oxygen 0.1 mg/L, percent 1, "
-        "temperature 0.1 °C, pressure 1 mmHg, conductance 3 significant figures, distance 0.01 km, travel time 0.1 h. "
-        "Deficit and difference are computed before rounding. Readings set aside are here too: see quality."
-    )
-    foreign = {"reading_id": ("readings", "reading_id"), "station_code": ("stations", "code")}
-    rows = [_summary_row(one) for one in lines]
-    return DataTable("station_summary", "Readings for people", says, fields, ("reading_id",), rows, foreign)
-
-
-def _summary_row(line):
-    quality, reasons = reasons_of(line)
-    row = {
-        "reading_id": line.reading.id,
-        "station_code": line.final.station_code,
-        "observed_at": line.final.taken_at,
-        "position": line.reading.position,
-        "do_censor": line.censor,
-        "do_reporting_limit_mg_l": line.limit_mg_l if line.censor == "less_than" else None,
-        "quality": quality,
-        "reasons": ";".join(reasons),
-        "author": line.reading.author.name,
-        "note": line.reading.note,
-    }
-    for name, _, _, digits in _SUMMARY:
-        source = line.final if name in CORRECTABLE else line.derived
-        row[name] = rounded(getattr(source, name), digits)
-    if line.censor == "less_than":
-        row["do_mg_l"] = None
-    return row
-
-
-def rounded(value, digits):
-    """Return a number rounded half to even to so many decimals, or to significant figures where digits is negative."""
-    if value is None:
-        return None
-    exact = Decimal(decimal(value) or "0")
-    places = digits if digits >= 0 else -digits - 1 - exact.adjusted()
-    result = exact.quantize(Decimal(1).scaleb(-places), ROUND_HALF_EVEN)
-    return abs(result) if result == 0 else result
+    rows = [{"reason": key, "meaning": says} for key, says in words.items()]
+    return DataTable("reasons", "Reasons", "What the reasons in the readings mean.", fields, ("reason",), rows)

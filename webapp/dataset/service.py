@@ -4,38 +4,28 @@ import re
 import unicodedata
 from dataclasses import dataclass
 
-from calc.settings import SETTINGS
-from webapp.dataset import package, queries, tables
-from webapp.dataset.equations import EQUATION_SET, equations_table
-from webapp.dataset.fields import iso
-from webapp.dataset.readings import corrections_table, readings_table, summary_table
+from webapp.approval.queries import APPROVED, state_of
+from webapp.bottles.judged import judged_bottles
+from webapp.bottles.queries import bottles_of, results_of
+from webapp.dataset import evidence, keeping, package, queries, records, tables
+from webapp.dataset.about import about
+from webapp.dataset.equations import equations_table
+from webapp.dataset.line import Line
+from webapp.dataset.private import LEFT_OUT as LEFT_OUT
+from webapp.dataset.readings import corrections_table, readings_table, reasons_table
 from webapp.dataset.readme import readme
-from webapp.dataset.reasons import findings_of
-from webapp.dataset.tables import LEFT_OUT as LEFT_OUT
-from webapp.people.queries import people
+from webapp.dataset.summary import summary_table
 from webapp.plan import queries as plan_queries
 from webapp.plan.day import today_of
 from webapp.plan.prediction import prediction_of
-from webapp.readings.layers import FinalReading, final
+from webapp.readings.asking import thresholds
+from webapp.readings.judging import judgement_of
+from webapp.readings.quality_words import REASONS
 from webapp.readings.queries import readings_of
-from webapp.review.derived import Derived, derive
-from webapp.sag.queries import decisions_of
-from webapp.surveys.queries import current_settings, history_of
-
-_DEFAULTS = {one.key: one.default for one in SETTINGS}
-
-
-@dataclass(frozen=True)
-class Line:
-    """A reading with all that the dataset says of it."""
-
-    reading: object
-    final: FinalReading
-    derived: Derived
-    plan_number: int | None
-    findings: tuple
-    censor: str
-    limit_mg_l: float
+from webapp.review.derived import derive
+from webapp.review.drift import drift_pairs
+from webapp.surveyfile.queries import rows_of
+from webapp.surveys.queries import current_settings
 
 
 @dataclass(frozen=True)
@@ -52,31 +42,43 @@ class Dataset:
         return f"{self.name}-{self.version}.zip"
 
 
+@dataclass(frozen=True)
+class Gathered:
+    """A survey with everything that its dataset is made of; rows are all its stored ones by table."""
+
+    survey: object
+    rows: dict
+    names: keeping.Names
+    versions: list
+    settings: object
+    state: str
+    judgement: object
+    lines: list
+    bottles: list
+
+    @property
+    def plan(self):
+        """Return the newest version of the plan, or None."""
+        return self.versions[0] if self.versions else None
+
+
 def dataset_of(db, survey):
-    """Return the survey's Dataset: the same survey gives the same files, byte by byte."""
-    history = history_of(db, survey.id)
-    made = _tables(db, survey, history)
+    """Return the survey's Dataset: the same survey gives the same files, byte by byte, on whatever server."""
+    found = _gathered(db, survey)
+    made = _tables(found)
     made.append(tables.dictionary_table(made))
     files = {f"{table.name}.csv": package.csv_bytes(table, survey.time_zone) for table in made}
-    version = f"{len(history)}-{package.content_mark(files)}"
-    as_of = iso(history[-1].at, survey.time_zone) if history else ""
-    about = {
-        "name": slug(survey.name),
-        "title": f"{survey.name}: dissolved oxygen in {survey.river}",
-        "description": survey.purpose or f"A survey of dissolved oxygen in {survey.river}.",
-        "version": version,
-        "as_of": as_of,
-        "time_zone": survey.time_zone,
-        "equation_set": EQUATION_SET,
-    }
-    files["datapackage.json"] = package.descriptor(about, made, files)
-    files["README.txt"] = readme(about, survey, made, as_of)
+    version = f"{found.state}-{len(found.rows['history'])}-{package.content_mark(files)}"
+    name = slug(survey.name)
+    says = about(survey, name, version, found.state, found.rows, found.names, found.lines, found.plan)
+    files["datapackage.json"] = package.descriptor(says, made, files)
+    files["README.txt"] = readme(says, survey, made)
     files["checksums.txt"] = package.checksums(files)
-    return Dataset(about["name"], version, files)
+    return Dataset(name, version, files)
 
 
 def counts_of(db, survey):
-    """Return how many readings, decisions, plan versions and changes the dataset would hold."""
+    """Return how many of each thing the dataset would hold."""
     return queries.count_of_each(db, survey.id)
 
 
@@ -91,26 +93,75 @@ def slug(name):
     return re.sub(r"[^a-z0-9]+", "-", plain).strip("-")[:60] or "survey"
 
 
-def _tables(db, survey, history):
-    who = {person.id: person.name for person in people(db)}
+def _gathered(db, survey):
+    rows = rows_of(db, survey.id)
+    names = keeping.Names.of(rows)
     versions = plan_queries.plan_versions(db, survey.id)
-    plan = versions[0] if versions else None
-    settings = current_settings(db, survey.id)
-    lines = _lines(db, survey, versions, _predicted(today_of, survey, plan), settings)
-    zone_says = f"With the offset of {survey.time_zone}."
+    settings, judgement = current_settings(db, survey.id), judgement_of(db, survey)
+    state = state_of(db, survey.id).kind
+    return Gathered(
+        survey=survey,
+        rows=rows,
+        names=names,
+        versions=versions,
+        settings=settings,
+        state=state,
+        judgement=judgement,
+        lines=_lines(db, survey, versions, judgement, rows, names, thresholds(settings).oxygen_low_mg_l, state),
+        bottles=judged_bottles(bottles_of(db, survey.id), results_of(db, survey.id), thresholds(settings)),
+    )
+
+
+def _tables(found):
+    zone_says = f"With the offset of {found.survey.time_zone}."
+    rows, names, lines, plan = found.rows, found.names, found.lines, found.plan
     return [
-        tables.survey_table(survey, who, plan, settings),
-        tables.plan_version_table(versions),
-        *tables.plan_tables(plan, plan_queries.stations_of(db, survey.id)),
+        tables.survey_table(rows["survey"], names, plan, found.settings, found.state),
+        keeping.people_table(rows, names),
+        keeping.plan_versions_table(rows["plan_version"], names),
+        keeping.plan_rows_table(rows["plan_version"]),
+        *tables.plan_tables(plan, rows["station"], names),
         readings_table(lines, zone_says),
-        corrections_table(lines, zone_says),
+        keeping.values_table(rows["reading"]),
+        corrections_table(rows["reading_event"], names),
         summary_table(lines, zone_says),
-        tables.prediction_table(plan, _predicted(prediction_of, survey, plan)),
-        tables.settings_table(settings),
+        reasons_table(REASONS),
+        *_record_tables(found),
+        *_evidence_tables(found),
+        tables.prediction_table(plan, _predicted(prediction_of, found.survey, plan)),
+        tables.settings_versions_table(rows["settings_version"], names),
+        tables.settings_table(rows["settings_version"]),
         equations_table(),
-        tables.decisions_table(decisions_of(db, survey.id), {version.id: version.number for version in versions}),
-        tables.audit_table(history, who),
+        records.audit_table(rows["history"], names),
         tables.left_out_table(),
+    ]
+
+
+def _record_tables(found):
+    rows, names, judgement = found.rows, found.names, found.judgement
+    return [
+        records.meters_table(rows["meter"], names),
+        records.meter_checks_table(rows["meter_check"], names, judgement.checks),
+        records.check_decisions_table(rows["meter_check_event"], names),
+        records.visits_table(rows["visit"], names, judgement.occasions),
+        records.visit_entries_table(rows["visit_entry"], names),
+        records.bottles_table(rows["bottle"], names, found.bottles),
+        records.hand_overs_table(rows["hand_over"], names, rows["bottle"]),
+        records.lab_results_table(rows["lab_result"], names, rows["bottle"]),
+        records.reviews_table(rows["survey_event"], names),
+        records.decisions_table(rows["decision"], names),
+    ]
+
+
+def _evidence_tables(found):
+    settings, lines, occasions = thresholds(found.settings), found.lines, found.judgement.occasions
+    pairs, _ = drift_pairs(found.judgement.by_id.values(), found.judgement.checks, settings)
+    return [
+        evidence.drift_table(lines, pairs),
+        evidence.replicates_table(lines, found.bottles, settings),
+        evidence.sections_table(occasions),
+        evidence.completeness_table(found.plan, lines, settings),
+        evidence.deviations_table(found.plan, found.versions, lines, occasions),
     ]
 
 
@@ -120,21 +171,30 @@ def _predicted(by, survey, plan):
     return None if found is None or hasattr(found, "missing") else found
 
 
-def _lines(db, survey, versions, prediction, settings):
+def _lines(db, survey, versions, judgement, rows, names, limit, state):
     readings = readings_of(db, survey.id)
-    finals = [final(reading) for reading in readings]
-    stations = (versions[0].tables.get("stations") or []) if versions else []
-    numbers = {version.id: version.number for version in versions}
-    limit = float({**_DEFAULTS, **settings.thresholds}["oxygen_low_mg_l"])
+    plan = versions[0] if versions else None
+    stations = (plan.tables.get("stations") or []) if plan else []
+    finals = [judgement.by_id[one.id].reading for one in readings]
+    derived = derive(survey, stations, _predicted(today_of, survey, plan), finals)
+    stored = {row["reading_id"]: row for row in keeping.kept_rows("reading", rows["reading"], names)}
     return [
         Line(
             reading=reading,
-            final=one,
-            derived=derived,
-            plan_number=numbers.get(reading.plan_version_id),
-            findings=findings_of(reading),
-            censor="less_than" if one.do_mg_l is not None and one.do_mg_l < limit else "none",
+            stored=stored[reading.id],
+            final=final,
+            derived=one,
+            judged=judgement.by_id[reading.id],
+            censor="less_than" if final.do_mg_l is not None and final.do_mg_l < limit else "none",
             limit_mg_l=limit,
+            status=_status(state, final),
+            reviewer=names.people.get(final.reviewer_id, ""),
         )
-        for reading, one, derived in zip(readings, finals, derive(survey, stations, prediction, finals), strict=True)
+        for reading, final, one in zip(readings, finals, derived, strict=True)
     ]
+
+
+def _status(state, final):
+    if state == APPROVED:
+        return state
+    return "reviewed" if final.review == "kept" else "draft"

@@ -35,28 +35,33 @@ def pack(about, tables):
 
 def unpack(content):
     """Return (manifest, lines of each table as bytes) of a file that is whole. Raises BadSurveyFile."""
-    if len(content) > LARGEST:
-        raise BadSurveyFile(f"The file has {len(content) / 1e6:.1f} MB; Bankside takes up to {LARGEST / 1e6:.1f} MB.")
-    if not content.startswith(b"PK"):
+    if len(content) <= LARGEST and not content.startswith(b"PK"):
         raise BadSurveyFile("This is no survey file. Choose one that Bankside made: its name ends with .bankside.")
-    try:
-        files = _files(content)
-    except (zipfile.BadZipFile, zlib.error, EOFError, OSError, struct.error, ValueError) as broken:
-        raise BadSurveyFile("The file is damaged or cut short. Copy it once more from where it was made.") from broken
-    except (RuntimeError, NotImplementedError) as strange:
-        raise BadSurveyFile("The file was packed anew by another program. Take it as Bankside made it.") from strange
+    files = files_of(content, len(CARRIED) + 20, "survey file")
     manifest = _manifest(files)
     _check_sums(files)
     _check_names(files)
     return manifest, {name: files[f"{name}.jsonl"] for name in CARRIED}
 
 
-def _files(content):
+def files_of(content, most, what):
+    """Return {name: bytes} of a zip of at most so many files; what says what it should be. Raises BadSurveyFile."""
+    if len(content) > LARGEST:
+        raise BadSurveyFile(f"The file has {len(content) / 1e6:.1f} MB; Bankside takes up to {LARGEST / 1e6:.1f} MB.")
+    try:
+        return _files(content, most, what)
+    except (zipfile.BadZipFile, zlib.error, EOFError, OSError, struct.error, ValueError) as broken:
+        raise BadSurveyFile("The file is damaged or cut short. Copy it once more from where it was made.") from broken
+    except (RuntimeError, NotImplementedError) as strange:
+        raise BadSurveyFile("The file was packed anew by another program. Take it as Bankside made it.") from strange
+
+
+def _files(content, most, what):
     with zipfile.ZipFile(io.BytesIO(content)) as archive:
         entries = archive.infolist()
         names = [entry.filename for entry in entries]
-        if len(names) > len(CARRIED) + 20 or len(set(names)) != len(names):
-            raise BadSurveyFile("The file holds what no survey file holds. Take it as Bankside made it.")
+        if len(names) > most or len(set(names)) != len(names):
+            raise BadSurveyFile(f"The file holds what no {what} holds. Take it as Bankside made it.")
         files, room = {}, LARGEST_UNPACKED
         for entry in entries:
             with archive.open(entry) as opened:

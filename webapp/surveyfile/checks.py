@@ -184,7 +184,7 @@ def _decision(row):
 
 def _history(row):
     _want(isinstance(row.get("particulars", {}), dict), "history", row, "particulars")
-    _want(row["what"] != STAYS_HERE, "history", row, "what")
+    _want(row["what"] not in STAYS_HERE, "history", row, "what")
 
 
 _READ_FROM_SCREEN = {"place": str, "ticked": list, "answer": dict}

@@ -3,7 +3,7 @@
 from sqlalchemy import select
 
 from webapp.models import Base, Survey
-from webapp.surveyfile.tables import CARRIED, OF_PEOPLE, STAYS_HERE, carried
+from webapp.surveyfile.tables import CARRIED, DATASET_IMPORTED, OF_PEOPLE, STAYS_HERE, carried
 
 _AT_ONCE = 500  # SQLite takes no more than so many values in one query, give or take
 
@@ -16,10 +16,18 @@ def find_survey(db, survey_id):
 def rows_of(db, survey_id):
     """Return {table: rows} of a survey, sorted by their keys, with the people that its rows name."""
     found = {name: _rows(db, one, survey_id) for name, one in carried().items() if name != "person"}
-    found["history"] = [row for row in found["history"] if row["what"] != STAYS_HERE]
+    put_on = _put_on_here(found["history"])
+    found["history"] = [row for row in found["history"] if row["what"] not in STAYS_HERE]
+    found["survey_member"] = [row for row in found["survey_member"] if row["person_id"] not in put_on]
     people = people_of(db, people_named(found))
     rows = {"person": people, **found}
     return {name: sorted(rows[name], key=carried()[name].key_of) for name in CARRIED}
+
+
+def _put_on_here(history):
+    """Return the ids of those whom the import of a dataset put on the survey, so that they could look at it."""
+    put_on = {row["particulars"].get("put_on") for row in history if row["what"] == DATASET_IMPORTED}
+    return put_on - {row["entity_id"] for row in history if row["what"] == "person added"}
 
 
 def people_named(rows):

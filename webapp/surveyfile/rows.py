@@ -11,6 +11,7 @@ from webapp.models import UtcDateTime
 from webapp.surveyfile.archive import MOST_ROWS, BadSurveyFile
 
 _ID = re.compile(r"[0-9A-Za-z-]{1,36}")
+NO_DEFAULT = object()
 _NEWEST = "Update Bankside on this server, then import the file again."
 
 
@@ -61,22 +62,32 @@ def complete(one, row):
 
 
 def _default(column, where):
+    if (value := default_of(column)) is NO_DEFAULT:
+        raise BadSurveyFile(f"{where} lacks {column.name}.")
+    return value
+
+
+def default_of(column):
+    """Return what a column holds where nothing was said, or NO_DEFAULT."""
     if column.default is not None and column.default.is_scalar:
         return column.default.arg
     if column.default is not None and column.default.is_callable and isinstance(column.type, JSON):
         return column.default.arg(None)
-    if column.nullable:
-        return None
-    raise BadSurveyFile(f"{where} lacks {column.name}.")
+    return None if column.nullable else NO_DEFAULT
 
 
 def _value(column, told, where):
     if told is None and column.nullable:
         return None
     try:
-        return _reader(column)(column, told)
+        return taken(column, told)
     except (ValueError, TypeError, OverflowError, RecursionError) as wrong:
         raise BadSurveyFile(f"{where}: {str(wrong)[:120]}") from wrong
+
+
+def taken(column, told):
+    """Return a value as its column holds it. Raises ValueError, TypeError, OverflowError or RecursionError."""
+    return _reader(column)(column, told)
 
 
 def _reader(column):

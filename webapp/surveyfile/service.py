@@ -2,19 +2,23 @@
 
 import re
 import unicodedata
+from dataclasses import replace
 
 from sqlalchemy import insert
 from sqlalchemy.exc import IntegrityError
 
+from webapp.approval.lock import LOCKED, is_approved, refuse_if_approved
 from webapp.dataset.service import slug
 from webapp.errors import Conflict, NotAllowed
 from webapp.models import Base, History, Person, SurveyMember
 from webapp.surveyfile import archive, checks, merge, queries
 from webapp.surveyfile.archive import BadSurveyFile
 from webapp.surveyfile.rows import complete, lines_of, rows_in
-from webapp.surveyfile.tables import CARRIED, STAYS_HERE, carried
+from webapp.surveyfile.tables import CARRIED, FILE_IMPORTED, carried
 from webapp.surveys.service import remember
 
+# What of a file an approved survey here still takes.
+_OF_PEOPLE = {"person", "survey_member", "history"}
 __all__ = ["BadSurveyFile", "export", "file_name", "import_file", "outcome_of", "read"]
 
 
@@ -52,10 +56,17 @@ def outcome_of(db, file, person_id):
         here = queries.rows_of(db, survey_id)
         here["person"] = queries.people_of(db, {row["id"] for row in file["person"]})
     outcome = merge.merged(file, here)
+    refuse_ids_of_others(db, outcome)
+    if _changes(outcome) and is_approved(db, survey_id):
+        outcome = replace(outcome, notes=(LOCKED, *outcome.notes))
+    return outcome
+
+
+def refuse_ids_of_others(db, outcome):
+    """Raise BadSurveyFile where a row that would be added has the id of another survey's row here."""
     for name, rows in outcome.added.items():
         if "id" in carried()[name].columns and queries.known_ids(db, name, {row["id"] for row in rows}):
             raise BadSurveyFile(f"{CARRIED[name][1]} of the file have ids that belong to another survey here.")
-    return outcome
 
 
 def import_file(db, file, by_id, mark=None):
@@ -67,30 +78,45 @@ def import_file(db, file, by_id, mark=None):
     outcome = outcome_of(db, file, by_id)
     if mark is not None and mark != outcome.mark:
         raise Conflict("The survey was changed here since you looked. See what the file would do now.")
-    if not outcome.total:
-        return outcome
+    if outcome.total:
+        if _changes(outcome):
+            refuse_if_approved(db, outcome.survey_id)
+        store(db, outcome, by_id, _say)
+    return outcome
+
+
+def _changes(outcome):
+    """Return whether a file brings more to a survey that is here than who is on it."""
+    return not outcome.new and not {name for name, rows in outcome.added.items() if rows} <= _OF_PEOPLE
+
+
+def store(db, outcome, by_id, say):
+    """Add the rows of an Outcome and what say(db, outcome, by_id) adds to the history, in one transaction."""
     try:
         _add_people(db, outcome.added["person"], by_id)
         for name, one in carried().items():
             if name != "person" and outcome.added[name]:
                 rows = [complete(one, row) for row in outcome.added[name]]
                 db.execute(insert(Base.metadata.tables[name]), rows)
-        _say(db, outcome, by_id)
+        say(db, outcome, by_id)
         db.commit()
     except IntegrityError as clash:  # two processes on one PostgreSQL
         db.rollback()
         raise Conflict("Somebody changed the survey at this moment. See what the file would do now.") from clash
-    return outcome
 
 
 def _say(db, outcome, by_id):
-    added = {name: len(rows) for name, rows in outcome.added.items() if rows}
-    told = {"added": added, "differences": len(outcome.differences), "notes": list(outcome.notes)}
-    remember(db, outcome.survey_id, by_id, STAYS_HERE, particulars=told)
+    remember(db, outcome.survey_id, by_id, FILE_IMPORTED, particulars=told_of(outcome))
     on_it = {row["person_id"] for row in outcome.added["survey_member"]}
     if outcome.new and by_id not in on_it:
         db.add(SurveyMember(survey_id=outcome.survey_id, person_id=by_id))
         remember(db, outcome.survey_id, by_id, "person added", "person", by_id)
+
+
+def told_of(outcome):
+    """Return what the history tells of an import."""
+    added = {name: len(rows) for name, rows in outcome.added.items() if rows}
+    return {"added": added, "differences": len(outcome.differences), "notes": list(outcome.notes)}
 
 
 def _add_people(db, rows, by_id):

@@ -43,7 +43,8 @@ OF_PEOPLE = ("id", "name", "role")
 NOT_COMPARED = {name: {"received_at"} for name in ("reading", "meter_check", "visit_entry", "bottle")}
 NUMBERED = ("settings_version", "plan_version")
 # Lines of the history about this server's own doings.
-STAYS_HERE = "survey file imported"
+FILE_IMPORTED, DATASET_IMPORTED = "survey file imported", "dataset imported"
+STAYS_HERE = (FILE_IMPORTED, DATASET_IMPORTED)
 
 
 @dataclass(frozen=True)
