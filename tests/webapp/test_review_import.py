@@ -214,3 +214,64 @@ def test_id_follows_from_survey_and_content_alone(survey):
     first = [one.id for one in importing._identified(survey, ROWS, entered)]
     again = [one.id for one in importing._identified(survey, ROWS[::-1], entered)]
     assert first == again[::-1] and len(set(first)) == len(ROWS)
+
+
+VALUES = "Station;Time;Several values;Oxygen;Water temperature;pH;Why they had not settled\n"
+
+
+def test_several_values_on_a_paper_sheet_give_their_median_and_stay_raw(sheet, db, survey):
+    text = VALUES + "D2;2026-08-12 09:10;6,1 6,3 6,2 6,2 6,2;;20,1;7,4;\n"
+    assert sheet(text).status_code == 303
+    (row,) = rows(db, survey)
+    assert (row.final.do_mg_l, row.reading.stable, row.final.ph) == (6.2, True, 7.4)
+    assert [one["do_mg_l"] for one in row.reading.series] == [6.1, 6.3, 6.2, 6.2, 6.2]
+    assert row.reading.entered["values"] == {"text": "6,1 6,3 6,2 6,2 6,2", "unit": "mg/L"}
+    assert sheet(text).headers["Location"].endswith("added=0&known=1")
+
+
+def test_values_that_had_not_settled_are_stored_as_unstable_with_the_reason(sheet, db, survey):
+    text = VALUES + "D2;2026-08-12 09:10;5.8 6.4 6.0 6.3 6.1;6.1;20.1;;slack water\n"
+    assert "Not stable" in sheet(text, "/preview").text
+    sheet(text)
+    (row,) = rows(db, survey)
+    assert (row.final.do_mg_l, row.reading.stable, row.reading.unstable_reason) == (6.1, False, "slack water")
+    assert "unstable" in {one["name"] for one in row.reading.kept_findings}
+
+
+@pytest.mark.parametrize(
+    ("cells", "message"),
+    [
+        ("6.1 six;", "Enter numbers with blanks between them"),
+        ("6.1 60 6.2;", "Oxygen must lie between"),
+        ("6.1 6.2 6.3;7.2", "Their median is 6.20 mg/L, and the oxygen beside them is 7.2"),
+    ],
+)
+def test_several_values_that_cannot_be_are_named_by_row_and_column(sheet, db, cells, message):
+    answer = sheet(VALUES + f"D2;2026-08-12 09:10;{cells};20.1;;\n")
+    assert answer.status_code == 422 and "Row 2, Several values" in answer.text and message in answer.text
+    assert db.query(Reading).count() == 0
+
+
+def test_writers_wait_for_an_import_only_while_it_stores(app, browser_as, survey, plan, monkeypatch):
+    lock, held = app.extensions["bankside_database"].lock, {}
+
+    def noting(name):
+        deed = getattr(importing, name)
+
+        def run(*args):
+            held[name] = lock.locked()
+            return deed(*args)
+
+        monkeypatch.setattr(importing, name, run)
+
+    noting("_findings")
+    noting("put_reading")
+    assert browser_as("lead").post(f"/surveys/{survey.id}/readings/import", {"text": SHEET}).status_code == 303
+    assert held == {"_findings": False, "put_reading": True}
+
+
+def test_reading_that_came_while_a_sheet_was_looked_at_is_known_and_not_stored_twice(db, survey, people, plan):
+    prepared = importing.prepare(db, survey, ROWS)
+    importing.import_readings(db, survey, ROWS[:1], people["crew"].id)
+    assert importing.store(db, survey, prepared, people["lead"].id) == (len(ROWS) - 1, 1)
+    assert db.query(Reading).count() == len(ROWS)
