@@ -63,7 +63,7 @@ def form_of_meter(meter, show):
 def parse_check(source, show, meters, now):
     """Return (NewCheck, errors); the check is None where the errors leave nothing to judge. meters may be checked."""
     fields = Fields(source, show)
-    parameter = fields.choice("parameter", "what is checked", PARAMETERS, "do") or "do"
+    parameter = fields.choice("parameter", "value to be checked", PARAMETERS, "do") or "do"
     kind = fields.choice("kind", "kind of check", KINDS, "as_found")
     standard = _standard(fields, parameter, kind)
     new = NewCheck(
@@ -79,7 +79,7 @@ def parse_check(source, show, meters, now):
         place=fields.text("place", "place", 60, required=False),
         lot=fields.text("lot", "standard's lot", 60, required=False),
         expires_on=_day(fields, "expires_on", "standard's expiry date"),
-        action=fields.choice("action", "what was done", ACTIONS, _usual_action(kind)),
+        action=fields.choice("action", "thing that was done", ACTIONS, _usual_action(kind)),
         note=fields.text("note", "note", 2000, required=False),
         entered=fields.entered,
     )
@@ -89,7 +89,7 @@ def parse_check(source, show, meters, now):
 def parse_standard(source, show):
     """Return the Standard that a form describes so far; what can't be read yet counts as not known."""
     fields = Fields(source, show)
-    parameter = fields.choice("parameter", "what is checked", PARAMETERS, "do") or "do"
+    parameter = fields.choice("parameter", "value to be checked", PARAMETERS, "do") or "do"
     kind = fields.choice("kind", "kind of check", KINDS, "as_found") or "as_found"
     standard = _standard(fields, parameter, kind) or usual_standard(parameter, kind)
     return Standard(
@@ -123,7 +123,7 @@ def _standard(fields, parameter, kind):
     if parameter == "do" and kind == "zero":
         return "zero_solution"
     options = {key: STANDARDS[key] for key in PARAMETERS[parameter].standards}
-    return fields.choice("standard", "what it is checked against", options, usual_standard(parameter, kind))
+    return fields.choice("standard", "standard it is checked against", options, usual_standard(parameter, kind))
 
 
 def _limits(parameter):
@@ -134,7 +134,7 @@ def _limits(parameter):
 
 def _compared(fields, parameter, standard):
     """Return the other value, where the expected one is not computed."""
-    if standard in KNOWN_BY_THEMSELVES:
+    if standard is None or standard in KNOWN_BY_THEMSELVES:
         return None
     return fields.number("compared", "value it is compared with", *_limits(parameter))
 
