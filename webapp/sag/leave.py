@@ -29,10 +29,15 @@ CHECK_YOURSELF = (
 
 @dataclass(frozen=True)
 class Item:
-    """A line of the close-out list that the readings themselves can show."""
+    """A line of the close-out list that the records themselves can show.
+
+    meter and kind open the form for the check that it asks for; empty where it asks for none.
+    """
 
     done: bool
     says: str
+    meter: str = ""
+    kind: str = ""
 
 
 @dataclass(frozen=True)
@@ -56,8 +61,8 @@ class Leave:
         return self.word in (HELD, FLAT)
 
 
-def may_we_leave(show, plan_version, today, readings):
-    """Return the Leave of Today; readings are all of the survey."""
+def may_we_leave(show, plan_version, today, readings, meters=()):
+    """Return the Leave of Today; readings are all of the survey, meters the meters.closing.Closings."""
     stations = plan_version.tables.get("stations") or []
     codes = [(row["distance_km"], row["code"]) for row in stations]
     estimate = today.estimate
@@ -81,7 +86,7 @@ def may_we_leave(show, plan_version, today, readings):
         trade=answer.bracket.clauses,
         trade_asks=tuple(plainly(show, one, codes) for one in answer.bracket.add),
         disagreement=answer.disagreement,
-        closing=closing_list(visits, stations),
+        closing=closing_list(visits, stations, meters),
     )
 
 
@@ -164,8 +169,8 @@ def _around(today, codes, show):
     return f"{names.get(above, show.place(above))} and {names.get(below, show.place(below))}"
 
 
-def closing_list(visits, stations):
-    """Return the Items of the close-out list that readings show: first station again, replicates, times, meters."""
+def closing_list(visits, stations, meters=()):
+    """Return the Items of the close-out list: first station again, replicates, times, meters and their end checks."""
     order = {row["code"]: row["distance_km"] for row in stations}
     repeated = sorted({one.code for one in visits if one.is_replicated})
     missing = sorted({one.code for one in visits if not one.meter})
@@ -177,6 +182,7 @@ def closing_list(visits, stations):
             not missing and bool(visits),
             f"The meter was not noted at {', '.join(missing)}." if missing else noted,
         ),
+        *(Item(one.done, one.says, one.meter, one.kind) for one in meters),
     )
 
 

@@ -4,6 +4,7 @@ import hashlib
 from dataclasses import dataclass
 
 from webapp.fieldsheet.snapshot import window_of
+from webapp.meters.closing import closing_of
 from webapp.plan.prediction import prediction_of
 from webapp.plan.queries import current_plan, stations_of
 from webapp.readings.asking import thresholds
@@ -82,7 +83,7 @@ def sag_of(db, survey, show, now):
     decisions = decisions_of(db, survey.id)
     leave = where = budget = None
     if today.ready:
-        leave = may_we_leave(show, plan, today, finals)
+        leave = may_we_leave(show, plan, today, finals, _meters(db, survey, show, settings, readings, prediction, now))
         budget = time_budget(survey, plan, now)
         known = stations_of(db, survey.id)
         where = where_next(
@@ -109,6 +110,12 @@ def sag_of(db, survey, show, now):
         screen=screen_of(plan, today, leave, where, budget, now),
         window=window_of(survey, plan, settings, finals),
     )
+
+
+def _meters(db, survey, show, settings, readings, prediction, now):
+    """Return what the meters still need, given the lowest oxygen that the plan expects."""
+    lowest = prediction.critical.do_mg_l if prediction.ready else None
+    return closing_of(db, survey, show, settings, readings, lowest, now)
 
 
 def current_mark(db, survey):
