@@ -4,8 +4,8 @@ import { number, pressureOf, saturation } from "./check.js";
 const signed = (value, digits) => `${value < 0 ? "\u2212" : "+"}${Math.abs(value).toFixed(digits)}`;
 
 // What a meter should read in a standard: looked up where it is made with air, 0 in zero solution, else as compared.
-function expectedOf(pack, { standard, ...fields }, units) {
-  if (standard === "zero_solution") return 0;
+function expectedOf(pack, { kind, standard, ...fields }, units) {
+  if (kind === "zero" || standard === "zero_solution") return 0;
   if (!["air_saturated_water", "water_saturated_air"].includes(standard)) return number(fields.compared);
   const typed = standard === "air_saturated_water" && fields.conductance_us_cm;
   const conductance = typed ? number(fields.conductance_us_cm, units.conductance_us_cm) : undefined;

@@ -42,6 +42,12 @@ export function timeOf(record) {
 // What it is and where: "D5" of a reading as ever, "Meter check, Meter A" as its form calls it.
 export const placeOf = (record) => (isReading(record) ? record.code : record.what || `${wordsOf(record).one} ${record.code}`);
 
+// What a form records, as the form calls it; the meter may have been chosen since the page was made.
+export function whatOf({ dataset: { kind, what = "" }, elements }) {
+  const chosen = kind === "check" && elements.meter?.selectedOptions?.[0];
+  return chosen?.value ? `Meter check, ${chosen.text}` : what;
+}
+
 // What was read, in a few words; nothing for a kind that is no one number.
 export function valueOf({ fields, ...record }) {
   if (isReading(record)) return fields.do_mg_l ? `${fields.do_mg_l} mg/L` : `${fields.do_percent} %`;

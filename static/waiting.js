@@ -1,5 +1,6 @@
 // What is saved is written on this phone first and sent after: the server's answer says whether it may be let go.
 import { changeRecord, keepRecord } from "./waiting_store.js";
+import { whatOf } from "./kinds.js";
 import { person, phone } from "./phone.js";
 import { judge, send } from "./sending.js";
 import { cannotKeep, draftKey, fieldsOf, fill } from "./typing.js";
@@ -9,12 +10,12 @@ const SENDER_LATER_MS = 20000;
 let saving;
 
 function recordOf(it, button) {
-  const { survey, surveyName, code = "", kind = "reading", what = "" } = it.dataset;
+  const { survey, surveyName, code = "", kind = "reading" } = it.dataset;
   const fields = fieldsOf(it, button);
   return {
     v: 1,
     kind,
-    what,
+    what: whatOf(it),
     id: fields.submission_id,
     url: it.getAttribute("action"),
     survey,
