@@ -51,6 +51,7 @@ def add_meter(survey_id):
     try:
         service.add_meter(get_db(), survey, meter, current_user.id)
     except Conflict as conflict:
+        get_db().rollback()
         return _meter_page(survey, request.form, 409, {"name": conflict.message})
     return _back_to_page(survey)
 
@@ -76,6 +77,7 @@ def change_meter(survey_id, meter_id):
     try:
         service.change_meter(get_db(), survey, meter_id, changed, current_user.id)
     except Conflict as conflict:
+        get_db().rollback()
         return _meter_page(survey, request.form, 409, {"note": conflict.message}, meter)
     return _back_to_page(survey)
 
@@ -127,6 +129,7 @@ def save_check(survey_id):
     try:
         stored = service.add_check(db, survey, new.keeping(asks), current_user.id, now)
     except Conflict as conflict:
+        get_db().rollback()
         return _check_form(survey, show, form, 409, conflict=conflict.message)
     return _stored(survey, stored)
 
@@ -192,6 +195,7 @@ def _decide(survey_id, check_id, decide):
     try:
         found = decide(db, survey_id, check_id, reason, forms.based_on(request.form), current_user)
     except Conflict as conflict:
+        get_db().rollback()
         return _check_page(survey, found, 409, conflict=conflict.message)
     if wants_fragment():
         return _check_page(survey, found, done=True)
