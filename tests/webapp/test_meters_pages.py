@@ -210,6 +210,13 @@ def test_fresh_form_proposes_the_only_meter_and_the_next_check(crew, address, me
     assert '<option value="zero" selected>' in asked and '<option value="zero_solution" selected>' in asked
 
 
+def test_form_proposes_the_meter_that_the_person_checked_last(crew, address, meter, day):
+    other = day.meter("Meter B")
+    assert "Choose it" in crew.get(f"{address}/check").text
+    day.check(other)
+    assert f'<option value="{other.id}" selected>' in crew.get(f"{address}/check").text
+
+
 def test_form_of_another_parameter_asks_for_its_own_numbers(crew, address, meter):
     answer = crew.get(f"{address}/check?parameter=temperature").text
     assert "Reference thermometer" in answer and "Air pressure" not in answer and "Zero check" not in answer

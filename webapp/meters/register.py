@@ -63,16 +63,15 @@ def lowest_expected(db, survey):
     return prediction.critical.do_mg_l if prediction else None
 
 
-def proposed(db, survey, show, now, asked):
+def proposed(db, survey, show, now, asked, last=None):
     """Return (meter id, kind, parameter) that a fresh form begins with: as asked, else what comes next.
 
-    Without a meter it is the only one in service, or none.
+    Without a meter it is the only one in service, or that of the person's last check, or none.
     """
     meters, judged, settings = _known(db, survey)
     in_service = [one for one in meters if not one.out_of_service]
-    meter = find_meter(meters, asked["meter"]) if asked["meter"] else None
-    if meter is None and len(in_service) == 1:
-        (meter,) = in_service
+    usual = in_service[0].id if len(in_service) == 1 else last.meter_id if last else ""
+    meter = find_meter(meters, asked["meter"]) or find_meter(in_service, usual)
     parameter = asked["parameter"] if asked["parameter"] in PARAMETERS else "do"
     kind = asked["kind"] if asked["kind"] in KINDS else ""
     if meter is not None and not kind and parameter == "do":

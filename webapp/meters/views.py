@@ -101,8 +101,8 @@ def new_check(survey_id):
     db, survey = get_db(), _survey(survey_id)
     asked = {name: request.args.get(name, "") for name in ("meter", "kind", "parameter")}
     show, now = Show.of(survey), datetime.now(UTC)
-    meter_id, kind, parameter = register.proposed(db, survey, show, now, asked)
     last = queries.last_check_by(db, survey_id, current_user.id)
+    meter_id, kind, parameter = register.proposed(db, survey, show, now, asked, last)
     form = forms.fresh_check(show, last, now, meter_id, kind, parameter)
     return _check_form(survey, show, form, fresh=True)
 

@@ -38,9 +38,9 @@ BUTTONS = {
     "as_found": "Check as found",
     "adjusted": "Adjust, then enter it",
     "read_back": "Read back",
-    "field": "Check between stations",
-    "zero": "Check zero",
-    "end_of_day": "Check at the end of the day",
+    "field": "Field check",
+    "zero": "Zero check",
+    "end_of_day": "End-of-day check",
     "after_cleaning": "Check after cleaning",
 }
 ACTIONS = {
