@@ -7,6 +7,7 @@ import numpy as np
 from calc.brackets import bracket_check
 from calc.leaving import FLAT, HELD, OPEN_ABOVE, OPEN_BELOW, Answer, verdict
 from webapp.display import signed
+from webapp.meters.words import BUTTONS
 from webapp.sag.evidence import visits_of
 from webapp.sag.words import interval_words, plainly, stretch
 
@@ -38,6 +39,11 @@ class Item:
     says: str
     meter: str = ""
     kind: str = ""
+
+    @property
+    def button(self):
+        """Return what the link to that form says."""
+        return BUTTONS.get(self.kind, "")
 
 
 @dataclass(frozen=True)
