@@ -22,7 +22,7 @@ from webapp.models import Bottle, LabResult
 
 _BOD5 = ("bod5", "cbod5")
 _OXYGEN = ("bod5", "cbod5", "ubod", "winkler_do")
-_ON_ICE = ("bod5", "cbod5", "ubod", "nh3_n", "chlorophyll_a")
+ON_ICE = ("bod5", "cbod5", "ubod", "nh3_n", "chlorophyll_a")
 
 
 @dataclass(frozen=True)
@@ -121,7 +121,7 @@ def _hold(bottle, result, settings, now):
 def _way(bottle, settings):
     """Return what happened to a bottle before the laboratory had it."""
     findings = []
-    if bottle.on_ice_at is not None and bottle.analysis in _ON_ICE:
+    if bottle.on_ice_at is not None and bottle.analysis in ON_ICE:
         findings += not_on_ice((bottle.on_ice_at - bottle.collected_at).total_seconds() / 60, settings)
     if bottle.full is False and bottle.analysis in _OXYGEN:
         says = "There was air under the stopper: oxygen goes in or out of the water."

@@ -54,3 +54,9 @@ def find_hand_over(db, hand_over_id):
 def find_result(db, result_id):
     """Return the laboratory result of that id, of whatever survey, or None."""
     return db.get(LabResult, result_id)
+
+
+def last_by(db, survey_id, person_id):
+    """Return the bottle a person recorded last on the survey, or None."""
+    query = select(Bottle).where(Bottle.survey_id == survey_id, Bottle.author_id == person_id)
+    return db.scalar(query.order_by(Bottle.received_at.desc(), Bottle.id).limit(1))
