@@ -12,7 +12,19 @@ from calc.oxygen import percent_saturation, saturation_mg_l
 from calc.sag import predict
 from calc.units import convert
 from demo_survey import today
-from demo_survey.finished_day import CHECKS, DRIFT_ENDS, DRIFT_STARTS, READ, VISITS
+from demo_survey.finished_day import (
+    BOTTLES,
+    CHECKS,
+    DONE,
+    DRIFT_ENDS,
+    DRIFT_STARTS,
+    HAND_OVERS,
+    READ,
+    RESULTS,
+    RUN,
+    SET_UP,
+    VISITS,
+)
 from demo_survey.river import ELEVATION_M, PLAN, READ_SD_MG_L, distance_km, true_river
 from demo_survey.rows import numbered, typed, visits
 from webapp.plan.prediction import predict_plan
@@ -95,4 +107,25 @@ def rows():
         "checks": numbered("check", checks),
         "visits": visits((code, when(arrived), when(left), more) for code, arrived, left, more in VISITS),
         "readings": numbered("reading", readings()),
+        **_laboratory(),
+    }
+
+
+def _laboratory():
+    """Return the rows about bottles, their way to the laboratory and what it found."""
+    bottles = [
+        {"station": code, "code": label, "analysis": "bod5", "collected_at": when(filled), "on_ice_at": when(on_ice),
+         "volume_ml": "1000", "full": "yes", **more}
+        for label, code, filled, on_ice, more in BOTTLES
+    ]  # fmt: skip
+    results = [
+        {"bottle_id": f"bottle {number}", "laboratory": "Sedge laboratory", "lab_number": f"26-07-{410 + number}",
+         "method": "5-day dilution", "arrived_at": when("+09:50"), "arrival_temp_c": "4.6", "started_at": SET_UP,
+         "finished_at": DONE, "result": result, "limit_value": "2", **RUN, **more}
+        for number, result, more in RESULTS
+    ]  # fmt: skip
+    return {
+        "bottles": numbered("bottle", [typed(row) for row in bottles]),
+        "hand_overs": numbered("hand-over", [typed({**row, "at": when(row["at"])}) for row in HAND_OVERS]),
+        "results": numbered("result", [typed(row) for row in results]),
     }

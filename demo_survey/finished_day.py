@@ -93,3 +93,26 @@ READ = (
     ("D9", 0.18, B, "centre", 0.72, {"replicate": True}),
     ("U1", None, B, "centre", 0.65, {"after_h": 24.1, "conductance_us_cm": 309, "pressure": 977.0}),
 )  # fmt: skip
+
+# code on the label, station, filled, on ice, what else the form asks
+BOTTLES = (
+    ("SW-01", "U1", "06:10", "06:14", {"position": "centre"}),
+    ("SW-02", "D5", "17:34", "17:42", {"position": "centre"}),
+    ("SW-03", "D5", "17:36", "17:42", {"position": "centre", "kind": "replicate", "replicate_of": "SW-02"}),
+    ("SW-04", "D5", "17:50", "17:53", {"kind": "blank", "note": "Dilution water, filled at the river."}),
+    ("SW-05", "U1", "+06:40", "+06:45", {"position": "centre"}),
+)
+HAND_OVERS = (
+    {"bottles": "bottle 1; bottle 2; bottle 3; bottle 4; bottle 5", "gave": "Cleo Banks", "took": "Vera Lund",
+     "at": "+09:35", "place": "Door of the laboratory", "temperature_c": "3.8", "seal": "unbroken"},
+)  # fmt: skip
+# bottle, result as the laboratory wrote it, what else it told; all were set up at 07:00 of the day after they arrived
+SET_UP, DONE = "2026-07-24T07:00", "2026-07-29T07:30"
+RUN = {"blank_mg_l": "0.12", "gga_mg_l": "191", "incubation_c": "20.1"}
+RESULTS = (
+    (1, "2.4", {"depletion_mg_l": "2.3", "residual_mg_l": "5.9", "note": "Set up late."}),
+    (2, "9.4", {"depletion_mg_l": "3.9", "residual_mg_l": "3.7"}),
+    (3, "9.9", {"depletion_mg_l": "4.1", "residual_mg_l": "3.5"}),
+    (4, "<2", {}),
+    (5, "2.2", {"depletion_mg_l": "2.2", "residual_mg_l": "6.0"}),
+)

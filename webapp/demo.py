@@ -8,6 +8,9 @@ from dataclasses import replace
 from datetime import UTC, date, datetime, timedelta
 from zoneinfo import ZoneInfo
 
+from webapp.bottles import forms as bottle_forms
+from webapp.bottles import service as bottle_service
+from webapp.bottles.queries import bottles_of
 from webapp.config import SHIPPED
 from webapp.display import Show
 from webapp.meters import forms as meter_forms
@@ -37,9 +40,10 @@ SIGN_INS = (
 NAMES = {"crew": "Cleo Banks", "lead": "Linus Ford", "office": "Olive Reed"}
 HOURS_INTO_THE_DAY = 10.5
 # What is moved in time, and the names within the files that become ids.
-TIMES = ("taken_at", "arrived_at", "left_at")
+TIMES = ("taken_at", "arrived_at", "left_at", "collected_at", "on_ice_at", "at", "started_at", "finished_at")
 DAYS = ("cap_changed_on", "serviced_on", "expires_on")
-IDS = ("submission_id", "visit_id")
+IDS = ("submission_id", "visit_id", "bottle_id")
+ID_LISTS = ("seen", "bottles")
 
 
 def load(db, now):
@@ -50,7 +54,9 @@ def load(db, now):
     moved = _whole_minutes(now - timedelta(hours=HOURS_INTO_THE_DAY) - _facts(FOLDER).release_at)
     for folder in (FINISHED, FOLDER):  # the list of surveys begins with the one that was made last
         survey = _survey(db, folder, moved, people)
-        _forms(db, survey, folder, moved, people["crew"].id)
+        _day(db, survey, folder, moved, people["crew"].id)
+        if (folder / "bottles.csv").exists():
+            _bottles(db, survey, folder, moved, people)
     return True
 
 
@@ -86,8 +92,8 @@ def _plan_rows(name, table, show):
     return read.rows
 
 
-def _forms(db, survey, folder, moved, by_id):
-    """Store what the crew typed into the forms, each at the time it was typed."""
+def _day(db, survey, folder, moved, by_id):
+    """Store what the crew typed into the forms at the river, each at the time it was typed."""
     show, plan = Show.of(survey), current_plan(db, survey.id)
     for form in _typed(folder / "meters.csv", survey, moved):
         meter_service.add_meter(db, survey, _read(meter_forms.parse_meter(form, show)), by_id)
@@ -104,6 +110,25 @@ def _forms(db, survey, folder, moved, by_id):
     db.commit()
 
 
+def _bottles(db, survey, folder, moved, people):
+    """Store the bottles and their hand-over, which the crew typed, and the results, which the office did."""
+    show, crew, office = Show.of(survey), people["crew"].id, people["office"].id
+    for form in _typed(folder / "bottles.csv", survey, moved):
+        at = _saved(form, show)
+        new = _read(bottle_forms.parse_bottle(form, show, form["station"], at))
+        bottle_service.put_bottle(db, survey, new, crew, at)
+    bottles = bottles_of(db, survey.id)
+    for form in _typed(folder / "hand_overs.csv", survey, moved):
+        ids = json.loads(form["bottles"])
+        new = _read(bottle_forms.parse_hand_over(form, ids, show, bottles, _saved(form, show)))
+        bottle_service.add_hand_over(db, survey, new, crew)
+    for form in _typed(folder / "results.csv", survey, moved):
+        bottle = next(one for one in bottles if one.id == form["bottle_id"])
+        new = _read(bottle_forms.parse_result(form, show, bottle, _saved(form, show)))
+        bottle_service.put_result(db, survey, new, office)
+    db.commit()
+
+
 def _typed(path, survey, moved):
     """Yield the forms of a file, moved in time; the ids are this survey's own, as if a phone had made them."""
     zone = ZoneInfo(survey.time_zone)
@@ -112,8 +137,9 @@ def _typed(path, survey, moved):
         form |= {name: _id(survey, form[name]) for name in IDS if name in form}
         form |= {name: _moved_time(form[name], moved, zone) for name in TIMES if name in form}
         form |= {name: (date.fromisoformat(form[name]) + moved).isoformat() for name in DAYS if name in form}
-        if "seen" in form:
-            form["seen"] = json.dumps([_id(survey, name) for name in form["seen"].split("; ")])
+        for name in ID_LISTS:
+            if name in form:
+                form[name] = json.dumps([_id(survey, one) for one in form[name].split("; ")])
         yield form
 
 

@@ -15,6 +15,7 @@ import pytest
 from demo_survey import finished, make
 from tests.conftest import Browser
 from webapp import create_app, demo
+from webapp.bottles.service import judged_of
 from webapp.config import read_config
 from webapp.db import Database, make_engine
 from webapp.people.queries import find_by_sign_in, surveys_of
@@ -145,6 +146,22 @@ def test_readme_says_what_the_checks_of_meter_b_find(july):
 def test_only_d8_was_left_before_it_was_done_and_nobody_has_reviewed_anything(july):
     assert [one.station_code for one in july.occasions if one.visit.facts["status"] == "partial"] == ["D8"]
     assert {one.reading.review for one in july.by_id.values()} == {"open"}
+
+
+def test_readme_says_what_the_laboratory_found(reading_db, surveys):
+    bottles = {one.bottle.code: one for one in judged_of(reading_db, surveys[1], datetime.now(UTC))}
+    assert f"{len(bottles)} bottles went to the laboratory" in README
+    assert {one.bottle.analysis for one in bottles.values()} == {"bod5"}
+    assert {code: one.reasons for code, one in bottles.items() if one.reasons} == {
+        "SW-01": ("past_hold_time",),
+        "SW-04": ("below_limit",),
+    }
+    assert f"SW-01 was set up {bottles['SW-01'].hold.hours:.1f} h after it was filled" in README
+    blank, (first, again) = bottles["SW-04"], (bottles[code] for code in ("SW-02", "SW-03"))
+    assert (blank.bottle.kind, blank.result.value, blank.result.limit_value) == ("blank", None, 2.0)
+    assert f"SW-04 came back as “{blank.reported}”" in README
+    assert again.bottle.replicate_of == first.bottle.code
+    assert f"agree: {first.reported} and {again.reported} mg/L" in README
 
 
 def test_moved_over_the_end_of_summer_time_every_interval_stays(tmp_path, database_with_people):
