@@ -1,16 +1,13 @@
 """All that a page about a visit shows: what is known, what is disputed, who said what, the readings of the time."""
 
 from dataclasses import dataclass, field
-from datetime import datetime, timedelta
+from datetime import datetime
 
-from webapp.readings.layers import final
+from webapp.readings.occasions import Occasion
 from webapp.visits.changes import Seen, seen_at
 from webapp.visits.layers import FinalVisit, final_visit
 from webapp.visits.sun import Sun, place_of, sun_at
 from webapp.visits.words import LABELS, group_of, told, words_of
-
-# A crew that forgot to say that it left did not stay longer than this.
-UNENDED = timedelta(hours=2)
 
 
 @dataclass(frozen=True)
@@ -35,7 +32,7 @@ class Entry:
 
 @dataclass(frozen=True)
 class Account:
-    """A visit with all that belongs to it."""
+    """A visit with all that belongs to it; occasion holds its readings and what they say of the section."""
 
     visit: FinalVisit
     seen: Seen
@@ -43,11 +40,11 @@ class Account:
     lines: list
     disputes: tuple
     entries: tuple
-    readings: tuple
+    occasion: Occasion | None
 
 
-def account_of(show, visit, visits, readings, tables, settings):
-    """Return the Account of a Visit; visits and readings are the survey's, tables the plan's."""
+def account_of(show, visit, visits, occasions, tables, settings):
+    """Return the Account of a Visit; visits and occasions are the survey's, tables the plan's."""
     finals = [final_visit(one) for one in visits]
     own = final_visit(visit)
     return Account(
@@ -57,7 +54,7 @@ def account_of(show, visit, visits, readings, tables, settings):
         lines=told(show, own.facts),
         disputes=_disputes(show, own),
         entries=tuple(_entry(show, one) for one in sorted(visit.entries, key=lambda one: (one.made_at, one.id))),
-        readings=tuple(_readings(own, finals, readings)),
+        occasion=next((one for one in occasions if one.visit and one.visit.id == own.id), None),
     )
 
 
@@ -88,19 +85,3 @@ def _facts(entry):
 def _entry(show, entry):
     emptied = [LABELS[name] for name, value in entry.facts.items() if value is None and name in LABELS]
     return Entry(entry.author.name, entry.made_at, told(show, _facts(entry)), entry.reason, emptied)
-
-
-def _readings(visit, visits, readings):
-    """Return the readings at the station while the crew was there, in time order."""
-    if visit.arrived_at is None:
-        return []
-    ends = visit.left_at or _next_arrival(visit, visits)
-    there = [one for one in map(final, readings) if one.station_code == visit.station_code]
-    return [one for one in there if visit.arrived_at <= one.taken_at <= ends]
-
-
-def _next_arrival(visit, visits):
-    """Return when a visit that nobody ended was over at the latest."""
-    later = [one.arrived_at for one in visits if one.station_code == visit.station_code and one.arrived_at]
-    later = [at for at in later if at > visit.arrived_at]
-    return min([*later, visit.arrived_at + UNENDED])

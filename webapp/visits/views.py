@@ -14,7 +14,9 @@ from webapp.htmx import page_or_part, wants_fragment
 from webapp.people.access import needs
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import thresholds
-from webapp.readings.queries import get_station, readings_of
+from webapp.readings.judging import judgement_of
+from webapp.readings.quality_words import QUALITIES
+from webapp.readings.queries import get_station
 from webapp.readings.surroundings import where
 from webapp.surveys.queries import current_settings, get_survey
 from webapp.visits import account, changes, forms, queries, service, words
@@ -164,8 +166,8 @@ def _visit_page(survey, visit_id, status=200, errors=None, form=None):
     db, show = get_db(), Show.of(survey)
     visit = queries.get_visit(db, survey.id, visit_id)
     plan, settings = current_plan(db, survey.id), thresholds(current_settings(db, survey.id))
-    visits, readings = queries.visits_of(db, survey.id), readings_of(db, survey.id)
-    told = account.account_of(show, visit, visits, readings, plan.tables if plan else {}, settings)
+    visits, judgement = queries.visits_of(db, survey.id), judgement_of(db, survey)
+    told = account.account_of(show, visit, visits, judgement.occasions, plan.tables if plan else {}, settings)
     return page_or_part(
         "visits/page.html",
         "visits/_visit.html",
@@ -174,6 +176,8 @@ def _visit_page(survey, visit_id, status=200, errors=None, form=None):
         show=show,
         tab="fieldsheet",
         account=told,
+        judged=judgement.by_id,
+        qualities=QUALITIES,
         visit=told.visit,
         errors=errors or {},
         form=form or {},
