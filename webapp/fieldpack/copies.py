@@ -7,6 +7,7 @@ from datetime import UTC, datetime
 
 from sqlalchemy.exc import IntegrityError
 
+from webapp.bottles import copies as bottles
 from webapp.errors import Conflict, NotFound
 from webapp.meters import copies as checks
 from webapp.readings import copies as readings
@@ -18,7 +19,7 @@ MOST_RECORDS = 2000
 STORED, THERE, REFUSED = "stored", "there already", "not stored"
 OTHERS_NAME = "It was taken by somebody else. They can send it from their phone, or the lead or office takes this file."
 # Each kind of record is parsed and stored by the feature that it belongs to.
-TAKERS = {"reading": readings.take, "visit": visits.take, "check": checks.take}
+TAKERS = {"reading": readings.take, "visit": visits.take, "check": checks.take, "bottle": bottles.take}
 
 
 class BadCopy(ValueError):
