@@ -306,7 +306,9 @@ def test_meter_that_readings_name_but_nobody_registered_is_told(day):
     day.reading("D1", 1, meter="meter a")
     day.reading("D1", 2, meter="Meter B")
     with day.database.reading() as db:
-        assert unregistered(queries.meters_of(db, day.survey.id), readings_of(db, day.survey.id)) == ["Meter B"]
+        assert unregistered(queries.meters_of(db, day.survey.id), queries.names_read_with(db, day.survey.id)) == [
+            "Meter B"
+        ]
 
 
 def test_day_without_end_check_leaves_every_reading_questionable_and_says_so(day, closings):

@@ -4,7 +4,7 @@ from sqlalchemy import func, select
 from sqlalchemy.orm import joinedload, selectinload
 
 from webapp.errors import NotFound
-from webapp.models import History, Meter, MeterCheck, MeterCheckEvent, Person
+from webapp.models import History, Meter, MeterCheck, MeterCheckEvent, Person, Reading
 
 _WITH = (
     joinedload(MeterCheck.meter),
@@ -64,3 +64,19 @@ def changes_of(db, survey_id, meter_id):
     query = select(History, Person.name).outerjoin(Person, Person.id == History.person_id)
     query = query.where(History.survey_id == survey_id, History.entity == "meter", History.entity_id == meter_id)
     return db.execute(query.order_by(History.at, History.id)).all()
+
+
+def latest_readings(db, survey_id, span):
+    """Return the readings within a span of time before the last one, with what hangs on them, in time order."""
+    last = db.scalar(select(func.max(Reading.taken_at)).where(Reading.survey_id == survey_id))
+    if last is None:
+        return []
+    query = select(Reading).where(Reading.survey_id == survey_id, Reading.taken_at >= last - span)
+    query = query.options(joinedload(Reading.station), selectinload(Reading.events))
+    return list(db.scalars(query.order_by(Reading.taken_at, Reading.id)))
+
+
+def names_read_with(db, survey_id):
+    """Return every name of a meter that readings of a survey have."""
+    query = select(Reading.meter).where(Reading.survey_id == survey_id, Reading.meter != "")
+    return list(db.scalars(query.distinct().order_by(Reading.meter)))

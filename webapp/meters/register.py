@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from webapp.meters import asking, queries
 from webapp.meters.new import find_meter
 from webapp.meters.service import expected_of
-from webapp.meters.state import MeterState, in_order, meter_states, unregistered
+from webapp.meters.state import LATELY, MeterState, in_order, meter_states, unregistered
 from webapp.meters.steps import Step, next_step
 from webapp.meters.verdicts import JudgedCheck, judged_checks
 from webapp.meters.words import KINDS, MADE_WITH_AIR, PARAMETERS, value_text
@@ -13,7 +13,6 @@ from webapp.plan.queries import current_plan
 from webapp.readings.asking import thresholds
 from webapp.readings.check import PRESSURE_FROM
 from webapp.readings.expected import prediction_or_reasons
-from webapp.readings.queries import readings_of
 from webapp.readings.service import station_pressure_of
 from webapp.surveys.queries import current_settings
 
@@ -46,15 +45,19 @@ class SeenCheck:
 def register_of(db, survey, show, now):
     """Return the Register of a survey at an instant."""
     meters, judged, settings = _known(db, survey)
-    readings = readings_of(db, survey.id)
-    states = meter_states(show, meters, judged, readings, settings, now, lowest_expected(db, survey))
-    return Register(states, judged[::-1], unregistered(meters, readings))
+    states = _states(db, survey, show, meters, judged, settings, now)
+    return Register(states, judged[::-1], unregistered(meters, queries.names_read_with(db, survey.id)))
 
 
 def _known(db, survey):
     settings = thresholds(current_settings(db, survey.id))
     judged = in_order(judged_checks(queries.checks_of(db, survey.id), settings))
     return queries.meters_of(db, survey.id), judged, settings
+
+
+def _states(db, survey, show, meters, judged, settings, now):
+    readings = queries.latest_readings(db, survey.id, LATELY)
+    return meter_states(show, meters, judged, readings, settings, now, lowest_expected(db, survey))
 
 
 def lowest_expected(db, survey):
@@ -75,8 +78,7 @@ def proposed(db, survey, show, now, asked, last=None):
     parameter = asked["parameter"] if asked["parameter"] in PARAMETERS else "do"
     kind = asked["kind"] if asked["kind"] in KINDS else ""
     if meter is not None and not kind and parameter == "do":
-        readings = readings_of(db, survey.id)
-        states = meter_states(show, meters, judged, readings, settings, now, lowest_expected(db, survey))
+        states = _states(db, survey, show, meters, judged, settings, now)
         kind = next(one.next_kind for one in states if one.meter.name.casefold() == meter.name.casefold())
     return meter.id if meter else "", kind or "as_found", parameter
 

@@ -14,6 +14,8 @@ from webapp.readings.layers import final
 ENDS_THE_DAY = ("end_of_day", "after_cleaning")
 # Readings older than this, before the meter's last one, are of another day.
 DAY = timedelta(hours=24)
+# How far back from the last reading of a survey its meters are looked at: a longer time no check closes any more.
+LATELY = timedelta(hours=72)
 
 # Checks typed with the same minute, in the order in which they are made.
 SAME_MINUTE = ("as_found", "field", "end_of_day", "after_cleaning", "adjusted", "read_back", "zero")
@@ -41,7 +43,8 @@ class MeterState:
 def meter_states(show, meters, judged, readings, settings, now, lowest_mg_l=None):
     """Return the MeterState of each meter; two rows of one name are one meter.
 
-    judged are all JudgedChecks of the survey in_order, readings its Readings, lowest_mg_l the lowest oxygen it expects.
+    judged are all JudgedChecks of the survey in_order, readings at least its Readings LATELY, lowest_mg_l the lowest
+    oxygen it expects.
     """
     named = {}
     for meter in meters:
@@ -87,10 +90,10 @@ def _of_last_day(readings):
     ]
 
 
-def unregistered(meters, readings):
+def unregistered(meters, names):
     """Return the names of meters that readings were taken with and the register does not know."""
-    known = {one.name.casefold() for one in meters}
-    return sorted({one.meter for one in readings if one.meter and one.meter.casefold() not in known})
+    read_with = {name.casefold(): name for name in names}
+    return sorted(read_with[name] for name in read_with.keys() - {one.name.casefold() for one in meters})
 
 
 def _state(show, meter, checks, readings, settings, now, lowest_mg_l):
