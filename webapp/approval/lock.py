@@ -6,7 +6,8 @@ from webapp.errors import Conflict
 from webapp.models import Survey, SurveyEvent
 
 REVIEWED, APPROVED, REOPENED = "survey reviewed", "survey approved", "survey opened again"
-# What of a survey's history changes no number, plan, setting or fact of it: who is on it, and how they sign in.
+# What of a survey's history changes no number, plan, setting or fact of it: who is on it, how they sign in, and that it
+# came here whole.
 PEOPLE = frozenset(
     {
         "person added",
@@ -15,6 +16,7 @@ PEOPLE = frozenset(
         "invitation withdrawn",
         "phone signed in by invitation",
         "phone signed out",
+        "dataset imported",
     }
 )
 OWN = frozenset({REVIEWED, APPROVED, REOPENED})

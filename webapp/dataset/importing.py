@@ -17,11 +17,12 @@ __all__ = ["BadDataset", "BadSurveyFile", "Found", "import_dataset", "look"]
 class Found:
     """What a dataset holds, and how that compares with what is here.
 
-    changed are the files that were changed since it was made, here_only how many rows of each table only this server
-    has, by what they are called.
+    version is what it calls itself, changed the files that were changed since it was made, here_only how many rows of
+    each table only this server has, by what they are called.
     """
 
     outcome: merge.Outcome
+    version: str
     changed: tuple
     here_only: tuple
 
@@ -34,7 +35,7 @@ class Found:
 
 def look(db, content, person_id):
     """Return what a dataset's zip holds. Raises BadDataset, BadSurveyFile; NotAllowed for a survey of others here."""
-    file, changed = read(content)
+    file, version, changed = read(content)
     survey_id = file["survey"][0]["id"]
     if queries.find_survey(db, survey_id) is None:
         here = {name: [] for name in CARRIED}
@@ -47,7 +48,7 @@ def look(db, content, person_id):
     here["person"] = queries.people_of(db, {row["id"] for row in file["person"]})
     outcome = merge.merged(file, here)
     service.refuse_ids_of_others(db, outcome)
-    return Found(outcome, changed, _here_only(file, here) if not outcome.new else ())
+    return Found(outcome, version, changed, _here_only(file, here) if not outcome.new else ())
 
 
 def _here_only(file, here):
@@ -77,7 +78,7 @@ def import_dataset(db, content, person_id, mark):
 
 def _saying(found):
     def say(db, outcome, by_id):
-        told = {**service.told_of(outcome), "changed": list(found.changed)}
+        told = {**service.told_of(outcome), "version": found.version, "changed": list(found.changed)}
         if by_id not in {row["person_id"] for row in outcome.added["survey_member"]}:
             db.add(SurveyMember(survey_id=outcome.survey_id, person_id=by_id))
             told["put_on"] = by_id

@@ -13,7 +13,7 @@ _DECIMALS = 4
 
 @dataclass(frozen=True)
 class Line:
-    """A Reading, as it stands, what follows from it, and what is said of it; stored is its row as it is kept."""
+    """A reading as it is stored, as the dataset keeps it, as it stands, what follows from it and is said of it."""
 
     reading: object
     stored: dict

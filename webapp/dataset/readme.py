@@ -4,6 +4,7 @@ import textwrap
 
 from webapp.dataset.about import BANKS, LIMITS, ROUNDING, ZERO
 from webapp.dataset.equations import EQUATION_SET
+from webapp.dataset.recipes import BY_TOOL
 
 _WIDTH = 88
 
@@ -26,7 +27,7 @@ def readme(about, survey, tables):
         "How it is written",
         *(f"  {line}" for line in _CONVENTIONS),
         "How to open it",
-        *(f"  {line}" for line in _RECIPES),
+        *(line for tool, lines in BY_TOOL for line in (f"  {tool}:", *(f"    {one}" for one in lines))),
         "Not in here",
         "  left_out.csv lists what was left out on purpose. Notes and reasons are as people wrote them: read them "
         "before you publish.",
@@ -58,15 +59,6 @@ def _version(event):
     return f"{event['at']}: {event['what']} by {event['by']}, version {event['version']}.{why}"
 
 
-_RECIPES = (
-    'pandas: readings = pandas.read_csv("readings.csv", keep_default_na=False, na_values=[""]); '
-    'readings["taken_at"] = pandas.to_datetime(readings["taken_at"], utc=True); '
-    'good = readings[~readings["quality"].isin(["bad", "missing"])]',
-    'R: readings <- read.csv("readings.csv", na.strings = "", encoding = "UTF-8"); '
-    'readings$at <- as.POSIXct(sub(":([0-9]{2})$", "\\\\1", readings$taken_at), format = "%Y-%m-%dT%H:%M:%S%z"); '
-    'good <- subset(readings, !quality %in% c("bad", "missing"))',
-    "A spreadsheet: import station_summary.csv as UTF-8 text with comma and decimal point; it is rounded for people.",
-)
 _CONVENTIONS = (
     "CSV as in RFC 4180: UTF-8, comma, decimal point, a header; an empty cell is a missing value.",
     "Units are SI and stand in every column's name; dictionary.csv gives them as UCUM codes.",
@@ -98,6 +90,8 @@ def _criterion(survey):
 
 
 def _wrapped(paragraph):
+    if paragraph.startswith("    "):  # a line to copy
+        return paragraph
     hang = "    " if paragraph.startswith("  ") else ""
     return "\n".join(
         textwrap.fill(line, _WIDTH, subsequent_indent=hang, break_long_words=False, break_on_hyphens=False)

@@ -3,6 +3,7 @@
 import re
 import unicodedata
 from dataclasses import dataclass
+from types import SimpleNamespace
 
 from webapp.approval.queries import APPROVED, state_of
 from webapp.bottles.judged import judged_bottles
@@ -21,7 +22,6 @@ from webapp.plan.prediction import prediction_of
 from webapp.readings.asking import thresholds
 from webapp.readings.judging import judgement_of
 from webapp.readings.quality_words import REASONS
-from webapp.readings.queries import readings_of
 from webapp.review.derived import derive
 from webapp.review.drift import drift_pairs
 from webapp.surveyfile.queries import rows_of
@@ -98,7 +98,7 @@ def _gathered(db, survey):
     names = keeping.Names.of(rows)
     versions = plan_queries.plan_versions(db, survey.id)
     settings, judgement = current_settings(db, survey.id), judgement_of(db, survey)
-    state = state_of(db, survey.id).kind
+    state, plan = state_of(db, survey.id).kind, versions[0] if versions else None
     return Gathered(
         survey=survey,
         rows=rows,
@@ -107,7 +107,7 @@ def _gathered(db, survey):
         settings=settings,
         state=state,
         judgement=judgement,
-        lines=_lines(db, survey, versions, judgement, rows, names, thresholds(settings).oxygen_low_mg_l, state),
+        lines=_lines(survey, plan, judgement, rows, names, thresholds(settings).oxygen_low_mg_l, state),
         bottles=judged_bottles(bottles_of(db, survey.id), results_of(db, survey.id), thresholds(settings)),
     )
 
@@ -171,26 +171,25 @@ def _predicted(by, survey, plan):
     return None if found is None or hasattr(found, "missing") else found
 
 
-def _lines(db, survey, versions, judgement, rows, names, limit, state):
-    readings = readings_of(db, survey.id)
-    plan = versions[0] if versions else None
+def _lines(survey, plan, judgement, rows, names, limit, state):
     stations = (plan.tables.get("stations") or []) if plan else []
-    finals = [judgement.by_id[one.id].reading for one in readings]
+    kept = keeping.kept_rows("reading", rows["reading"], names)
+    readings = {row["id"]: SimpleNamespace(**row) for row in rows["reading"]}
+    finals = [judgement.by_id[row["reading_id"]].reading for row in kept]
     derived = derive(survey, stations, _predicted(today_of, survey, plan), finals)
-    stored = {row["reading_id"]: row for row in keeping.kept_rows("reading", rows["reading"], names)}
     return [
         Line(
-            reading=reading,
-            stored=stored[reading.id],
+            reading=readings[final.id],
+            stored=row,
             final=final,
             derived=one,
-            judged=judgement.by_id[reading.id],
+            judged=judgement.by_id[final.id],
             censor="less_than" if final.do_mg_l is not None and final.do_mg_l < limit else "none",
             limit_mg_l=limit,
             status=_status(state, final),
             reviewer=names.people.get(final.reviewer_id, ""),
         )
-        for reading, final, one in zip(readings, finals, derived, strict=True)
+        for row, final, one in zip(kept, finals, derived, strict=True)
     ]
 
 

@@ -17,15 +17,15 @@ MOST_FILES = 80
 
 
 def read(content):
-    """Return ({table: stored rows}, files that were changed since they were made) of a dataset's zip.
+    """Return ({table: stored rows}, its version, files that were changed since they were made) of a dataset's zip.
 
     Raises BadDataset, with the cells that can't be read, or BadSurveyFile where the rows are not those of a survey.
     """
     files = _files(content)
-    _check_layout(files)
+    version = _version(files)
     tables = _tables(Reader(files))
     checks.check(tables)
-    return tables, _changed(files)
+    return tables, version, _changed(files)
 
 
 def _files(content):
@@ -39,7 +39,7 @@ def _files(content):
     return {name.removeprefix(folder): files[name] for name in inside if name.startswith(folder)}
 
 
-def _check_layout(files):
+def _version(files):
     try:
         package = json.loads(files["datapackage.json"].decode("utf-8"))
         layout = package.get("bankside_layout", 0)
@@ -52,6 +52,7 @@ def _check_layout(files):
             "An older Bankside made this dataset, without all that an import needs. Make it again with a newer one, or "
             "import the survey file instead."
         )
+    return str(package.get("version", ""))[:80]
 
 
 def _changed(files):

@@ -8,13 +8,13 @@ import zipfile
 import zlib
 
 from webapp.dataset.package import checksums, zipped
+from webapp.heldfile import LARGEST
 from webapp.surveyfile.tables import CARRIED
 
 FORMAT = "Bankside survey file"
 VERSION = 1
 MANIFEST = "survey-file.json"
 CHECKSUMS = "checksums.txt"
-LARGEST = 3_500_000  # on the way in it travels once more inside a form, a third longer
 LARGEST_UNPACKED = 50_000_000
 MOST_ROWS = 200_000
 _NEWER = "Update Bankside on this server, then import the file again."

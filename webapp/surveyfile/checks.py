@@ -1,16 +1,17 @@
 """Whether the rows of a survey file fit together, and hold only what Bankside's own forms could have stored."""
 
 import math
-from datetime import datetime
 from zoneinfo import available_timezones
 
 from calc.errors import CalcError
 from calc.settings import Settings
 from calc.units import UNITS
 from webapp.people.access import ROLES
+from webapp.plan.rows import refused_code
 from webapp.plan.tables import ALL_TABLES
 from webapp.readings.columns import PERCENT_BASES, POSITIONS, PRESSURE_SOURCES, READINGS, VELOCITY_METHODS
 from webapp.readings.layers import EVENTS, NUMBERS
+from webapp.surveyfile import shapes
 from webapp.surveyfile.archive import BadSurveyFile
 from webapp.surveyfile.tables import CARRIED, NUMBERED, STAYS_HERE, carried
 
@@ -28,6 +29,7 @@ _CHOICES = {
         "velocity_method": VELOCITY_METHODS,
     },
     "reading_event": {"kind": EVENTS},
+    **shapes.CHOICES,
 }
 _LIMITS = {
     column.key: (column.low, column.high)
@@ -48,6 +50,10 @@ def check(tables):
     for name, look in _LOOKS.items():
         for row in tables[name]:
             look(row)
+    for name, shape in shapes.SHAPES.items():
+        for row in tables[name]:
+            for column in shape(row):
+                _want(False, name, row, column)
 
 
 def _choices(tables):
@@ -104,6 +110,7 @@ def _stations_and_plans(tables):
     codes = {row["code"] for row in tables["station"]}
     if len({code.casefold() for code in codes}) != len(tables["station"]):
         raise BadSurveyFile("Two stations of the file have the same code.")
+    ever = set()
     for version in tables["plan_version"]:
         plan = version["tables"]
         _want(isinstance(plan, dict) and set(plan) <= set(ALL_TABLES), "plan_version", version, "tables")
@@ -113,6 +120,9 @@ def _stations_and_plans(tables):
                 _plan_row(version, ALL_TABLES[key], row)
         planned = {row["code"] for row in plan.get("stations", [])}
         _want(planned <= codes, "plan_version", version, "stations")
+        ever |= planned
+    for row in tables["station"]:  # every code was planned once, and stands in the address of pages
+        _want(row["code"] in ever and refused_code(row["code"]) is None, "station", row, "code")
 
 
 def _plan_row(version, table, row):
@@ -132,16 +142,8 @@ def _fits(column, value):
     if column.quantity == "yes_no":
         return isinstance(value, bool)
     if column.quantity == "time":
-        return _is_time(value)
+        return shapes.is_time(value)
     return isinstance(value, int | float) and not isinstance(value, bool) and abs(value) <= 1e6
-
-
-def _is_time(value):
-    try:
-        instant = datetime.fromisoformat(value)
-    except (TypeError, ValueError):
-        return False
-    return instant.tzinfo is not None and 1990 <= instant.year <= 2200
 
 
 def _settings(row):
@@ -156,15 +158,8 @@ def _settings(row):
 def _reading(row):
     _within(_LIMITS, "reading", row)
     entered, kept = row.get("entered", {}), row.get("kept_findings", [])
-    _want(isinstance(entered, dict) and all(_typed(one) for one in entered.values()), "reading", row, "entered")
-    fits = isinstance(kept, list) and all(
-        isinstance(one, dict) and all(isinstance(value, str) for value in one.values()) for one in kept
-    )
-    _want(fits, "reading", row, "kept_findings")
-
-
-def _typed(one):
-    return isinstance(one, dict) and isinstance(one.get("text"), str) and str(one.get("unit")) in UNITS
+    _want(shapes.is_typed(entered, UNITS), "reading", row, "entered")
+    _want(shapes.is_findings(kept), "reading", row, "kept_findings")
 
 
 def _event(row):
