@@ -1,4 +1,4 @@
-"""The readings table and the full export of a survey with 5000 readings: python -m tests.bench.export
+"""The readings table, the review and the full export of a survey with 5000 readings: python -m tests.bench.export
 
 Prints seconds, and each as a ratio to writing the same 5000 readings out with nothing but the csv module.
 """
@@ -17,26 +17,29 @@ from webapp.dataset import service as dataset
 from webapp.models import Reading, Survey
 from webapp.people.queries import find_by_sign_in
 from webapp.plan.queries import current_plan, stations_of
+from webapp.readings import judging
 from webapp.readings.queries import readings_of
 
 READINGS = 5000
 GOAL_TABLE_S, GOAL_EXPORT_S = 1.0, 3.0
+PAGES = {"readings table": "readings", "bad ones of it": "readings?quality=questionable&page=2", "review": "review"}
 
 
 def filled(db):
     """Load the demo and add readings up to READINGS; return the survey."""
     demo.load(db, datetime.now(UTC))
     survey = db.scalar(select(Survey))
-    station, plan = stations_of(db, survey.id)["D3"], current_plan(db, survey.id)
+    stations, plan = list(stations_of(db, survey.id).values()), current_plan(db, survey.id)
     author = find_by_sign_in(db, "crew")
     begin = datetime.now(UTC) - timedelta(days=5)
     db.add_all(
         Reading(
             survey_id=survey.id,
-            station_id=station.id,
+            station_id=stations[number // 3 % len(stations)].id,
             plan_version_id=plan.id,
             author_id=author.id,
             taken_at=begin + timedelta(minutes=number),
+            meter="Meter A",
             do_mg_l=4.5 + number % 7 / 100,
             water_temp_c=20.1,
             pressure_mmhg=732.0,
@@ -76,15 +79,31 @@ def main():
         client = app.test_client()
         name, password, _ = demo.SIGN_INS[2]
         client.post("/sign-in", data={"sign_in": name, "password": password})
-        table = timed(lambda: client.get(f"/surveys/{survey_id}/readings"))
+        pages = {name: _both_times(client, f"/surveys/{survey_id}/{path}") for name, path in PAGES.items()}
         with database.reading() as db:
             survey = db.scalar(select(Survey))
             readings = readings_of(db, survey_id)
             plain = timed(lambda: plainly_written(readings))
         export = timed(lambda: _export(database))
         database.engine.dispose()
-    print(f"readings table of {READINGS}: {table:.2f} s (goal {GOAL_TABLE_S:.0f}), {table / plain:.1f} x plain CSV")
+    for name, (cold, warm) in pages.items():
+        print(f"{name} of {READINGS}: {cold:.2f} s (goal {GOAL_TABLE_S:.0f}), {cold / plain:.1f} x plain CSV;", end=" ")
+        print(f"{warm:.2f} s while nothing changes")
     print(f"full export as a zip: {export:.2f} s (goal {GOAL_EXPORT_S:.0f}), {export / plain:.1f} x plain CSV")
+
+
+def _both_times(client, address):
+    """Return the time of a page when everything is judged anew, and when nothing changed since. [s]"""
+
+    def fetched():
+        answer = client.get(address)
+        assert answer.status_code == 200, answer.status
+
+    def judged_anew():
+        judging._kept.clear()
+        fetched()
+
+    return timed(judged_anew), timed(fetched)
 
 
 def _export(database):

@@ -25,7 +25,8 @@ class Evidence:
     """What there is about a reading.
 
     neighbours are the stations read upstream and downstream near in time, repeats what it repeats and what repeats it,
-    section the other points of the same occasion. settled is calc's Stability of the raw values of oxygen, why that of
+    section the other points of the same occasion. only_then are the findings that the crew was asked about, and that
+    today's numbers and settings no longer give. settled is calc's Stability of the raw values of oxygen, why that of
     whatever was still moving; both None without raw values.
     """
 
@@ -33,6 +34,7 @@ class Evidence:
     neighbours: tuple[Beside, ...]
     repeats: tuple[Beside, ...]
     section: tuple[Beside, ...]
+    only_then: tuple[dict, ...]
     settled: object
     why: object
 
@@ -62,21 +64,23 @@ class Evidence:
         return review_of(self.judged.reading)
 
 
-def evidence_of(db, survey, reading_id):
-    """Return the Evidence about a reading of the survey."""
+def evidence_of(db, survey, reading):
+    """Return the Evidence about a Reading of the survey."""
     judgement = judgement_of(db, survey)
-    judged = judgement.by_id[reading_id]
+    judged = judgement.by_id[reading.id]
+    found = {one.name for one in judged.findings}
     settings = thresholds(current_settings(db, survey.id))
     now, around = judged.reading, judged.around
     sides = (("Upstream", around.upstream), ("Downstream", around.downstream))
     repeats = [("It repeats", judgement.by_id[judged.repeats_id])] if judged.repeats_id in judgement.by_id else []
-    repeats += [("Repeated by", one) for one in judgement.by_id.values() if one.repeats_id == reading_id]
-    shown = {reading_id, *(one.reading.id for _, one in repeats)}
+    repeats += [("Repeated by", one) for one in judgement.by_id.values() if one.repeats_id == reading.id]
+    shown = {reading.id, *(one.reading.id for _, one in repeats)}
     return Evidence(
         judged=judged,
         neighbours=tuple(_beside(what, one.reading, now) for what, one in sides if one),
         repeats=tuple(_beside(what, one.reading, now) for what, one in repeats),
         section=tuple(_beside("In the section", one, now) for one in judged.occasion.readings if one.id not in shown),
+        only_then=tuple(one for one in reading.kept_findings if one.get("name") not in found),
         settled=spread_of(now.series, settings),
         why=stability_of(now.series, settings),
     )

@@ -9,7 +9,7 @@ from webapp.readings.layers import FinalReading, final
 from webapp.review.bulk import why_alone
 from webapp.review.derived import Derived, derive
 from webapp.review.numbers import CORRECTABLE, as_typed
-from webapp.review.words import BRACKETS, QUALITY_NAMES, odd_of, reasons_in_words, review_of
+from webapp.review.words import BRACKETS, QUALITY_NAMES, also_of, odd_of, review_of
 
 
 @dataclass(frozen=True)
@@ -66,12 +66,15 @@ class TableRow:
 
 @dataclass(frozen=True)
 class TodoRow:
-    """A reading as the list of what needs a look shows it; alone says why it can't be kept together with others."""
+    """A reading as the list of what needs a look shows it: odd in a sentence, also what else there is.
+
+    alone says why it can't be kept together with others.
+    """
 
     judged: Judged
     odd: str
     quality: str
-    reasons: list
+    also: list
     review: str
     alone: str
 
@@ -117,7 +120,7 @@ def todo_rows(judged, person_id):
             judged=one,
             odd=odd_of(one),
             quality=QUALITY_NAMES[one.quality],
-            reasons=reasons_in_words(one),
+            also=also_of(one),
             review=review_of(one.reading),
             alone=why_alone(one, person_id),
         )

@@ -235,7 +235,7 @@ def _reading(survey_id, reading_id, status=200, errors=None, conflict="", done=F
         tab="readings",
         row=row,
         lines=number_lines(row),
-        evidence=evidence_of(db, survey, reading_id),
+        evidence=evidence_of(db, survey, reading),
         meter_words=meter_words,
         may_decide=service.may_decide(current_user, reading),
         may_review=service.may_review(current_user, reading),

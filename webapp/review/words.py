@@ -29,14 +29,14 @@ def review_of(now):
 
 def odd_of(judged):
     """Return what is odd about a reading in one sentence: the finding that weighs most."""
-    found = sorted(judged.findings, key=lambda one: -_weight(one.name))
-    if found:
-        return found[0].says
-    reasons = [reason for reason in judged.reasons if reason not in TELLING]
-    if reasons:
-        words = REASONS[max(reasons, key=lambda reason: WEIGHTS.get(reason, 0))]
-        return f"{words[0].upper()}{words[1:]}."
-    return "Nothing is odd." if judged.reading.review == KEPT else "Nothing is odd; nobody has looked yet."
+    says, _ = _oddest(judged)
+    return says
+
+
+def also_of(judged):
+    """Return the reasons of a reading in plain words, without the one that odd_of tells."""
+    _, told = _oddest(judged)
+    return [REASONS[reason] for reason in judged.reasons if reason != told]
 
 
 def reasons_in_words(judged):
@@ -44,5 +44,15 @@ def reasons_in_words(judged):
     return [REASONS[reason] for reason in judged.reasons]
 
 
-def _weight(name):
-    return WEIGHTS.get(REASON_OF.get(name, "other"), 0)
+def _oddest(judged):
+    """Return the sentence that tells the worst reason, and that reason; what a correction mended is no longer odd."""
+    reasons = [reason for reason in judged.reasons if reason not in TELLING]
+    if not reasons:
+        looked = judged.reading.review == KEPT
+        return ("Nothing is odd." if looked else "Nothing is odd; nobody has looked yet."), ""
+    worst = max(reasons, key=lambda reason: WEIGHTS.get(reason, 0))
+    for finding in judged.findings:
+        if REASON_OF.get(finding.name, "other") == worst:
+            return finding.says, worst
+    words = REASONS[worst]
+    return f"{words[0].upper()}{words[1:]}.", worst
