@@ -126,10 +126,10 @@ def page_as(browser, demo, signed_in_states):
         context.close()
 
 
-def survey_address(page):
-    """Open the surveys and return the path of the demo survey."""
+def survey_address(page, name="Sallow Water, August low flow"):
+    """Open the surveys and return the path of one of the demo's, of the one that is going on unless told otherwise."""
     page.goto("/")
-    link = page.get_by_role("link", name="Sallow Water, August low flow")
+    link = page.get_by_role("link", name=name)
     return link.get_attribute("href").removesuffix("/sheet")
 
 

@@ -20,10 +20,12 @@ def main():
         browser = play.chromium.launch(executable_path=chromium_path())
         crew, lead, office = (_signed_in(browser, address, role) for role in ("crew", "lead", "office"))
         _the_plan(office)
+        _the_meters(crew)
         _the_field_sheet(crew)
         _a_reading_and_its_check(crew)
         _the_sag(lead)
         _the_readings(office)
+        _the_review_and_the_drift(lead)
         browser.close()
 
 
@@ -53,6 +55,11 @@ def _the_plan(page):
     _take(page, "plan", ".top")
 
 
+def _the_meters(page):
+    page.goto(f"{survey_address(page)}/meters")
+    _take(page, "meters", "h1")
+
+
 def _the_field_sheet(page):
     page.goto(f"{survey_address(page)}/sheet")
     _take(page, "fieldsheet", ".next-stop")
@@ -78,6 +85,14 @@ def _the_sag(page):
 def _the_readings(page):
     page.goto(f"{survey_address(page)}/readings")
     _take(page, "readings", ".top")
+
+
+def _the_review_and_the_drift(page):
+    survey = survey_address(page, "Sallow Water, July low flow")
+    page.goto(f"{survey}/review")
+    _take(page, "review", "h1")
+    page.goto(f"{survey}/review/drift")
+    _take(page, "drift", "main section.card")
 
 
 if __name__ == "__main__":
