@@ -17,6 +17,7 @@ from webapp.meters.steps import next_step
 from webapp.meters.verdicts import judged_checks
 from webapp.models import MeterCheck
 from webapp.people.access import SignedIn
+from webapp.readings.judging import judgement_of
 from webapp.readings.queries import readings_of
 from webapp.surveys.queries import history_of
 
@@ -53,6 +54,18 @@ def state(day, judged):
             return meter_states(VIENNA, meters, judged(), readings, SETTINGS, now, **more)[0]
 
     return at
+
+
+@pytest.fixture
+def readings_judged(day):
+    """A function to (bracket, quality, reasons, grade) of each reading of the survey."""
+
+    def now():
+        with day.database.reading() as db:
+            found = judgement_of(db, db.merge(day.survey)).by_id.values()
+            return [(one.bracket.state, one.quality, one.reasons, one.grade) for one in found]
+
+    return now
 
 
 @pytest.fixture
@@ -311,7 +324,7 @@ def test_meter_that_readings_name_but_nobody_registered_is_told(day):
         ]
 
 
-def test_day_without_end_check_leaves_every_reading_questionable_and_says_so(day, closings):
+def test_day_without_end_check_leaves_every_reading_questionable_and_says_so(day, closings, readings_judged):
     meter = day.meter()
     day.check(meter, -1, "zero", 0.1, standard="zero_solution")
     day.check(meter, 0.1, "read_back", 8.2)
@@ -320,6 +333,11 @@ def test_day_without_end_check_leaves_every_reading_questionable_and_says_so(day
     (line,) = closings(3.5)
     assert (line.done, line.meter, line.kind) == (False, meter.id, "end_of_day")
     assert line.says == "Meter A has no end check since 05:36: all its readings today count as questionable."
+    judged = readings_judged()
+    assert [(state, quality) for state, quality, _, _ in judged] == [("no_check_after", "questionable")] * 3
+    assert all("not_bracketed" in reasons for _, _, reasons, _ in judged)
+    day.check(meter, 4, "end_of_day", 8.1)
+    assert all(state == "bracketed" and "not_bracketed" not in reasons for state, _, reasons, _ in readings_judged())
 
 
 def test_field_check_closes_the_readings_before_it(day, closings):
@@ -372,7 +390,9 @@ def test_checks_that_are_due_stand_in_the_close_out_list(day, closings):
     assert due[0][1].startswith("Meter A: Since the last meter check 5.5 h have passed.")
 
 
-def test_end_check_0_46_low_after_eight_hours_is_good_and_asks_for_zero_and_a_correction(day, judged, closings):
+def test_end_check_0_46_low_after_eight_hours_is_good_and_asks_for_zero_and_a_correction(
+    day, judged, closings, readings_judged
+):
     meter = day.meter()
     day.check(meter)
     day.reading("D1", 1)
@@ -380,13 +400,15 @@ def test_end_check_0_46_low_after_eight_hours_is_good_and_asks_for_zero_and_a_co
     end = judged()[-1]
     assert (end.verdict.grade, end.verdict.correctable, end.verdict.reportable) == ("good", True, True)
     assert next_step(VIENNA, end).kind == "zero"
+    ((state, _, reasons, grade),) = readings_judged()
+    assert (state, grade, "drift_uncorrected" in reasons) == ("drift", "good", True)
     assert closings(8)[0].says == (
         "Meter A was checked after its last reading, at 13:30: 0.46 mg/L low, grade good, so the readings before it "
         "ask for a correction."
     )
 
 
-def test_end_check_2_3_low_is_not_to_be_reported(day, judged, closings):
+def test_end_check_2_3_low_is_not_to_be_reported(day, judged, closings, readings_judged):
     meter = day.meter()
     day.check(meter)
     day.reading("D1", 1)
@@ -395,6 +417,8 @@ def test_end_check_2_3_low_is_not_to_be_reported(day, judged, closings):
     assert (end.verdict.grade, end.verdict.reportable) == ("do not report", False)
     assert words.verdict_word(end.verdict) == "Does not pass: do not report"
     assert "too far off" in next_step(VIENNA, end).says
+    ((state, quality, reasons, _),) = readings_judged()
+    assert (state, quality, "not_reportable" in reasons) == ("not_reportable", "bad", True)
     assert "too far off for the readings before it to be reported" in closings(8)[0].says
 
 

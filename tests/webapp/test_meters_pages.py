@@ -420,3 +420,17 @@ def test_stored_check_of_settings_that_changed_shows_both_verdicts(crew, address
         stored.judged = {**stored.judged, "says": "It was judged otherwise then."}
         db.commit()
     assert "by settings version 1: It was judged otherwise then." in crew.get(f"{address}/checks/{check.id}").text
+
+
+def test_reading_says_which_checks_it_lies_between(crew, db, survey, people, day):
+    put_plan(db, survey, people["lead"])
+    db.rollback()
+    meter = day.meter()
+    before = day.check(meter, 0, "read_back", 8.2)
+    one = day.reading("D2", 1)
+    page = f"/surveys/{survey.id}/readings/{one.id}/check"
+    assert "questionable until it is checked again" in crew.get(page).text
+    after = day.check(meter, 8, "end_of_day", 7.8)
+    shown = crew.get(page).text
+    assert "drifted: a correction is offered" in shown and "13:30, does not pass</a>, grade good" in shown
+    assert f"/meters/checks/{before.id}" in shown and f"/meters/checks/{after.id}" in shown
