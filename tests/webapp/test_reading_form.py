@@ -9,7 +9,7 @@ import pytest
 from sqlalchemy import event
 
 from tests.webapp.plans import put_plan
-from webapp.models import Reading
+from webapp.models import Meter, Reading
 from webapp.readings import queries
 from webapp.surveys.service import remove_member
 
@@ -171,6 +171,12 @@ def test_same_id_with_other_content_is_refused_and_the_typing_kept(crew, address
         ("meter", "x" * 61, "Shorten the meter"),
         ("latitude", "north", "Enter the latitude as a number"),
         ("submission_id", "17", "without its id"),
+        ("ph", "15", "must lie between 0 and 14"),
+        ("distance_left_m", "-1", "must lie between 0 and 2000 m"),
+        ("values", "6.1 six", "“six” is none"),
+        ("soak_s", "-3", "must lie between 0 and 14400"),
+        ("unstable_reason", "x" * 301, "Shorten the reason"),
+        ("meter_other", "x" * 61, "Shorten the meter"),
     ],
 )
 def test_what_cannot_be_is_refused_beside_its_field_and_kept(crew, address, stored, field, text, says):
@@ -281,6 +287,122 @@ def test_meter_and_pressure_source_are_remembered_but_no_measured_value(crew, ad
     assert 'value="Probe 7"' in answer.text
     assert '<option value="meter" selected>' in answer.text and '<option value="hPa" selected>' in answer.text
     assert "988" not in answer.text
+
+
+@pytest.fixture
+def meters(db, survey):
+    """Meter A in service, Meter B out of it."""
+    db.add_all([Meter(survey_id=survey.id, name="Meter A"),
+                Meter(survey_id=survey.id, name="Meter B", out_of_service=True)])  # fmt: skip
+    db.commit()
+
+
+def test_meter_is_chosen_from_those_in_service_and_the_only_one_is_chosen_already(crew, address, meters):
+    page = crew.get(address).text
+    assert '<option value="Meter A" selected>Meter A</option>' in page
+    assert "Meter B" not in page and 'name="meter_other"' in page and "with Meter A" in page
+
+
+@pytest.mark.parametrize(
+    ("named", "says"),
+    [
+        ({"meter": "Meter B"}, "Meter B is out of service."),
+        ({"meter": "Meter A", "meter_other": "Probe 9"}, "Probe 9 is no meter of this survey."),
+    ],
+)
+def test_meter_that_is_unknown_or_out_of_service_is_asked_about_and_may_be_kept(
+    crew, address, meters, stored, named, says
+):
+    form = a_form(**named)
+    asked = crew.post(address, form)
+    assert asked.status_code == 422 and says in asked.text
+    keep = html.unescape(re.search(r'name="keep" value="([^"]+)"', asked.text)[1])
+    assert crew.post(address, {**form, "keep": keep}).status_code == 303
+    assert [one.meter for one in stored()] == [named.get("meter_other") or named["meter"]]
+
+
+def test_registered_meter_is_known_however_its_name_is_written(crew, address, meters):
+    assert crew.post(address, a_form(meter="meter a")).status_code == 303
+
+
+def test_ph_vertical_soak_and_series_are_stored(crew, address, stored):
+    form = a_form(ph="7,9", distance_left_m="3.5", sensor_depth_m="0.6", soak_s="210", do_mg_l="",
+                  values="6.1@65/19.8 6.2@100/19.8 6.2@135/19.8 6.3@170/19.8 6.2@205/19.8")  # fmt: skip
+    answer = crew.post(address, form)
+    (reading,) = stored()
+    assert (reading.ph, reading.distance_left_m, reading.soak_s, reading.stable) == (7.9, 3.5, 210.0, True)
+    assert reading.series[0] == {"after_s": 65.0, "do_mg_l": 6.1, "water_temp_c": 19.8}
+    page = crew.get(answer.location).text
+    for words in ("Median of 5 values, 6.10 to 6.30 mg/L", "<dt>pH</dt><dd>7.9", "3.50 m from the left edge", "210 s"):
+        assert words in page
+
+
+def test_unlikely_ph_is_asked_about(crew, address):
+    asked = crew.post(address, a_form(ph="9.6"))
+    assert asked.status_code == 422 and "pH 9.6 is high" in asked.text
+
+
+def test_same_values_typed_otherwise_under_one_id_are_refused(crew, address, stored):
+    form = a_form(do_mg_l="", values="6.1 6.2")
+    assert crew.post(address, form).status_code == 303
+    assert crew.post(address, form).status_code == 303
+    assert crew.post(address, {**form, "values": "6.2 6.2"}).status_code == 409
+    assert len(stored()) == 1
+
+
+def test_number_in_the_box_that_is_none_of_the_values_is_one_more(crew, address, stored):
+    crew.post(address, a_form(do_mg_l="6.4", values="6.1 6.2"))
+    (reading,) = stored()
+    assert [one["do_mg_l"] for one in reading.series] == [6.1, 6.2, 6.4] and reading.do_mg_l == 6.2
+
+
+def test_rough_position_is_told_and_not_asked_about(crew, address):
+    answer = crew.post(address, a_form(latitude="48.1", longitude="16.4", position_radius_m="35"))
+    assert answer.status_code == 303
+    assert "The position is only known within 35 m." in crew.get(answer.location).text
+
+
+def test_unstable_reading_that_waited_for_hours_is_taken_without_a_question(crew, address, stored):
+    long_ago = datetime.now(UTC) - timedelta(hours=2)
+    form = a_form(do_mg_l="", values="5.8 6.0 6.4 6.1 5.9", saved_at=long_ago.isoformat(), taken_at=typed(long_ago))
+    assert crew.post(address, form).status_code == 303
+    assert [one.stable for one in stored()] == [False]
+
+
+def test_check_offers_the_next_point_and_the_repeat_and_their_forms_hold_no_measured_value(crew, address):
+    answer = crew.post(address, a_form(position="left", meter="Probe 7", depth_m="1.0"), htmx=True)
+    links = [html.unescape(one) for one in re.findall(r'href="(/[^"]+/reading\?[^"]+)"', answer.text)]
+    assert [one.partition("?")[2] for one in links] == [
+        "position=left&sensor_depth_m=0.2&meter=Probe+7", "position=left&sensor_depth_m=0.8&meter=Probe+7",
+        "position=centre&meter=Probe+7", "position=right&meter=Probe+7",
+        "position=left&meter=Probe+7&replicate=yes",
+    ]  # fmt: skip
+    page = crew.get(links[1])
+    assert value_of(page, "sensor_depth_m") == "0.8" and '<option value="left" selected>' in page.text
+    assert value_of(page, "do_mg_l") == value_of(page, "water_temp_c") == value_of(page, "depth_m") == ""
+    assert "checked" in crew.get(links[-1]).text
+
+
+def test_link_can_set_nothing_that_was_measured(crew, address):
+    page = crew.get(address + "?do_mg_l=9.9&water_temp_c=1&note=hello&position=%3Cscript%3E")
+    assert value_of(page, "do_mg_l") == "" and ">hello<" not in page.text and "<script>" not in page.text
+
+
+def test_repeat_tells_its_difference_from_the_reading_at_the_same_point(crew, address):
+    early = typed(datetime.now(UTC) - timedelta(minutes=6))
+    crew.post(address, a_form(position="left", taken_at=early))
+    crew.post(
+        address, a_form(do_mg_l="6.3", position="right", taken_at=typed(datetime.now(UTC) - timedelta(minutes=3)))
+    )
+    answer = crew.post(address, a_form(do_mg_l="6.0", position="left", replicate="yes"))
+    page = crew.get(answer.location).text
+    assert "The repeat agrees:" in page and "\u22120.10 mg/L from" in page
+    assert "A replicate is due" not in page
+
+
+def test_new_folds_keep_the_form_short(crew, address):
+    page = crew.get(address).text
+    assert page.count('<details class="fold">') == 3 and '<details class="fold" open>' not in page
 
 
 def test_us_survey_takes_us_units(db, crew, address, survey, stored):

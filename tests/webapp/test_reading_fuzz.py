@@ -10,12 +10,14 @@ from webapp.readings.columns import READINGS
 
 NUMBERS = [column.key for column in READINGS.columns if column.quantity not in ("text", "choice", "yes_no", "time")]
 FIELDS = [*NUMBERS, "taken_at", "submission_id", "pressure_unit", "pressure_source", "position", "percent_basis",
-          "velocity_method", "float_distance", "float_time_s", "meter", "note", "replicate", "kept", "keep", "use",
+          "velocity_method", "float_distance", "float_time_s", "meter", "meter_other", "values", "soak_s",
+          "unstable_reason", "note", "replicate", "kept", "keep", "use",
           "units"]  # fmt: skip
 NASTY = st.sampled_from(
     ["", " ", "0", "-0", "1e999", "nan", "inf", "-inf", "1,234", "8,1", "٣", "9" * 400, "\x00", "\u202e7", "=1+1", "[]",
      "[[", '{"a":1}', "[1]", "[" * 5000, "5,", ".5", "2026-08-12T05:40", "0001-01-01T00:00", "2026-03-29T02:30", "air",
-     "762", "1013", "29.9", "101.3", "68", "44.9", "30", "meter", "weather", "float", "temperature_unit", "us"]
+     "762", "1013", "29.9", "101.3", "68", "44.9", "30", "meter", "weather", "float", "temperature_unit", "us",
+     "6.1 6.3 6.2 6.2 6.2", "6.1@75/20 6.9@80", "6@@", "5.8;6.4 5.8 6.4 5.8"]
 )  # fmt: skip
 TEXTS = st.one_of(NASTY, NASTY, st.floats(-50, 450).map(str), st.text(max_size=30))
 
