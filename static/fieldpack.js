@@ -3,6 +3,7 @@ import { all, get, put } from "./waiting_store.js";
 import { ask, plural } from "./phone.js";
 
 const PAGES = "bankside-pages";
+const AT_ONCE = 4;
 
 // What a day without signal would miss, in words; nothing when all is here.
 export async function missing(survey) {
@@ -27,11 +28,14 @@ async function storageWorks() {
 
 async function fetchPages(pack, tell) {
   const cache = await caches.open(PAGES);
-  for (const [at, address] of pack.pages.entries()) {
-    tell(at + 1, pack.pages.length);
+  const keep = async (address) => {
     const reply = await fetch(address, { cache: "no-store" });
     if (reply.status !== 200 || reply.redirected) throw new Error("a page did not come");
     await cache.put(address, reply);
+  };
+  for (let at = 0; at < pack.pages.length; at += AT_ONCE) {
+    tell(at + 1, pack.pages.length);
+    await Promise.all(pack.pages.slice(at, at + AT_ONCE).map(keep));
   }
   const wanted = new Set([...(await all("packs")).flatMap((one) => one.files), ...pack.files]);
   const files = await caches.open("bankside-files");

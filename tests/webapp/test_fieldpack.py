@@ -95,7 +95,8 @@ def pack(browser_as, db, survey, people):
 def test_pack_names_its_plan_version_its_pages_and_files_and_each_can_be_fetched(pack, browser_as, survey):
     assert (pack["plan"], pack["survey"]) == (1, survey.id)
     assert f"/surveys/{survey.id}/sheet" in pack["pages"]
-    assert f"/surveys/{survey.id}/stations/D3/reading" in pack["pages"]
+    for form in ("stations/D3/reading", "stations/D3/visit", "stations/D3/bottle", "meters/check"):
+        assert f"/surveys/{survey.id}/{form}" in pack["pages"]
     crew = browser_as("crew")
     assert {crew.get(address).status_code for address in [*pack["pages"], *pack["files"]]} == {200}
 
@@ -115,6 +116,12 @@ def test_pack_without_a_plan_says_so_and_still_has_saturation(browser_as, survey
     assert (pack["sag"], pack["stations"], pack["plan"]) == (None, [], 0)
     assert "There is no plan yet." in pack["missing"]
     assert pack["saturation"]["z"][20][0] > 0
+
+
+def test_pack_has_the_wading_limits_and_how_depth_and_velocity_are_typed(pack):
+    assert pack["wading"] == {"stop": 0.929, "caution": 0.6, "depth": 0.9, "ft2": 10.76391}
+    us = pack["typed"]["us"]
+    assert (us["wading_depth_m"]["scale"], us["wading_velocity_m_s"]["scale"]) == (pytest.approx(0.3048),) * 2
 
 
 def test_pack_of_another_crews_survey_is_not_found(browser_as, db, survey, people):

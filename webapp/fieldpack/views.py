@@ -3,7 +3,7 @@
 import json
 from datetime import UTC, datetime
 
-from flask import Blueprint, Response, current_app, jsonify, render_template, request, url_for
+from flask import Blueprint, Response, jsonify, render_template, request, url_for
 from flask_login import current_user, login_required
 
 from webapp.db import get_db
@@ -53,10 +53,9 @@ def pack(survey_id):
 
 def _forms(survey_id, codes):
     """Return the address of every form that a crew may need without signal."""
-    at_station = [one for one in ("readings.new", "visits.new", "bottles.new") if one in current_app.view_functions]
-    of_survey = [one for one in ("meters.new_check",) if one in current_app.view_functions]
+    at_station = ("readings.new", "visits.new", "bottles.new")
     return [
-        *(url_for(one, survey_id=survey_id) for one in of_survey),
+        url_for("meters.new_check", survey_id=survey_id),
         *(url_for(one, survey_id=survey_id, code=code) for code in codes for one in at_station),
     ]
 
