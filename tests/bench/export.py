@@ -28,7 +28,7 @@ PAGES = {"readings table": "readings", "bad ones of it": "readings?quality=quest
 def filled(db):
     """Load the demo and add readings up to READINGS; return the survey."""
     demo.load(db, datetime.now(UTC))
-    survey = db.scalar(select(Survey))
+    survey = db.scalar(select(Survey).order_by(Survey.created_at.desc()))
     stations, plan = list(stations_of(db, survey.id).values()), current_plan(db, survey.id)
     author = find_by_sign_in(db, "crew")
     begin = datetime.now(UTC) - timedelta(days=5)
@@ -81,7 +81,7 @@ def main():
         client.post("/sign-in", data={"sign_in": name, "password": password})
         pages = {name: _both_times(client, f"/surveys/{survey_id}/{path}") for name, path in PAGES.items()}
         with database.reading() as db:
-            survey = db.scalar(select(Survey))
+            survey = db.scalar(select(Survey).order_by(Survey.created_at.desc()))
             readings = readings_of(db, survey_id)
             plain = timed(lambda: plainly_written(readings))
         export = timed(lambda: _export(database))

@@ -97,7 +97,7 @@ def _bankside(folder):
     database = cli._open(config)
     with database.writing() as db:
         demo.load(db, datetime.now(UTC))
-        survey_id = db.scalar(select(Survey.id))
+        survey_id = db.scalar(select(Survey.id).order_by(Survey.created_at.desc()))
     database.engine.dispose()
     app = create_app(config, RATELIMIT_ENABLED=False)
     return app, {"path": f"/surveys/{survey_id}/stations/D5/reading", "sign_in": demo.SIGN_INS[0][:2]}
