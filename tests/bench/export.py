@@ -108,7 +108,8 @@ def _both_times(client, address):
 
 def _export(database):
     with database.reading() as db:
-        dataset.zip_of(dataset.dataset_of(db, db.scalar(select(Survey))))
+        survey = db.scalar(select(Survey).order_by(Survey.created_at.desc()))
+        dataset.zip_of(dataset.dataset_of(db, survey))
 
 
 if __name__ == "__main__":
