@@ -31,6 +31,26 @@ def test_a_reading_is_saved_and_checked(browser, demo):
     context.close()
 
 
+def test_a_visit_is_saved_gone_on_with_and_left(plain):
+    page = plain("crew")
+    survey = survey_address(page)
+    page.goto(f"{survey}/sheet")
+    page.get_by_role("link", name="Arrive, D9").tap()
+    page.get_by_label("Depth there").fill("1,3")
+    page.get_by_label("Velocity there").fill("0,9")
+    page.get_by_label("Stage").fill("0,4x")
+    page.get_by_role("button", name="Save visit").tap()
+    expect(page.locator("#wading")).to_contain_text("Do not wade.")
+    expect(page.locator("#stage_m-error")).to_contain_text("as a number")
+    page.get_by_label("Stage").fill("0,4")
+    page.get_by_role("button", name="Save visit").tap()
+    expect(page.get_by_role("heading", name="Visit at D9")).to_be_visible()
+    expect(page.locator("main")).to_contain_text("0.400 m")
+    page.get_by_role("link", name="Leave").tap()
+    page.get_by_role("button", name="Save visit").tap()
+    expect(page.locator("main")).to_contain_text("Saved on the server. Cleo Banks, until")
+
+
 def test_a_refused_reading_stays_as_typed(plain):
     page = plain("crew")
     page.goto(f"{survey_address(page)}/stations/D9/reading")

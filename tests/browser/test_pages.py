@@ -54,6 +54,11 @@ CREW = {
         "stations/D9/reading", "Save reading", "Not saved yet", do_mg_l="16", water_temp_c="31", note="odd"
     ),
     "check": first("sheet", "/check$"),
+    "visit form": at("stations/D5/visit"),
+    "visit refused": sent("stations/D6/visit", "Save visit", "Nothing was saved", stage_m="low", wading_depth_m="1.3"),
+    "visit": sent(
+        "stations/D6/visit", "Save visit", "What was saved", stage_m="0.41", float_distance="10", float_times="21"
+    ),
     "sag": at("sag"),
     "readings": at("readings"),
     "reading": first("readings", r"/readings/[0-9a-f-]{36}$"),
