@@ -92,13 +92,13 @@ def test_reviewer_goes_through_the_list_without_returning(browser_as, db, survey
 def test_one_screen_shows_all_that_speaks_for_a_reading(browser_as, db, survey, people, day):
     odd = by_place(db, survey)["D3r"].reading
     text = plain(browser_as("office").get(f"/surveys/{survey.id}/readings/{odd.id}"))
-    assert "It repeats: D3" in text and "+4.90" in text
-    assert "Upstream: D2" in text and "Downstream: D4" in text
+    assert "It repeats : D3" in text and "+4.90" in text
+    assert "Upstream : D2" in text and "Downstream : D4" in text
     assert "Between two passing checks." in text and "Before: Meter A, read back" in text
     assert "After: Meter A, end check" in text
     assert "The plan expects" in text and "higher than the next station upstream" in text
     assert "Recorded at the water by Cleo Banks" in text
-    for deed in ("Let it stand", "Ask the crew", "Set it aside", "Correct oxygen"):
+    for deed in ("Let it stand", "Ask the crew", "Set it aside", "Correct the oxygen"):
         assert deed in text
 
 

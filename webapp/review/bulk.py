@@ -7,7 +7,7 @@ from webapp.models import ReadingEvent
 from webapp.readings.judging import judgement_of
 from webapp.readings.layers import ANSWERED, ASKED, KEPT, FinalReading
 from webapp.readings.quality_words import REASONS, TELLING
-from webapp.review.queries import held
+from webapp.review.service import held
 from webapp.surveys.service import remember
 
 # Reasons that tell where a number comes from, or that speak of the day rather than of the number.

@@ -7,7 +7,7 @@ from webapp.models import Reading, ReadingEvent
 from webapp.readings.judging import judgement_of
 from webapp.readings.settling import thresholds
 from webapp.review.drift import drift_pairs, particulars_of
-from webapp.review.queries import held
+from webapp.review.service import held
 from webapp.surveys.queries import current_settings
 from webapp.surveys.service import remember
 

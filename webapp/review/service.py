@@ -1,6 +1,7 @@
 """Decisions about readings: layers over a reading that stays, and what a reviewer and the crew say about it."""
 
 from sqlalchemy import select
+from sqlalchemy.orm import selectinload
 
 from webapp.errors import Conflict, NotAllowed
 from webapp.models import Person, Reading, ReadingEvent
@@ -13,6 +14,7 @@ __all__ = [
     "answer",
     "ask",
     "correct",
+    "held",
     "hold",
     "import_readings",
     "keep",
@@ -97,6 +99,15 @@ def hold(db, survey_id, reading_id):
     # A database that lets several write at once lets only one of them at this reading; SQLite has one writer anyway.
     db.execute(select(Reading.id).where(Reading.id == reading_id).with_for_update())
     return queries.get_reading(db, survey_id, reading_id)
+
+
+def held(db, survey_id, reading_ids):
+    """Return the survey's readings of these ids with their events; nobody else decides about them until the commit."""
+    found = []
+    for some in queries.in_parts(reading_ids):
+        query = select(Reading).where(Reading.survey_id == survey_id, Reading.id.in_(some)).with_for_update()
+        found += db.scalars(query.options(selectinload(Reading.events)))
+    return found
 
 
 def _to_decide(db, survey_id, reading_id, person):
