@@ -97,6 +97,13 @@ def test_a_code_used_before_is_refused_beside_the_field(db, planned, people, bro
     assert db.query(Bottle).count() == 1
 
 
+def test_a_bottle_that_went_on_ice_at_once_needs_no_second_time():
+    assert forms.parse_bottle(typed(ice_at_once="yes"), SHOW, "D3", NOW)[0].on_ice_at == FILLED
+    later = typed(ice_at_once="yes", on_ice_at="2026-08-12T06:20")
+    assert forms.parse_bottle(later, SHOW, "D3", NOW)[0].on_ice_at == FILLED + timedelta(minutes=10)
+    assert forms.parse_bottle(typed(), SHOW, "D3", NOW)[0].on_ice_at is None
+
+
 @pytest.mark.parametrize(
     ("field", "text", "says"),
     [
@@ -137,7 +144,9 @@ def test_what_is_odd_is_asked_about_once_and_kept(db, survey, people, browser_as
     assert "30 minutes until it was on ice; 15 are allowed" in asked.text
     assert "No oxygen was read at this point of D2 yet" in asked.text
     keep = asked.text.split('name="keep" value="')[1].split('"')[0].replace("&#34;", '"')
-    assert crew.post(address, form | {"keep": keep}, htmx=True).headers["X-Stored-Id"] == form["submission_id"]
+    stored = crew.post(address, form | {"keep": keep}, htmx=True)
+    assert stored.headers["X-Stored-Id"] == form["submission_id"]
+    assert "No oxygen was read at this point of D2 yet" in stored.text  # as asked, and kept
 
 
 def test_a_reading_at_the_point_within_ten_minutes_asks_nothing(db, survey, people):

@@ -9,7 +9,7 @@ from webapp.plan.prediction import prediction_of
 from webapp.plan.queries import current_plan
 from webapp.readings.judging import judgement_of
 from webapp.readings.layers import ASKED, KEPT
-from webapp.readings.quality_words import QUALITIES
+from webapp.readings.quality_words import QUALITIES, REASONS
 from webapp.readings.settling import thresholds
 from webapp.surveys.queries import current_settings
 
@@ -18,7 +18,10 @@ _NOT_VALID = ("bad", "missing")
 
 @dataclass(frozen=True)
 class Critical:
-    """A station that the answer rests on: why, and the quality of its lowest valid reading; empty where it has none."""
+    """A station that the answer rests on: why, and its lowest valid reading, whose quality is empty where it has none.
+
+    reasons are those of the quality, in words.
+    """
 
     code: str
     why: str
@@ -32,8 +35,8 @@ class Standing:
     """What a survey holds, and what stands against it.
 
     not_looked counts readings that no reviewer but their author has looked at, asked the questions without an answer.
-    qualities are (words, count), disputes (station code, visit id, number of facts), missing the codes of planned
-    stations without a valid reading.
+    qualities are (quality, its words, count), disputes (station code, visit id, number of facts), missing the codes of
+    planned stations without a valid reading.
     """
 
     readings: int
@@ -77,7 +80,7 @@ def standing_of(db, survey):
         readings=len(judged),
         not_looked=sum(one.reading.review not in (KEPT, ASKED) for one in judged),
         asked=sum(one.reading.review == ASKED for one in judged),
-        qualities=tuple((words, counts[key]) for key, words in QUALITIES.items() if counts[key]),
+        qualities=tuple((key, words, counts[key]) for key, words in QUALITIES.items() if counts[key]),
         disputes=tuple(
             (one.station_code, one.visit.id, len(one.visit.disputes))
             for one in judgement.occasions
@@ -113,4 +116,4 @@ def _lowest(judged):
 
 
 def _said_of(judged):
-    return judged.reading.do_mg_l, judged.quality, judged.reasons
+    return judged.reading.do_mg_l, judged.quality, tuple(REASONS[reason] for reason in judged.reasons)

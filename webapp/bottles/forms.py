@@ -31,6 +31,8 @@ def parse_bottle(source, show, station_code, now):
     kind = fields.choice("kind", "kind of bottle", KINDS, "sample")
     collected = _time(fields, "collected_at", "time it was filled", now, required=True)
     on_ice = _time(fields, "on_ice_at", "time it went on ice", now)
+    if not fields.holds("on_ice_at") and fields.ticked("ice_at_once"):
+        on_ice = collected
     if collected and on_ice and on_ice < collected.replace(second=0, microsecond=0):
         fields.refuse("on_ice_at", "That is before the bottle was filled; check both times.")
     full = fields.choice("full", "entry", FULL, "")

@@ -1,12 +1,15 @@
 """A bottle, a hand-over and a laboratory result on their way in, before they are stored. Ids are made by the form."""
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime
 
 
 @dataclass(frozen=True)
 class NewBottle:
-    """A bottle as its label and its filling tell; numbers in SI, entered as they were typed."""
+    """A bottle as its label and its filling tell; numbers in SI, entered as they were typed.
+
+    kept holds what was asked about it on site and answered with "keep it", as it was read.
+    """
 
     id: str
     station_code: str
@@ -24,6 +27,11 @@ class NewBottle:
     on_ice_at: datetime | None = None
     note: str = ""
     entered: dict = field(default_factory=dict)
+    kept: tuple = ()
+
+    def keeping(self, findings):
+        """Return the bottle with the findings that the crew was asked about."""
+        return replace(self, kept=tuple(one.says for one in findings))
 
 
 @dataclass(frozen=True)

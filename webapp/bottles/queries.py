@@ -4,7 +4,7 @@ from sqlalchemy import func, select
 from sqlalchemy.orm import joinedload
 
 from webapp.errors import NotFound
-from webapp.models import Bottle, HandOver, LabResult
+from webapp.models import Bottle, HandOver, History, LabResult
 
 _WITH = (joinedload(Bottle.station), joinedload(Bottle.author))
 
@@ -60,3 +60,10 @@ def last_by(db, survey_id, person_id):
     """Return the bottle a person recorded last on the survey, or None."""
     query = select(Bottle).where(Bottle.survey_id == survey_id, Bottle.author_id == person_id)
     return db.scalar(query.order_by(Bottle.received_at.desc(), Bottle.id).limit(1))
+
+
+def kept_of(db, survey_id, bottle_id):
+    """Return what the crew was asked about a bottle when it was stored, and answered with "keep it"."""
+    query = select(History.particulars).where(History.survey_id == survey_id, History.entity_id == bottle_id)
+    told = db.scalar(query.where(History.what == "bottle filled").limit(1)) or {}
+    return [text for text in told.get("kept", []) if isinstance(text, str)]

@@ -33,6 +33,17 @@ def asks_of(db, survey, new, now, saved_at):
     return asking.asks(settings, new, readings, bottles, now, saved_at)
 
 
+def code_taken(db, survey, new):
+    """Return what to do where another bottle of the survey has the code; empty where none has."""
+    taken = queries.find_code(db, survey.id, new.code)
+    if taken is None or taken.id == new.id:
+        return ""
+    return (
+        f"Bottle {taken.code} is here already, filled at {taken.station.code}. Each label is for one bottle: check it, "
+        "or take another."
+    )
+
+
 def add_bottle(db, survey, new, by_id, received_at):
     """Store the bottle once, however often it is sent, and return the stored one.
 
@@ -56,14 +67,11 @@ def put_bottle(db, survey, new, by_id, received_at):
     station = get_station(db, survey.id, new.station_code)
     # A database that lets several write at once lets only one of them at the codes of a survey.
     db.execute(select(Survey.id).where(Survey.id == survey.id).with_for_update())
-    if (taken := queries.find_code(db, survey.id, new.code)) is not None:
-        raise CodeTaken(
-            f"Bottle {taken.code} is here already, filled at {taken.station.code}. Each label is for one bottle: check "
-            "it, or take another."
-        )
+    if why := code_taken(db, survey, new):
+        raise CodeTaken(why)
     values = asdict(new)
-    del values["station_code"]
-    told = {"code": new.code, "station": station.code, "analysis": new.analysis}
+    del values["station_code"], values["kept"]
+    told = {"code": new.code, "station": station.code, "analysis": new.analysis, "kept": list(new.kept)}
     remember(db, survey.id, by_id, "bottle filled", "bottle", new.id, told)
     bottle = Bottle(survey_id=survey.id, station_id=station.id, author_id=by_id, received_at=received_at, **values)
     bottle.station = station

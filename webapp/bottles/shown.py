@@ -28,6 +28,7 @@ class Line:
     left_h: float
     running: bool
     trail: tuple[HandOver, ...]
+    kept: tuple[str, ...] = ()
 
     @property
     def bottle(self):
@@ -81,15 +82,17 @@ def bottle_page(db, survey, bottle_id, now):
     """Return the Line of one bottle. Raises NotFound."""
     bottle = queries.get_bottle(db, survey.id, bottle_id)
     judged = next(one for one in service.judged_of(db, survey, now) if one.bottle.id == bottle.id)
-    return line_of(judged, queries.hand_overs_of(db, survey.id), now)
+    return line_of(judged, queries.hand_overs_of(db, survey.id), now, queries.kept_of(db, survey.id, bottle_id))
 
 
-def line_of(judged, hand_overs, now):
-    """Return the Line of a JudgedBottle."""
+def line_of(judged, hand_overs, now, kept=()):
+    """Return the Line of a JudgedBottle; kept is what was asked about it on site."""
     bottle, result = judged.bottle, judged.result
     until = bottle.collected_at + timedelta(hours=judged.hold.limit_h)
     begun = (result is not None and result.started_at is not None) or (
         bottle.analysis == "chlorophyll_a" and bottle.filtered
     )
     trail = tuple(one for one in hand_overs if bottle.id in one.bottles)
-    return Line(judged, until, (until - now).total_seconds() / 3600, not begun and not judged.reported, trail)
+    return Line(
+        judged, until, (until - now).total_seconds() / 3600, not begun and not judged.reported, trail, tuple(kept)
+    )

@@ -70,13 +70,15 @@ def save(survey_id, code):
         response.headers["X-Belongs-To"] = "another"
         return response
     filled, errors = forms.parse_bottle(form, answers.show_of_form(form, Show.of(survey)), code, now)
+    if not errors and (taken := service.code_taken(db, survey, filled)):
+        errors = {"code": taken}
     if errors:
         return _form(survey, code, form, 422, errors)
     asks = service.asks_of(db, survey, filled, now, answers.saved_at(form))
     if open_asks := answers.unanswered(asks, form, {}):
         return _form(survey, code, form, 422, asks=open_asks)
     try:
-        stored = service.add_bottle(db, survey, filled, current_user.id, now)
+        stored = service.add_bottle(db, survey, filled.keeping(asks), current_user.id, now)
     except service.CodeTaken as taken:
         return _form(survey, code, form, 422, {"code": taken.message})
     except Conflict as conflict:
