@@ -1,9 +1,13 @@
 """A survey with at least one of everything that can be stored, beside a paper sheet's readings."""
 
+import io
+import zipfile
 from datetime import timedelta
 
+from tests.conftest import ROLES, SURVEY_FORM
 from tests.webapp import servers
 from tests.webapp.sheets import TAKEN, correct, put_readings, set_aside
+from webapp.dataset import service
 from webapp.models import (
     Bottle,
     HandOver,
@@ -13,12 +17,17 @@ from webapp.models import (
     MeterCheckEvent,
     Reading,
     ReadingEvent,
+    Survey,
     SurveyEvent,
     Visit,
     VisitEntry,
 )
+from webapp.people.queries import find_by_sign_in
 from webapp.plan.queries import current_plan, stations_of
+from webapp.surveys.forms import parse_survey
+from webapp.surveys.service import create_survey
 
+PRIVATE_PHONE = "0650 1234567"
 NOTE = "=cmd|'/c calc'!A1"
 
 
@@ -135,3 +144,20 @@ def put_bottle(db, survey, person, station):
                 **result,
             )
         )
+
+
+def unpacked(people_file, folders):
+    """Return the folder with the unpacked dataset of a survey with one of everything, and private things."""
+    facts, _ = parse_survey({**SURVEY_FORM, "safety_note": f"Ring {PRIVATE_PHONE}"})
+    folder = folders.mktemp("package")
+    with servers.server_with(people_file, folders.mktemp("source")) as database:
+        with database.reading() as db:
+            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
+        with database.writing() as db:
+            survey = create_survey(db, facts, people["office"].id)
+        with database.writing() as db:
+            put_everything(db, survey, people)
+        with database.reading() as db:
+            content = service.zip_of(service.dataset_of(db, db.get(Survey, survey.id)))
+    zipfile.ZipFile(io.BytesIO(content)).extractall(folder)
+    return folder
