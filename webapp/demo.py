@@ -22,10 +22,15 @@ from webapp.people.forms import parse_person
 from webapp.plan import service as plan_service
 from webapp.plan.queries import current_plan
 from webapp.plan.tables import PLAN_TABLES
+from webapp.readings.asking import findings_on_new, to_ask
 from webapp.readings.forms import parse_reading
+from webapp.readings.layers import final
 from webapp.readings.service import put_reading
+from webapp.readings.settling import settle, thresholds
+from webapp.readings.surroundings import look_around
 from webapp.surveys import service as survey_service
 from webapp.surveys.forms import parse_survey
+from webapp.surveys.queries import current_settings
 from webapp.tablefile import read_table
 from webapp.visits.forms import parse_entry
 from webapp.visits.service import put_entry
@@ -93,7 +98,10 @@ def _plan_rows(name, table, show):
 
 
 def _day(db, survey, folder, moved, by_id):
-    """Store what the crew typed into the forms at the river, each at the time it was typed."""
+    """Store what the crew typed into the forms at the river, each at the time it was typed.
+
+    What the form asks about a reading is answered with "keep it".
+    """
     show, plan = Show.of(survey), current_plan(db, survey.id)
     for form in _typed(folder / "meters.csv", survey, moved):
         meter_service.add_meter(db, survey, _read(meter_forms.parse_meter(form, show)), by_id)
@@ -104,9 +112,13 @@ def _day(db, survey, folder, moved, by_id):
     for form in _typed(folder / "visits.csv", survey, moved):
         at = _saved(form, show)
         put_entry(db, survey, _read(parse_entry(form, show, form["station"], at)), by_id, at)
+    settings, so_far = thresholds(current_settings(db, survey.id)), []
     for form in _typed(folder / "readings.csv", survey, moved):
         at = _saved(form, show)
-        put_reading(db, survey, _read(parse_reading(form, show, form["station"], at)), by_id, plan, at)
+        new = settle(_read(parse_reading(form, show, form["station"], at)), settings)
+        around = look_around(survey, plan, new.station_code, new.taken_at, so_far, replicate=new.replicate, point=new)
+        asked = to_ask(findings_on_new(survey, settings, new, around, at, meters), new, at)
+        so_far.append(final(put_reading(db, survey, new.keeping(asked), by_id, plan, at)))
     db.commit()
 
 

@@ -98,6 +98,15 @@ def test_every_reading_belongs_to_a_visit(reading_db, surveys):
         assert all(one.visit_id for one in judgement_of(reading_db, survey).by_id.values())
 
 
+def test_what_the_form_asks_about_was_kept_by_the_crew(reading_db, surveys):
+    kept = [
+        {(one.reading.station_code, *one.kept) for one in judgement_of(reading_db, survey).by_id.values() if one.kept}
+        for survey in surveys
+    ]
+    assert kept[0] == {("D2", "sea_level_pressure"), ("D3", "percent_against_concentration")}
+    assert {("D6", "replicate_spread"), ("D7", "unstable")} <= kept[1]
+
+
 def test_sag_page_says_before_the_crew_leaves_that_meter_a_has_no_end_check(signed_in, surveys):
     page = " ".join(signed_in("crew").get(f"/surveys/{surveys[0].id}/sag").text.split())
     assert "Meter A has no end check since" in page
