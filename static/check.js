@@ -59,6 +59,18 @@ function expected(sag, km, full) {
 // Without a colon and a zone, so that both are read alike: only their difference counts.
 const minutesBetween = (one, other) => (Date.parse(`${other}Z`) - Date.parse(`${one}Z`)) / 60000;
 
+// Of several values the median of the last ones is the oxygen; one in the box that is none of them is the last.
+function oxygenOf(pack, fields) {
+  const typed = number(fields.do_mg_l);
+  const words = (fields.values ?? "").split(/[\s;]+/).filter(Boolean);
+  const values = words.map((one) => number(one.replace(/,$/, "").split(/[@/]/)[0]));
+  if (!values.length || values.includes(undefined)) return typed;
+  if (typed !== undefined && !values.includes(typed)) values.push(typed);
+  const last = values.slice(-(pack.stable_values ?? 5)).sort((one, other) => one - other);
+  const middle = last.length >> 1;
+  return last.length % 2 ? last[middle] : (last[middle - 1] + last[middle]) / 2;
+}
+
 export function checkOnPhone(pack, { code, fields }) {
   const units = pack.typed[fields.units] ?? pack.typed.si;
   const celsius = number(fields.water_temp_c, units.water_temp_c);
@@ -66,7 +78,7 @@ export function checkOnPhone(pack, { code, fields }) {
   const mmhg = pressureOf(pack, fields);
   const full = saturation(pack, celsius, mmhg, conductance);
   const percentOf = fields.percent_basis === "760" ? saturation(pack, celsius, 760, conductance) : full;
-  const oxygen = number(fields.do_mg_l) ?? (number(fields.do_percent) / 100) * percentOf;
+  const oxygen = oxygenOf(pack, fields) ?? (number(fields.do_percent) / 100) * percentOf;
   if (!Number.isFinite(oxygen)) return null;
   const station = pack.stations.find((one) => one.code === code);
   const plan = pack.sag && station ? expected(pack.sag, station.km, full) : {};

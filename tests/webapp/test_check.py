@@ -5,10 +5,11 @@ import pytest
 
 from calc.settings import Settings
 from tests.webapp.plans import put_plan
-from webapp.models import ReadingEvent
+from webapp.models import ReadingEvent, Visit, VisitEntry
 from webapp.plan.prediction import prediction_of
 from webapp.readings import queries
 from webapp.readings.check import on_site_check
+from webapp.readings.day import Day
 from webapp.readings.meaning import ABOVE, FALLING, LOWEST, RISING, Facts, afterwards, sentence
 from webapp.readings.new import NewReading
 from webapp.readings.service import add_reading
@@ -234,3 +235,61 @@ def test_corrected_reading_is_checked_as_it_stands(db, people, store, check):
     seen = check(reading)
     assert (seen.reading.do_mg_l, seen.reading.raw["do_mg_l"]) == (6.0, 7.0)
     assert seen.deficit_mg_l == pytest.approx(seen.saturation_mg_l - 6.0)
+
+
+def names(findings):
+    return {one.name for one in findings}
+
+
+def test_station_that_moved_since_it_was_read_first_that_day_tells_of_the_time_of_day(store, check):
+    store("U1", 8.0, hours=1.0)
+    seen = check(store("U1", 8.31, hours=2.0))
+    (finding,) = [one for one in seen.unasked if one.name == "diel"]
+    assert "moved from 8.00 to 8.31 mg/L" in finding.says and "before dawn" in finding.do
+
+
+@pytest.mark.parametrize(
+    ("do", "first_hours", "hours"),
+    [(8.30, 1.0, 2.0), (8.6, 1.1, 2.0), (8.6, 1.0, 30.0)],
+    ids=["as much as is usual", "within the hour", "another day"],
+)
+def test_anchor_needs_a_large_step_after_an_hour_of_the_same_day(store, check, do, first_hours, hours):
+    store("U1", 8.0, hours=first_hours)
+    assert "diel" not in names(check(store("U1", do, hours=hours)).findings)
+
+
+def test_anchor_is_compared_at_the_same_point_of_the_section(store, check):
+    store("U1", 8.0, hours=1.0, position="left")
+    assert "diel" not in names(check(store("U1", 8.9, hours=3.0, position="right")).findings)
+    assert "diel" in names(check(store("U1", 8.9, hours=4.0, position="left")).findings)
+
+
+def test_repeat_is_held_against_the_last_reading_at_its_own_point(store, check):
+    store("D1", 6.0, hours=2.0, position="left", sensor_depth_m=0.2)
+    store("D1", 5.0, hours=2.1, position="left", sensor_depth_m=0.8)
+    store("D1", 7.0, hours=2.2, position="right", sensor_depth_m=0.2)
+    seen = check(store("D1", 6.1, hours=2.3, position="left", sensor_depth_m=0.25, replicate=True))
+    assert seen.repeat.first.do_mg_l == 6.0
+    assert (seen.repeat.difference_mg_l, seen.repeat.agrees) == (pytest.approx(0.1), True)
+    differs = check(store("D1", 6.3, hours=2.4, distance_left_m=4.0, sensor_depth_m=0.2, replicate=True))
+    assert differs.repeat.first.do_mg_l == 6.1 and differs.repeat.agrees
+    assert check(store("D2", 6.0, hours=3.0, replicate=True)).repeat is None
+
+
+def test_raw_values_are_told_with_their_median_and_ends(store, check):
+    series = tuple({"after_s": None, "do_mg_l": do, "water_temp_c": None} for do in (9.9, 6.1, 6.3, 6.2, 6.2, 6.2))
+    seen = check(store("D1", 6.2, series=series))
+    assert (seen.spread.n, seen.spread.low, seen.spread.high, seen.spread.median) == (6, 6.1, 6.3, 6.2)
+    assert check(store("D2", 6.2)).spread is None
+
+
+def test_crew_on_a_bridge_is_told_nothing_of_wading(db, survey, people, version, store):
+    reading = store("D1", 7.0, depth_m=1.4, velocity_m_s=0.8)
+    assert names(Day(db, survey).check(reading).hazards) == {"do_not_wade"}
+    visit = Visit(survey_id=survey.id, station_id=reading.station_id, opened_by_id=people["crew"].id)
+    arrived = (reading.taken_at - timedelta(minutes=5)).isoformat()
+    facts = {"arrived_at": arrived, "platform": "bridge"}
+    visit.entries = [VisitEntry(author_id=people["crew"].id, made_at=reading.taken_at, facts=facts)]
+    db.add(visit)
+    db.commit()
+    assert Day(db, survey).check(reading).hazards == ()

@@ -138,3 +138,26 @@ def test_incomplete_plan_still_lists_its_stations(db, survey, people, browser_as
 
 def test_sheet_of_another_crews_survey_is_not_found(survey, browser_as):
     assert browser_as("crew").get("/surveys/somewhere/sheet").status_code == 404
+
+
+def test_stop_says_in_short_whether_the_section_is_mixed_and_layered(db, survey, people, version, browser_as):
+    for number, (position, depth_m, do) in enumerate(
+        (("left", 0.2, 6.0), ("centre", 0.2, 6.1), ("right", 0.2, 6.2), ("left", 0.8, 5.9))
+    ):
+        new = NewReading(f"s{number}", "D1", RELEASE + timedelta(minutes=number), do_mg_l=do, water_temp_c=19.0,
+                         position=position, sensor_depth_m=depth_m, depth_m=1.0)  # fmt: skip
+        add_reading(db, survey, new, people["crew"].id, version, new.taken_at)
+    page = browser_as("crew").get(f"/surveys/{survey.id}/sheet").text
+    assert "Mixed from bank to bank (0.25 mg/L across), not layered." in page
+
+
+def test_sheet_offers_the_repeat_that_is_due_to_whoever_owes_it(db, survey, people, version, browser_as):
+    now = datetime.now(UTC)
+    new = NewReading("r1", "D1", now, do_mg_l=6.0, water_temp_c=19.0, position="left", meter="Meter A")
+    add_reading(db, survey, new, people["crew"].id, version, now)
+    page = browser_as("crew").get(f"/surveys/{survey.id}/sheet").text
+    assert "A replicate is due" in page and "/D1/reading?position=left&amp;meter=Meter+A&amp;replicate=yes" in page
+    assert "A replicate is due" not in browser_as("lead").get(f"/surveys/{survey.id}/sheet").text
+    again = NewReading("r2", "D1", now, do_mg_l=6.0, water_temp_c=19.0, position="left", replicate=True)
+    add_reading(db, survey, again, people["crew"].id, version, now)
+    assert "A replicate is due" not in browser_as("crew").get(f"/surveys/{survey.id}/sheet").text

@@ -113,11 +113,13 @@ def test_save_does_not_wait_for_todays_sag_which_the_page_fetches_after_it(crew,
     for code, oxygen in (("D1", "6,8"), ("D3", "5,1"), ("D2", "6,1")):
         answer = crew.post(address.replace("D2", code), a_form(do_mg_l=oxygen), htmx=True)
         assert answer.status_code == 200, re.findall(r"<strong>([^<]+)", answer.text)
-    assert "from today's sag" not in answer.text
+    assert "from today's sag" not in answer.text and "The same numbers as a table" not in answer.text
+    assert answer.text.index('class="meaning"') < answer.text.index("<svg") < answer.text.index("<dt>Saturation")
     fetched = re.search(r'id="against-today" hx-get="([^"]+)"', answer.text)[1]
     part = crew.get(fetched, headers={"HX-Request": "true"}).text
     assert "the low point" in part and "from today's sag" in part
     assert '<div id="check-plot" hx-swap-oob="true">' in part and 'class="line-today"' in part
+    assert '<div id="check-table" hx-swap-oob="true">' in part and "The same numbers as a table" in part
     assert "<html" not in part and "<html" in crew.get(fetched).text
 
 
@@ -398,6 +400,19 @@ def test_repeat_tells_its_difference_from_the_reading_at_the_same_point(crew, ad
     page = crew.get(answer.location).text
     assert "The repeat agrees:" in page and "\u22120.10 mg/L from" in page
     assert "A replicate is due" not in page
+
+
+def test_check_tells_the_section_the_layers_and_whether_the_meter_was_checked(crew, address):
+    for oxygen, conductance, where in (("6.1", "410", "left"), ("6.2", "415", "centre"), ("6.4", "470", "right")):
+        form = a_form(do_mg_l=oxygen, conductance_us_cm=conductance, position=where, sensor_depth_m="0.2")
+        answer = crew.post(address, form)
+        assert answer.status_code == 303
+    page = crew.get(answer.location).text
+    assert "Not mixed: conductance is up to" in page
+    assert "oxygen 0.30 mg/L apart, water 0.0 °C warmer or colder, conductance 13.9 % apart" in page
+    assert "not checked before" in page
+    deep = crew.post(address, a_form(do_mg_l="5.4", position="left", sensor_depth_m="0.8"))
+    assert "Layered: the top" in crew.get(deep.location).text
 
 
 def test_new_folds_keep_the_form_short(crew, address):

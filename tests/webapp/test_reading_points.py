@@ -119,7 +119,7 @@ def test_any_number_of_verticals_may_be_told_by_their_distance(db, survey, read)
     occasion = judgement_of(db, survey).of_station("D1")[-1]
     assert (occasion.section.points, occasion.section.mixed) == (4, False)
     assert "oxygen 0.90 mg/L apart" in spreads(occasion.section)
-    assert in_short([occasion]) == "Not mixed from bank to bank (0.9 mg/L across)"
+    assert in_short([occasion]) == "Not mixed from bank to bank (0.90 mg/L across)"
 
 
 def test_layered_water_is_said_in_short(db, survey, read):

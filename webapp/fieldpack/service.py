@@ -36,6 +36,7 @@ def pack_of(survey, plan, settings_version, readings, made_at):
         "parcel_h": settings.parcel_h,
         "parcel_share": settings.parcel_percent / 100,
         "criterion": survey.do_criterion_mg_l,
+        "stable_values": max(1, round(settings.stable_values)),
         "wading": _wading(settings),
         "stations": [{"code": stop.code, "km": stop.distance_km, "place": stop.place} for stop in stops],
         "sag": sag,

@@ -45,10 +45,11 @@ def findings_on_new(survey, settings, new, around, now, meters=()):
     return findings + meter_findings(new.meter, meters)
 
 
-def findings_on_stored(survey, settings, reading, around, now, *, source="standard", **known):
+def findings_on_stored(survey, settings, reading, around, now, *, source="standard", platform="", **known):
     """Return every finding on a reading as it stands, a FinalReading; its pressure is that of the station already.
 
-    source is where the pressure came from; a value read at the water is held against the elevation again. known is
+    source is where the pressure came from; a value read at the water is held against the elevation again. platform is
+    what the crew stood on, where its visit says so: limits of wading are for those who wade or may. known is
     what else calc's ReadingContext takes: bracket, air_temp_c, saturation_mg_l.
     """
     read_here = source in ("meter", "barometer")
@@ -65,6 +66,7 @@ def findings_on_stored(survey, settings, reading, around, now, *, source="standa
         velocity_m_s=reading.velocity_m_s,
         position=reading.position,
         position_radius_m=reading.position_radius_m,
+        platform=platform,
         ph=reading.ph,
         stability=stability_of(reading.series, settings),
     )

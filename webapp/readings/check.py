@@ -61,8 +61,11 @@ class OnSiteCheck:
         return tuple(one for one in self.findings if one.name not in asked)
 
 
-def on_site_check(survey, plan_version, settings, reading, readings):
-    """Return the OnSiteCheck of a stored reading; settings are calc's, readings all of the survey, itself included."""
+def on_site_check(survey, plan_version, settings, reading, readings, platform=""):
+    """Return the OnSiteCheck of a stored reading; settings are calc's, readings all of the survey, itself included.
+
+    platform is what the crew stood on, where its visit says so.
+    """
     now = final(reading)
     around = look_around(
         survey, plan_version, now.station_code, now.taken_at, readings, now.id, replicate=reading.replicate
@@ -74,7 +77,7 @@ def on_site_check(survey, plan_version, settings, reading, readings):
     predicted, low, high = at_measured_temperature(around.expected, saturation)
     facts = _facts(survey, settings, now, around, percent, (predicted, low, high))
     facts = facts and _with_lowest(facts, now, plan_version, readings)
-    findings = findings_on_stored(survey, settings, now, around, reading.received_at)
+    findings = findings_on_stored(survey, settings, now, around, reading.received_at, platform=platform)
     return OnSiteCheck(
         reading=now,
         around=around,

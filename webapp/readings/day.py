@@ -21,6 +21,10 @@ from webapp.readings.surroundings import distances_of, look_around
 from webapp.sag.estimate import estimate_of
 from webapp.sag.moved import against_today
 from webapp.surveys.queries import current_settings
+from webapp.visits.layers import final_visit
+from webapp.visits.queries import visits_of
+
+OF_WADING = ("do_not_wade", "wading_caution")
 
 
 class Day:
@@ -61,8 +65,20 @@ class Day:
             self.readings.append(final(reading))
 
     def check(self, reading):
-        """Return the OnSiteCheck of a stored reading."""
-        return on_site_check(self.survey, self.plan, self.settings, reading, self.readings)
+        """Return the OnSiteCheck of a stored reading; who stands on a bridge or in a boat is told nothing of wading."""
+        known = (self.survey, self.plan, self.settings, reading, self.readings)
+        check = on_site_check(*known)
+        if not any(one.name in OF_WADING for one in check.hazards):
+            return check
+        platform = self._platform(check.reading)
+        return on_site_check(*known, platform) if platform else check
+
+    def _platform(self, reading):
+        """Return what the crew of a reading stood on, empty where no visit says."""
+        visits = [final_visit(one) for one in visits_of(self._db, self.survey.id)]
+        occasions = occasions_of([reading], self.authors, visits, self.settings, {})
+        visit = next(one.visit for one in occasions if one.readings)
+        return visit.facts.get("platform", "") if visit else ""
 
     def still_to_read(self, reading):
         """Return (why left, centre and right are wanted at the station, the Points left there) after a reading.

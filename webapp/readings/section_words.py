@@ -24,7 +24,7 @@ def in_short(occasions):
     words = []
     if mixed:
         apart = mixed[-1].do_spread
-        told = f" ({apart:.1f} mg/L across)" if math.isfinite(apart) else ""
+        told = f" ({apart:.2f} mg/L across)" if math.isfinite(apart) else ""
         words.append(f"{'Mixed' if mixed[-1].mixed else 'Not mixed'} from bank to bank{told}")
     if layers:
         words.append("layered" if layers[-1].stratified else "not layered")
