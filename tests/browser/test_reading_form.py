@@ -1,11 +1,16 @@
 """The reading form under a thumb: how many taps a station takes, and a timed reading."""
 
+import uuid
 from datetime import UTC, datetime, timedelta
 
 import pytest
 from playwright.sync_api import expect
 
+from calc.settings import Settings
 from tests.browser.conftest import survey_address
+from webapp.display import Show
+from webapp.readings.forms import parse_reading
+from webapp.readings.settling import settle
 
 MOST_TAPS = 12
 COUNT = """document.addEventListener("touchstart", () => {
@@ -88,3 +93,35 @@ def test_enter_takes_a_value_while_the_clock_runs_and_says_what_is_missing(thumb
     expect(thumb.get_by_label("Values, one after the other")).to_have_value("5,1@0/20,3")
     expect(thumb.get_by_text("s since the probe went in")).to_be_visible()
     thumb.get_by_role("button", name="Begin afresh").tap()
+
+
+VALUES = [
+    ("", "6.1 6.3 6.2 6.2 6.2", 6.2),
+    ("", "9,9@10 6,1@65/20 6,3@100 6,2@135 6,2@170 6,1@205", 6.2),
+    ("6.4", "6.1 6.2", 6.2),
+    ("6.2", "6.1; 6.2", 6.15),
+    ("6.4", "", 6.4),
+]
+
+
+def test_phone_takes_the_median_that_the_server_takes(page_as):
+    page = page_as("crew")
+    survey = survey_address(page)
+    page.goto(f"{survey}/stations/D8/reading")
+    found = page.evaluate(
+        """async ([address, rows]) => {
+          const pack = await (await fetch(address)).json();
+          const script = [...document.scripts].find((one) => one.src.includes("/kept.js")).src;
+          const { checkOnPhone } = await import(script.replace("kept.js", "check.js"));
+          return rows.map(([do_mg_l, values]) => checkOnPhone(pack, {
+            code: "D8", fields: { units: "si", do_mg_l, values, water_temp_c: "20", taken_at: "2026-08-12T10:00" },
+          }).oxygen);
+        }""",
+        [f"{survey}/fieldpack", VALUES],
+    )
+    assert found == pytest.approx([oxygen for _, _, oxygen in VALUES])
+    now = datetime.now(UTC)
+    forms = [{"submission_id": str(uuid.uuid4()), "do_mg_l": box, "values": text, "water_temp_c": "20",
+              "taken_at": "2026-08-12T10:00"} for box, text, _ in VALUES]  # fmt: skip
+    news = [settle(parse_reading(form, Show(), "D8", now)[0], Settings()) for form in forms]
+    assert [one.do_mg_l for one in news] == pytest.approx(found)
