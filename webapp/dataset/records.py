@@ -67,13 +67,17 @@ def meter_checks_table(rows, names, judged):
             **row,
             "meter": meters[row["check_id"]],
             "unit": UNIT_OF[row["parameter"]],
-            **_judged_now(now[row["check_id"]]),
+            **_judged_cells(now[row["check_id"]]),
         }
         for row in kept_rows("meter_check", rows, names)
     ]
     further = (
         text("meter", "Meter"),
         text("unit", "Unit of shown, expected, compared, error and limit", "UCUM code."),
+        number("error_then", "Error, as judged then"),
+        yes_no("passes_then", "It passed then"),
+        text("grade_then", "Grade then"),
+        text("says_then", "What was said then"),
         number("expected_now", "It should have shown", says="By today's equations."),
         number("error", "Error", says="What it showed less what it should have shown."),
         number("error_percent", "Error as a share of what it should have shown", "%"),
@@ -92,9 +96,13 @@ def meter_checks_table(rows, names, judged):
     return _with_choices(made, kind=meter_words.KINDS, parameter=words, standard=meter_words.STANDARDS)
 
 
-def _judged_now(judged):
-    verdict = judged.verdict
+def _judged_cells(judged):
+    verdict, then = judged.verdict, judged.check.judged or {}
     return {
+        "error_then": rounded_off(then.get("error")),
+        "passes_then": then.get("passes"),
+        "grade_then": then.get("grade"),
+        "says_then": then.get("says"),
         "expected_now": rounded_off(judged.expected),
         "error": rounded_off(verdict.error),
         "error_percent": rounded_off(verdict.error_percent),
