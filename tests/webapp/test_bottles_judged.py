@@ -65,6 +65,11 @@ def test_without_a_clock_a_bottle_that_nobody_began_has_no_time():
     assert (one.hold.state, one.reasons) == ("", ())
 
 
+def test_a_result_without_the_time_its_analysis_began_does_not_show_that_it_was_in_time():
+    (one,) = judged([bottle()], [result(hours=None)], now=FILLED + HOUR)
+    assert (one.hold.state, one.reasons, one.quality) == ("", ("hold_time_unknown",), "questionable")
+
+
 def test_chlorophyll_filtered_on_site_no_longer_waits():
     filtered, not_yet = bottle(analysis="chlorophyll_a", filtered=True), bottle("B2", "chlorophyll_a")
     states = [one.hold.state for one in judged([filtered, not_yet], [], now=FILLED + 30 * HOUR)]

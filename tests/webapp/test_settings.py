@@ -138,6 +138,7 @@ def test_two_people_at_once_see_what_the_other_changed(browser_as, address, stor
 def test_defaults_and_earlier_versions_are_filled_in_and_saved_like_any_change(browser_as, address, stored):
     lead = browser_as("lead")
     lead.post(address, {"based_on": "1", "snapshot_h": "4", "reason": "a long day"})
+    assert "just these values already" in lead.get(f"{address}?fill=2").text
     filled = lead.get(f"{address}?fill=defaults").text
     assert "The trade&#39;s defaults are filled in below" in filled
     assert 'name="snapshot_h" value="3"' in filled

@@ -104,6 +104,8 @@ def _judged(bottle, results, beside, settings, now):
     found = {REASON_OF[one.name] for one in findings}
     if result is not None and result.censor == "less_than":
         found.add("below_limit")
+    if reported(result) and not waited.state:
+        found.add("hold_time_unknown")
     reasons = tuple(reason for reason in REASONS if reason in found)
     quality = "missing" if not reported(result) else "questionable" if found - set(TELLING) else "not_checked"
     return JudgedBottle(bottle, tuple(results), waited, tuple(findings), reasons, quality)
@@ -113,7 +115,8 @@ def _hold(bottle, result, settings, now):
     filled, begun = bottle.collected_at, result.started_at if result is not None else None
     if bottle.analysis == "chlorophyll_a" and bottle.filtered:
         begun = filled  # its clock runs to the filter, and that was on site
-    until = begun or now
+    # The clock of a bottle whose result is there has stopped, even where nobody tells when.
+    until = begun or (None if reported(result) else now)
     hours = math.nan if until is None else (until - filled).total_seconds() / 3600
     return hold(0.0, hours, bottle.analysis, settings)
 

@@ -29,6 +29,7 @@ QUALITIES = {
 }
 REASONS = {
     "past_hold_time": "it waited longer than its analysis allows",
+    "hold_time_unknown": "how long it waited is not told",
     "warm_on_receipt": "it reached the laboratory warm",
     "frozen_on_receipt": "it may have frozen on the way",
     "not_on_ice": "it was put on ice late",
