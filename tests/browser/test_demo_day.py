@@ -110,7 +110,7 @@ def _corrects(page, survey):
 def _sets_aside(page, survey):
     page.goto(survey + "/readings?station=D3")
     page.locator("#readings-table tbody").get_by_role("link", name="D3").tap()
-    page.get_by_label("Reason to set it aside").fill("percent and mg/L do not fit together")
+    page.get_by_label("Set it aside, because").fill("percent and mg/L do not fit together")
     page.get_by_role("button", name="Set aside").tap()
     page.get_by_text("Set aside: not used.").wait_for()
 

@@ -100,6 +100,6 @@ def test_readings_are_filtered_and_set_aside(plain):
     page.get_by_label("Station", exact=True).select_option("D4")
     page.get_by_role("button", name="Show these").tap()
     page.locator("tbody").get_by_role("link", name="D4").tap()
-    page.get_by_label("Reason to set it aside").fill("the probe was not settled")
+    page.get_by_label("Set it aside, because").fill("the probe was not settled")
     page.get_by_role("button", name="Set aside").tap()
     expect(page.locator("main")).to_contain_text("Set aside: not used. the probe was not settled")
