@@ -184,18 +184,20 @@ def test_ticked_readings_are_kept_on_the_page_which_says_what_was_left_out(brows
     office, address = browser_as("office"), f"/surveys/{survey.id}/review"
     found = by_place(db, survey)
     mild = [place for place, one in found.items() if not bulk.why_alone(one, people["office"].id)]
-    assert "Tick the readings" in office.post(address, {"reason": WHY}).text
+    assert "Tick the readings" in office.post(address, {"why_kept": WHY}).text
     ticks = [f"{found[place].reading.id}.0" for place in (mild[0], "D3r")]
-    assert "Enter the reason" in office.post(address, {"ticked": ticks, "reason": ""}).text
-    text = plain(office.post(address, {"ticked": [*ticks, "x", "no-such.0", ".", "\u00b2.\u00b2"], "reason": WHY}))
+    assert "Enter the reason" in office.post(address, {"ticked": ticks, "why_kept": ""}).text
+    text = plain(office.post(address, {"ticked": [*ticks, "x", "no-such.0", ".", "\u00b2.\u00b2"], "why_kept": WHY}))
     assert "1 reading was kept. 1 was left out:" in text and "a repeat differs by more than usual" in text
     db.rollback()
     service.ask(db, survey.id, found[mild[1]].reading.id, "Which bank?", 0, SignedIn(people["lead"]))
-    stale = plain(office.post(address, {"ticked": [f"{found[mild[1]].reading.id}.0"], "reason": WHY}))
+    stale = plain(office.post(address, {"ticked": [f"{found[mild[1]].reading.id}.0"], "why_kept": WHY}))
     assert "somebody decided about it since you opened the page" in stale
-    rest = plain(office.post(address, {"all_that_fit": "yes", "reason": WHY}))
+    answer = office.post(address, {"all_that_fit": "yes", "why_kept": WHY})
+    assert answer.status_code == 303
+    rest = plain(office.get(answer.headers["Location"]))
     assert re.search(rf"{len(mild) - 2} readings? (was|were) kept\.", rest), rest
-    assert browser_as("crew").post(address, {"ticked": ticks, "reason": WHY}).status_code == 403
+    assert browser_as("crew").post(address, {"ticked": ticks, "why_kept": WHY}).status_code == 403
 
 
 def test_table_shows_and_filters_quality_checks_and_review(browser_as, db, survey, people, day):

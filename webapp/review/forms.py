@@ -27,6 +27,7 @@ FILTER_FIELDS = (
     *("state", "station", "author", "since", "until", "quality", "checks", "review", "reason", "meter", "day"),
 )
 LAST_PAGE = 100_000
+WHY_KEPT = "reason: whoever reads this later must see why"
 
 
 @dataclass(frozen=True)
@@ -150,7 +151,7 @@ class Ticked:
 def parse_ticked(source, ticked):
     """Return (Ticked, {}) or (None, {field: message}); ticked are texts "id.number of decisions"."""
     fields = Fields(source)
-    reason = _reason(fields)
+    reason = fields.text("why_kept", WHY_KEPT, 500)
     counts = {}
     for text in ticked:
         reading_id, _, count = text.rpartition(".")
@@ -195,7 +196,7 @@ def _count(text):
 
 
 def _reason(fields):
-    return fields.text("reason", "reason: whoever reads this later must see why", 500)
+    return fields.text("reason", WHY_KEPT, 500)
 
 
 def _same(value, other):

@@ -66,7 +66,7 @@ def table(survey_id):
         qualities=QUALITY_NAMES,
         questions=listing.questions_for(judged, current_user.id),
         to_look_at=listing.to_look_at(judged),
-        imported=_counts(request.args),
+        imported=_counts(request.args, "added", "known"),
         has_plan=plan is not None,
     )
 
@@ -74,8 +74,9 @@ def table(survey_id):
 @bp.get("/surveys/<survey_id>/review")
 @needs("correct")
 def todo(survey_id):
-    """Show what needs a look, worst first."""
-    return _todo(survey_id)
+    """Show what needs a look, worst first; ?kept= says how many were kept just now."""
+    (kept,) = _counts(request.args, "kept") or (None,)
+    return _todo(survey_id, outcome=None if kept is None else (kept, ()))
 
 
 @bp.post("/surveys/<survey_id>/review")
@@ -95,7 +96,9 @@ def keep_ticked(survey_id):
         outcome = bulk.keep_many(db, survey, counts, ticked.reason, current_user)
     except Conflict as conflict:
         return _todo(survey_id, 409, conflict=conflict.message)
-    return _todo(survey_id, outcome=outcome)
+    if wants_fragment() or outcome[1]:
+        return _todo(survey_id, outcome=outcome)
+    return redirect(url_for(".todo", survey_id=survey_id, kept=outcome[0], **_asked()), code=303)
 
 
 def _todo(survey_id, status=200, errors=None, conflict="", outcome=None):
@@ -166,7 +169,7 @@ def restore(survey_id, reading_id):
 @needs("correct")
 def keep(survey_id, reading_id):
     """Let a reading stand as a reviewer."""
-    decision = forms.parse_words(request.form, "why_kept", "reason: whoever reads this later must see why")
+    decision = forms.parse_words(request.form, "why_kept", forms.WHY_KEPT)
     return _decide_with(service.keep, survey_id, reading_id, *decision)
 
 
@@ -380,9 +383,9 @@ def _pasted():
     return request.form.get("text", "")
 
 
-def _counts(args):
-    """Return (added, known) of an import that led here, or None."""
-    counts = [args.get(name, "") for name in ("added", "known")]
+def _counts(args, *names):
+    """Return what the deed that led here counted, or None."""
+    counts = [args.get(name, "") for name in names]
     if all(count.isascii() and count.isdigit() and len(count) <= 6 for count in counts):
         return tuple(int(count) for count in counts)
     return None
