@@ -170,7 +170,7 @@ def test_a_server_that_has_the_survey_says_what_differs(source, database_with_pe
     [
         ("readings", "do_mg_l_raw", "8,1", "a number with a decimal point"),
         ("readings", "do_mg_l_raw", "nan", "a number with a decimal point"),
-        ("readings", "taken_at", "12.08.2026 06:30", "Invalid isoformat"),
+        ("readings", "taken_at", "12.08.2026 06:30", "a time with its offset"),
         ("readings", "taken_at", "", "a value is missing"),
         ("readings", "author", "Nobody", "does not say what that is"),
         ("readings", "station_code", "Z9", "does not say what that is"),

@@ -10,6 +10,7 @@ from webapp.dataset.fields import as_written
 from webapp.dataset.kept import holds_json, kind_of
 from webapp.surveyfile.archive import LARGEST_UNPACKED, MOST_ROWS, BadSurveyFile
 from webapp.surveyfile.rows import default_of, taken
+from webapp.surveyfile.shapes import is_time
 
 MOST_BAD = 50
 _NUMBER = re.compile(r"-?\d+(\.\d+)?([eE][+-]?\d+)?", re.ASCII)
@@ -68,7 +69,7 @@ class Reader:
 
     def _fits(self, name, number, header, cells):
         if len(cells) != len(header):
-            self.refuse(name, number, "", "", f"{len(cells)} cells, where the header has {len(header)}")
+            self.refuse(name, number, "", "", f"the row has {len(cells)} cells, the header {len(header)}")
         return len(cells) == len(header)
 
     def refuse(self, name, number, column, cell, message):
@@ -102,7 +103,7 @@ def way_of(column, named=None):
         return lambda cell: _named(column, as_written(cell), named)
     if holds_json(column):
         return lambda cell: _checked(column, cell, as_json_value)
-    told = {"boolean": yes_no, "integer": whole_number, "number": any_number, "datetime": str}.get(kind_of(column))
+    told = {"boolean": yes_no, "integer": whole_number, "number": any_number, "datetime": a_time}.get(kind_of(column))
     return lambda cell: _checked(column, cell, told or as_written)
 
 
@@ -128,6 +129,13 @@ def _empty(column):
     if kind_of(column) == "string" and not (column.primary_key or column.foreign_keys):
         return ""
     raise ValueError("a value is missing")
+
+
+def a_time(cell):
+    """Return the text of a time with its offset."""
+    if not is_time(cell):
+        raise ValueError("a time with its offset is wanted here, like 2026-08-12T06:30:00+02:00")
+    return cell
 
 
 def yes_no(cell):

@@ -1,7 +1,5 @@
 """The tables of a dataset that its quality rests on: drift, replicates, sections, completeness, deviations."""
 
-import math
-
 from calc.findings import exceeds
 from calc.quality_bottle import bottle_replicate
 from calc.quality_day import completeness
@@ -196,50 +194,57 @@ def _section_row(occasion):
     }
 
 
+_COMPLETENESS = (
+    whole("line", "Line", constraints={"required": True}),
+    text("station_code", "Station", "Empty for the whole survey."),
+    whole("planned", "Stations planned"),
+    whole("readings", "Readings"),
+    whole("valid", "Of these valid", "Oxygen is there, and quality is neither bad nor missing."),
+    whole("covered", "Stations with a valid reading"),
+    number("percent", "Of those planned", "%"),
+    number("wanted_percent", "Wanted", "%"),
+    yes_no("complete", "Complete", "Empty where nothing was planned."),
+    text("says", "In words"),
+)
+
+
 def completeness_table(plan, lines, settings):
     """Return how much of what was planned became valid readings, station by station and of the whole survey."""
-    fields = (
-        whole("line", "Line", constraints={"required": True}),
-        text("station_code", "Station", "Empty for the whole survey."),
-        whole("planned", "Stations planned"),
-        whole("readings", "Readings"),
-        whole("valid", "Of these valid", "Oxygen is there, and quality is neither bad nor missing."),
-        whole("covered", "Stations with a valid reading"),
-        number("percent", "Of those planned", "%"),
-        number("wanted_percent", "Wanted", "%"),
-        yes_no("complete", "Complete", "Empty where nothing was planned."),
-        text("says", "In words"),
-    )
     planned = {row["code"] for row in _stations(plan) if (row.get("state") or "planned") != "dropped"}
-    read = {}
+    valid = {}
     for line in lines:
-        read.setdefault(line.final.station_code, []).append(line.judged.quality not in ("bad", "missing"))
+        valid.setdefault(line.final.station_code, []).append(line.judged.quality not in ("bad", "missing"))
     rows = [
         {
             "station_code": code,
             "planned": int(code in planned),
-            "readings": len(read.get(code, ())),
-            "valid": sum(read.get(code, ())),
-            "covered": int(any(read.get(code, ()))),
+            "readings": len(valid.get(code, ())),
+            "valid": sum(valid.get(code, ())),
+            "covered": int(any(valid.get(code, ()))),
         }
-        for code in sorted(planned | set(read))
+        for code in sorted(planned | set(valid))
     ]
+    rows.append(_whole_survey(rows, settings))
+    told = [{"line": place, **row} for place, row in enumerate(rows, start=1)]
+    says = "How much of what the newest plan asks for became valid readings. The last row is the whole survey."
+    foreign = {"station_code": ("stations", "code")}
+    return DataTable("completeness", "Completeness", says, _COMPLETENESS, ("line",), told, foreign)
+
+
+def _whole_survey(rows, settings):
+    planned = sum(row["planned"] for row in rows)
     covered = sum(row["covered"] for row in rows if row["planned"])
-    verdict = completeness(len(planned), covered, 0, 0, settings)
-    whole_survey = {
-        "planned": len(planned),
-        "readings": len(lines),
+    verdict = completeness(planned, covered, 0, 0, settings)
+    return {
+        "planned": planned,
+        "readings": sum(row["readings"] for row in rows),
         "valid": sum(row["valid"] for row in rows),
         "covered": covered,
-        "percent": None if math.isnan(verdict.percent) else rounded_off(verdict.percent),
+        "percent": rounded_off(verdict.percent),
         "wanted_percent": settings.complete_percent,
         "complete": verdict.complete,
         "says": verdict.says,
     }
-    says = "How much of what the newest plan asks for became valid readings. The last row is the whole survey."
-    told = [{"line": place, **row} for place, row in enumerate([*rows, whole_survey], start=1)]
-    foreign = {"station_code": ("stations", "code")}
-    return DataTable("completeness", "Completeness", says, fields, ("line",), told, foreign)
 
 
 def _stations(plan):
