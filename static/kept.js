@@ -3,9 +3,8 @@ import { changeRecord, get } from "./waiting_store.js";
 import { parsed } from "./phone.js";
 import { form, freshen, untouched } from "./typing.js";
 import { kindOf, placeOf, timeOf, wordsOf } from "./kinds.js";
-import { checkOnPhone } from "./check.js";
-import { otherCheck } from "./check_other.js";
-import { age, facts, sentence } from "./check_words.js";
+import { checkOf } from "./check_kinds.js";
+import { age } from "./check_words.js";
 
 const template = document.querySelector("#kept");
 const place = form()?.closest("section").id;
@@ -18,6 +17,12 @@ function put(section) {
   window.scrollTo(0, 0);
 }
 
+// What is about people stands before everything else.
+function putFirst(view, line) {
+  line.className = "notice bad";
+  view.querySelector("h1").after(line);
+}
+
 // The sheet on this phone doesn't know what was read since it was fetched: the next station is the next one down.
 function offerNext(link, pack, { kind, survey, code }) {
   const here = pack?.stations.findIndex((one) => one.code === code) ?? -1;
@@ -26,13 +31,6 @@ function offerNext(link, pack, { kind, survey, code }) {
   if (link.hidden) return;
   link.href = `/surveys/${survey}/stations/${encodeURIComponent(next.code)}/reading`;
   link.textContent = kind === "visit" ? `Read at ${next.code}` : `Next: ${next.code}`;
-}
-
-// The phone's own check, as the lines that it shows; null where it has none.
-function checkOf(pack, record) {
-  if (kindOf(record) !== "reading") return otherCheck(pack, record);
-  const check = checkOnPhone(pack, record);
-  return check && { ...check, number: check.oxygen.toFixed(2), sentence: sentence(check), lines: facts(check) };
 }
 
 async function showKept({ detail: record }) {
@@ -56,12 +54,12 @@ async function showKept({ detail: record }) {
   at("oxygen").textContent = check.number ?? "";
   at("oxygen").parentElement.hidden = check.number === undefined;
   at("sentence").textContent = check.sentence;
+  if (check.warns) putFirst(view, at("sentence").parentElement);
   at("age").textContent = age(pack);
   for (const [name, words] of check.lines) {
-    const [term, fact] = ["dt", "dd"].map((tag) => document.createElement(tag));
-    term.textContent = name;
-    fact.textContent = words;
-    at("facts").append(term, fact);
+    const pair = ["dt", "dd"].map((tag) => document.createElement(tag));
+    [pair[0].textContent, pair[1].textContent] = [name, words];
+    at("facts").append(...pair);
   }
   // The page may be closed when the server answers: the record says what was shown.
   await changeRecord(record, { check });

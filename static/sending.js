@@ -8,7 +8,7 @@ const LEASE_MS = 40000;
 const tab = newId();
 let failures = 0;
 let busy = false;
-let again = false;
+let again;
 let timer;
 
 // Web Locks end with their tab; where they are missing, on plain HTTP, a lease in the database does.
@@ -87,13 +87,14 @@ async function round(now) {
 
 // Without an answer the pauses grow to a minute, none alike: phones that meet signal together must not call together.
 export async function send(now = false) {
-  again = busy;
+  // What is asked for during a round is done after it, at once if so it was asked.
+  if (busy) again = again === true || now === true;
   if (busy || !phone) return;
   busy = true;
+  again = undefined;
   clearTimeout(timer);
   await alone(() => round(now === true)).catch((trouble) => console.warn("not sent", trouble));
   busy = false;
   const pause = failures ? Math.min(MINUTE, 2000 * 2 ** failures) * (0.5 + Math.random() / 2) : MINUTE;
-  timer = setTimeout(send, again ? 0 : pause);
-  again = false;
+  timer = setTimeout(send, again === undefined ? pause : 0, again);
 }

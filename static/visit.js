@@ -1,8 +1,8 @@
 // The visit form on this phone: the wading warning as it is typed, leaving, and going on with a visit without signal.
-import { get, records } from "./waiting_store.js";
+import { get, records, remove } from "./waiting_store.js";
 import { nowIn, person } from "./phone.js";
-import { fill, form, freshen, say } from "./typing.js";
-import { wadingOf } from "./check_other.js";
+import { draftKey, fill, form, freshen, say } from "./typing.js";
+import { wadingOf } from "./check_kinds.js";
 
 const NOT_REPEATED = ["submission_id", "author_id", "saved_at", "visit_id", "seen", "reason"];
 
@@ -43,7 +43,8 @@ function goOn(it, saved) {
   it.elements.visit_id.value = visitOf(last);
   fill(it, Object.fromEntries(kept));
   it.closest("section").querySelector("h1").textContent = `Your visit at ${last.code}`;
-  say(`It began ${last.fields.arrived_at.replace("T", " ")}; what you add belongs to it.`);
+  say(`It began ${last.fields.arrived_at.replace("T", " ")}; what you add belongs to it. Begin afresh for another visit.`);
+  warn(it);
 }
 
 // The form as that of another visit: empty but for who is here.
@@ -70,8 +71,8 @@ async function prepare(asked) {
   const it = form();
   if (!it) return;
   it.querySelector("[data-leaves-now]").hidden = false;
-  const half = await get("drafts", `${person} ${it.getAttribute("action")}`);
-  if (half || location.hash || !(asked || "kept" in document.documentElement.dataset)) return;
+  const half = await get("drafts", draftKey(it));
+  if (half || location.hash.includes("waiting=") || !(asked || "kept" in document.documentElement.dataset)) return;
   const saved = await savedOf(it);
   if (saved.length) goOn(it, saved);
 }
@@ -82,10 +83,13 @@ document.addEventListener("click", (event) => {
     form().elements.left_at.value = nowIn(form().dataset.zone);
     form().elements.left_at.dispatchEvent(new Event("input", { bubbles: true }));
   }
-  if (!event.target.closest("[data-another]")) return;
+  const onPhone = "kept" in document.documentElement.dataset && event.target.closest("[data-begin-afresh]");
+  if (!onPhone && !event.target.closest("[data-another]")) return;
   event.preventDefault();
+  event.stopPropagation();
+  remove("drafts", draftKey(form())).catch(() => {});
   another(form());
-});
+}, true);
 document.addEventListener("bankside:again", () => prepare(true));
 document.addEventListener("htmx:afterSettle", () => { if (form()) form().querySelector("[data-leaves-now]").hidden = false; });
 prepare(false);

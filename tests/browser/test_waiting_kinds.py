@@ -72,6 +72,7 @@ def test_check_and_visit_without_signal_are_judged_on_the_phone_and_arrive_as_wh
     ready.goto(ready.survey + "/stations/D6/visit")
     expect(ready.get_by_text("what you add belongs to it.")).to_be_visible()
     assert ready.get_by_label("Stage").input_value() == "0,41"
+    expect(ready.locator("#wading")).to_contain_text("Do not wade.")
     ready.get_by_text("Leaving", exact=True).tap()
     ready.get_by_role("button", name="We leave now").tap()
     ready.get_by_label("The visit is").select_option("complete")

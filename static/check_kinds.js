@@ -1,5 +1,7 @@
-// The phone's own check of what is no reading: a meter against the field pack's saturation, wading against its limits.
-import { number, pressureOf, saturation } from "./check.js";
+// The phone's own check by kind: a reading, a meter against the field pack's saturation, wading against its limits.
+import { checkOnPhone, number, pressureOf, saturation } from "./check.js";
+import { facts, sentence } from "./check_words.js";
+import { kindOf } from "./kinds.js";
 
 const signed = (value, digits) => `${value < 0 ? "\u2212" : "+"}${Math.abs(value).toFixed(digits)}`;
 
@@ -26,6 +28,8 @@ function meterCheck(pack, { fields }) {
   };
 }
 
+const LOCAL = "Local rules and your employer's plan come first.";
+
 // Never that anything is safe: below every limit there is nothing to say but whose judgement it is.
 export function wading({ stop, caution, depth, ft2 }, metres, speed) {
   if (!Number.isFinite(metres)) return null;
@@ -33,12 +37,12 @@ export function wading({ stop, caution, depth, ft2 }, metres, speed) {
   const measured = `Depth times velocity is ${product.toFixed(2)} m²/s (${(product * ft2).toFixed(1)} ft²/s).`;
   if (product >= stop - 1e-9) {
     const limit = `The limit is ${stop.toFixed(2)} m²/s (${(stop * ft2).toFixed(0)} ft²/s).`;
-    return { warns: true, sentence: `Do not wade. ${measured} ${limit} Use a bridge, a boat or the bank.` };
+    return { warns: true, sentence: `Do not wade. ${measured} ${limit} Use a bridge, a boat or the bank. ${LOCAL}` };
   }
   if (product >= caution - 1e-9) {
-    return { warns: true, sentence: `${measured} The project's wading limit is ${caution} m²/s (${(caution * ft2).toFixed(1)} ft²/s).` };
+    return { warns: true, sentence: `${measured} The project's wading limit is ${caution} m²/s (${(caution * ft2).toFixed(1)} ft²/s). ${LOCAL}` };
   }
-  if (metres > depth + 1e-9) return { warns: true, sentence: `The depth is above the project's wading limit of ${depth} m.` };
+  if (metres > depth + 1e-9) return { warns: true, sentence: `The depth is above the project's wading limit of ${depth} m. ${LOCAL}` };
   return Number.isFinite(product) ? { warns: false, sentence: `${measured} Still your judgement: bed, cold, debris, experience.` } : null;
 }
 
@@ -48,8 +52,14 @@ export function wadingOf(pack, fields) {
   return pack.wading ? wading(pack.wading, depth, speed) : null;
 }
 
-export function otherCheck(pack, { kind, fields }) {
-  if (kind === "check") return meterCheck(pack, { fields });
-  const found = kind === "visit" && wadingOf(pack, fields);
+// The phone's own check of a record, as what it says and the lines below that; null where it has none.
+export function checkOf(pack, record) {
+  const kind = kindOf(record);
+  if (kind === "check") return meterCheck(pack, record);
+  if (kind === "reading") {
+    const check = checkOnPhone(pack, record);
+    return check && { ...check, number: check.oxygen.toFixed(2), sentence: sentence(check), lines: facts(check) };
+  }
+  const found = kind === "visit" && wadingOf(pack, record.fields);
   return found ? { ...found, lines: [] } : null;
 }
