@@ -178,11 +178,12 @@ class Neighbourhood:
     def _recent(self, code, taken_at):
         """Return oxygen at the stations read before this one, one value each, the latest last."""
         latest = {}
+        wanted = min(_RECENT_STATIONS, len(self._at.keys() - {code}))
         end = bisect_right(self._times, taken_at)
         for one in reversed(self._used[max(0, end - _FURTHEST_BACK) : end]):
             if one.station_code != code and one.do_mg_l is not None:
                 latest.setdefault(one.station_code, one.do_mg_l)
-                if len(latest) == _RECENT_STATIONS:
+                if len(latest) == wanted:
                     break
         return tuple(reversed(latest.values()))
 
