@@ -50,7 +50,11 @@ export function whatOf({ dataset: { kind, what = "" }, elements }) {
 
 // What was read, in a few words; nothing for a kind that is no one number.
 export function valueOf({ fields, ...record }) {
-  if (isReading(record)) return fields.do_mg_l ? `${fields.do_mg_l} mg/L` : `${fields.do_percent} %`;
+  if (isReading(record)) {
+    const several = (fields.values ?? "").split(/[\s;]+/).map((one) => one.split(/[@/]/)[0]).filter(Boolean);
+    if (several.length) return `${several.join(" ")} mg/L`;
+    return fields.do_mg_l ? `${fields.do_mg_l} mg/L` : `${fields.do_percent} %`;
+  }
   if (record.kind === "bottle") return fields.code;
   if (record.kind === "check") return fields.value ? `shows ${fields.value}` : "";
   return fields.left_at ? `left ${fields.left_at.replace("T", " ")}` : "";
