@@ -1,12 +1,19 @@
 """Checks on the air pressure: the barometer trap, unit slips, and pressure against elevation."""
 
 import math
+from functools import lru_cache
 
 from calc.findings import Finding, exceeds, known, or_nan, shown, within
 from calc.oxygen import saturation_mg_l, standard_pressure_mmhg, station_pressure_mmhg
 from calc.units import UNITS, from_si, to_si
 
 _USUAL_WATER_TEMP_C = 20.0
+
+
+@lru_cache(maxsize=64)
+def _standard_mmhg(elevation_m):
+    """Return the standard pressure, NaN where it can't be told; a survey asks for the same one with each reading."""
+    return or_nan(standard_pressure_mmhg, elevation_m)
 
 
 def sea_level_pressure(pressure_mmhg, elevation_m, water_temp_c, settings, *, source="", unit="mm[Hg]"):
@@ -32,7 +39,7 @@ def sea_level_pressure(pressure_mmhg, elevation_m, water_temp_c, settings, *, so
         Its suggestion keeps the entry and names it a weather value, so that both values stay on record.
     """
     pressure, elevation, water_temp = known(pressure_mmhg, elevation_m, water_temp_c)
-    excess = pressure - or_nan(standard_pressure_mmhg, elevation)
+    excess = pressure - _standard_mmhg(elevation)
     looks_so = within(pressure, settings.sea_level_low_mmhg, settings.sea_level_high_mmhg) and exceeds(
         elevation, settings.sea_level_elevation_m
     )
@@ -89,7 +96,7 @@ def pressure_unit(pressure_value, unit, elevation_m, settings):
     tuple of Finding
     """
     value, elevation = known(pressure_value, elevation_m)
-    standard = or_nan(standard_pressure_mmhg, elevation)
+    standard = _standard_mmhg(elevation)
     if _is_usual(value, unit, standard, settings):
         return ()
     other = _unit_by_range(value, unit, settings) or _unit_by_elevation(value, unit, standard, settings)
@@ -152,7 +159,7 @@ def pressure_against_elevation(pressure_mmhg, elevation_m, settings):
     tuple of Finding
     """
     pressure, elevation = known(pressure_mmhg, elevation_m)
-    standard = or_nan(standard_pressure_mmhg, elevation)
+    standard = _standard_mmhg(elevation)
     if not exceeds(abs(pressure - standard), settings.pressure_departure_mmhg):
         return ()
     side = "above" if pressure > standard else "below"
