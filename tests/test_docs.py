@@ -6,6 +6,7 @@ from pathlib import Path
 import pytest
 
 from webapp import cli, config
+from webapp.dataset.recipes import BY_TOOL
 
 ROOT = Path(__file__).resolve().parent.parent
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -32,6 +33,11 @@ def test_readme_opens_with_the_job_in_one_paragraph():
     first = README.split("\n\n")[1]
     assert first.startswith("Below a discharge")
     assert "sag" in first
+
+
+@pytest.mark.parametrize(("tool", "lines"), BY_TOOL)
+def test_readme_opens_the_dataset_as_the_dataset_itself_says(tool, lines):
+    assert "\n".join(lines) in README
 
 
 @pytest.mark.parametrize("folder", ["calc", "webapp"])
