@@ -162,6 +162,21 @@ def test_weather_pressure_in_inches_and_fahrenheit_are_read_as_the_server_reads_
     assert found["saturation"] == pytest.approx(saturation_mg_l(19.0, pressure), abs=0.01)
 
 
+def test_point_that_a_link_names_is_on_the_kept_form_and_is_not_kept_with_it(ready, server):
+    page, form = ready, f"{ready.survey}/stations/D8/reading"
+    page.goto(f"{form}?position=left&sensor_depth_m=0.2", wait_until="networkidle")
+    expect(page.locator("[name=position]")).to_have_value("left")
+    server.kill()
+    page.goto(form)
+    expect(page.locator("[name=position]")).to_have_value("")
+    page.goto(f"{form}?position=right&sensor_depth_m=0.8&replicate=yes&do_mg_l=9")
+    expect(page.locator("[name=position]")).to_have_value("right")
+    expect(page.locator("[name=sensor_depth_m]")).to_have_value("0.8")
+    expect(page.locator("[name=replicate]")).to_be_checked()
+    expect(page.locator("[name=do_mg_l]")).to_have_value("")
+    server.start()
+
+
 def test_answer_that_differs_from_the_phones_replaces_it_and_says_so(ready, server):
     page = ready
     page.goto(f"{page.survey}/stations/D6/reading")
