@@ -38,6 +38,8 @@ def news(survey_id):
     survey = get_survey(db, survey_id, current_user.id)
     if service.current_mark(db, survey) == request.args.get("shown", ""):
         return "", 204
+    if not wants_fragment():
+        return _page(survey)
     return page_or_part("sag/page.html", "sag/_news.html", survey=survey, changed=True)
 
 
