@@ -16,7 +16,7 @@ from webapp.dataset.cells import BadDataset
 from webapp.dataset.kept import NOT_HERE, kept
 from webapp.dataset.package import checksums, zipped
 from webapp.errors import Conflict, NotAllowed
-from webapp.models import History, Reading, Survey, SurveyMember
+from webapp.models import History, Reading, Survey, SurveyEvent, SurveyMember
 from webapp.people import service as people_service
 from webapp.people.forms import NewPerson
 from webapp.people.queries import find_by_sign_in
@@ -281,6 +281,36 @@ def test_import_in_two_steps_stores_what_was_looked_at(browser_as, source, db):
     again = office.post("/datasets/import/preview", {"file": (io.BytesIO(source.content), "d.zip")})
     assert "is equal to it" in again.text and "Store the survey" not in again.text
     assert office.post("/datasets/import", {"held": held, "mark": mark}).status_code == 409
+
+
+def test_every_page_of_a_survey_taken_from_its_dataset_works(app, browser_as, source, people):
+    imported(app.extensions["bankside_database"], source.content, people["office"].id)
+    office, seen = browser_as("office"), {}
+    for rule in app.url_map.iter_rules():
+        if "GET" in rule.methods and rule.arguments == {"survey_id"}:
+            address = rule.rule.replace("<survey_id>", source.survey.id)
+            seen[rule.endpoint] = office.get(address).status_code
+    assert {"sag.page", "meters.page", "review.todo", "settings.page", "bottles.page", "dataset.page"} <= set(seen)
+    assert {name: status for name, status in seen.items() if status >= 400} == {}
+
+
+def test_an_approved_survey_comes_approved_and_stays_as_it_was(source, strange, tmp_path, database_with_people):
+    database, office = strange
+    (tmp_path / "approved").mkdir()
+    with servers.server_with(database_with_people, tmp_path / "approved") as approved:
+        imported(approved, source.content, source.people["office"].id)
+        with approved.writing() as db:
+            event = {"survey_id": source.survey.id, "kind": "approved", "version": "reviewed-1-x", "reason": "good"}
+            db.add(SurveyEvent(made_by_id=source.people["lead"].id, **event))
+            db.commit()
+        dataset = exported(approved, source.survey.id)
+    assert dataset.version.startswith("approved-")
+    imported(database, service.zip_of(dataset), office)
+    again = exported(database, source.survey.id)
+    assert again.files == dataset.files and b",approved," in again.files["readings.csv"]
+    facts, _ = parse_survey({**SURVEY_FORM, "elevation_m": "212"})
+    with database.writing() as db, pytest.raises(Conflict, match="approved"):
+        change_survey(db, source.survey.id, facts, office)
 
 
 def test_the_import_page_names_bad_cells_and_takes_nothing(browser_as, source, db):

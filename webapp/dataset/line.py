@@ -24,6 +24,7 @@ class Line:
     limit_mg_l: float
     status: str
     reviewer: str
+    meter_id: str
 
     @property
     def spread_mg_l(self):

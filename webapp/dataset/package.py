@@ -62,6 +62,7 @@ def _resource(table, content):
         "mediatype": "text/csv",
         "encoding": "utf-8",
         "bytes": len(content),
+        "rows": len(table.rows),
         "hash": f"sha256:{hashlib.sha256(content).hexdigest()}",
         "dialect": {"delimiter": ",", "lineTerminator": "\r\n", "quoteChar": '"', "doubleQuote": True, "header": True},
         "schema": schema,

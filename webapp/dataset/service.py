@@ -175,6 +175,9 @@ def _lines(survey, plan, judgement, rows, names, limit, state):
     stations = (plan.tables.get("stations") or []) if plan else []
     kept = keeping.kept_rows("reading", rows["reading"], names)
     readings = {row["id"]: SimpleNamespace(**row) for row in rows["reading"]}
+    # The first of one name, as two servers may each have registered it.
+    ordered = sorted(rows["meter"], key=lambda row: (row["made_at"], row["id"]), reverse=True)
+    meters = {row["name"].casefold(): row["id"] for row in ordered}
     finals = [judgement.by_id[row["reading_id"]].reading for row in kept]
     derived = derive(survey, stations, _predicted(today_of, survey, plan), finals)
     return [
@@ -188,6 +191,7 @@ def _lines(survey, plan, judgement, rows, names, limit, state):
             limit_mg_l=limit,
             status=_status(state, final),
             reviewer=names.people.get(final.reviewer_id, ""),
+            meter_id=meters.get(final.meter.casefold(), ""),
         )
         for row, final, one in zip(kept, finals, derived, strict=True)
     ]

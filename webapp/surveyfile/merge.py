@@ -8,6 +8,8 @@ from datetime import datetime
 from webapp.surveyfile.tables import CARRIED, NOT_COMPARED, NUMBERED, carried
 
 _LONGEST_CODE = 12
+# Rows that nobody knows by a name or a number, and everybody by when they were.
+_TIMED = {"meter_check", "meter_check_event", "reading_event", "visit_entry", "hand_over", "lab_result", "survey_event"}
 
 
 @dataclass(frozen=True)
@@ -195,6 +197,10 @@ def _lines(name, here, told):
 def _title(one, row, codes):
     if one.name == "reading":
         return f"Reading at {codes[row['station_id']]}, {row['taken_at']:%Y-%m-%d %H:%M} UTC"
+    if instant := next(
+        (row[name] for name in ("checked_at", "at", "made_at") if one.name in _TIMED and name in row), None
+    ):
+        return f"{one.one}, {instant:%Y-%m-%d %H:%M} UTC"
     named = next((str(row[name]) for name in ("name", "code", "number", "what") if row.get(name)), "")
     return f"{one.one} {named or one.key_of(row)[0]}"
 
