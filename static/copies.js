@@ -26,10 +26,14 @@ export function fromFile(text) {
   }
 }
 
+// What was left empty need not be carried, except to a visit that goes on: there it may take something back.
+const written = (fields) => Object.fromEntries(Object.entries(fields).filter(([, text]) => text !== ""));
+
 // A record as letters that an address takes. What follows from the rest is left out: a smaller code is read more easily.
 export function asLetters(record) {
-  const { id, url, tries, nextAt, check, ...rest } = record;
-  const kept = url === addressOf(record) ? rest : { ...rest, url };
+  const { id, url, tries, nextAt, check, fields, ...rest } = record;
+  const kept = { ...rest, fields: fields.visit_id ? fields : written(fields) };
+  if (url !== addressOf(record)) kept.url = url;
   const bytes = new TextEncoder().encode(JSON.stringify(kept));
   return btoa(String.fromCharCode(...bytes)).replace(/\+/g, "-").replace(/\//g, "_").replace(/=+$/, "");
 }

@@ -52,7 +52,8 @@ async function bringBack(it) {
   const asked = new URLSearchParams(location.hash.slice(1)).get("waiting");
   const record = asked && (await get("waiting", asked));
   if (record && record.author === person && record.state !== "sent") {
-    fill(it, record.fields);
+    const empty = Object.fromEntries([...new FormData(it).keys()].map((name) => [name, ""]));
+    fill(it, { ...empty, ...record.fields });
     return say(record.reason || "This waits on this phone. Save it again to change it.");
   }
   const draft = await get("drafts", draftKey(it));

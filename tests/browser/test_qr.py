@@ -36,7 +36,8 @@ ALL_KEPT = """async () => {
   const { records } = await import(document.querySelector('script[src*="waiting_line"]').src
     .replace("waiting_line", "waiting_store"));
   return (await records()).map(({ id, url, author, authorName, fields, keptAt }) =>
-    ({ id, url, author, authorName, fields, keptAt }));
+    ({ id, url, author, authorName, keptAt,
+       fields: Object.fromEntries(Object.entries(fields).filter(([, text]) => text)) }));
 }"""
 
 

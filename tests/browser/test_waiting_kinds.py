@@ -103,6 +103,8 @@ def checked_without_signal(ready):
     """Save a meter check and return the numbers that the phone then shows."""
     ready.goto(ready.survey + "/meters/check")
     ready.get_by_label("Meter", exact=True).select_option("Meter B")
+    ready.get_by_label("Which check").select_option("as_found")
+    ready.get_by_label("Against").select_option("air_saturated_water")
     ready.get_by_label("Temperature there").fill("19,4")
     ready.get_by_label("Air pressure as shown").fill("731")
     ready.get_by_label("Where it comes from").select_option("barometer")
