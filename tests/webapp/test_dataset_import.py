@@ -9,6 +9,7 @@ from types import SimpleNamespace
 import pytest
 
 from tests.conftest import PASSWORD, ROLES, SURVEY_FORM
+from tests.needs import postgres_server
 from tests.webapp import servers
 from tests.webapp.everything import put_everything
 from webapp.dataset import importing, service
@@ -330,3 +331,11 @@ def test_only_the_office_imports(browser_as):
     for role in ("crew", "lead"):
         assert browser_as(role).get("/datasets/import").status_code == 403
     assert browser_as("office").post("/datasets/import/preview").status_code == 422
+
+
+def test_read_back_on_postgresql_it_is_the_same_zip(source):
+    with postgres_server() as url, servers.server(url) as database:
+        with database.writing() as db:
+            office = people_service.add_person(db, STRANGER).id
+        imported(database, source.content, office)
+        assert service.zip_of(exported(database, source.survey.id)) == source.content

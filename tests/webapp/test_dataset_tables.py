@@ -1,13 +1,13 @@
 """What the tables of a dataset tell beside the readings, and that pandas and R open it by the lines it shows."""
 
 import csv
-import os
 import shutil
 import subprocess
 
 import pandas
 import pytest
 
+from tests.needs import missing
 from tests.webapp.everything import unpacked
 from webapp.dataset.fields import as_written
 from webapp.dataset.recipes import PANDAS, R
@@ -163,10 +163,7 @@ def test_the_lines_for_pandas_open_it(folder, monkeypatch):
 
 
 def test_the_lines_for_r_open_it(folder):
-    rscript = shutil.which("Rscript")
-    if rscript is None:
-        assert os.environ.get("BANKSIDE_NO_SKIP") != "1", "Rscript is wanted here: install r-base-core"
-        pytest.skip("Rscript is not installed: apt install r-base-core")
+    rscript = shutil.which("Rscript") or missing("Rscript, of r-base-core,")
     shows = (
         "cat(nrow(readings), nrow(good), is.numeric(readings$do_mg_l_raw), sum(is.na(readings$do_mg_l_final)), "
         'sum(readings$longitude < 0, na.rm = TRUE), format(readings$taken_at[1], tz = "UTC"), '
