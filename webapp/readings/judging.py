@@ -31,14 +31,17 @@ _KEPT_SURVEYS = 4
 class Judged:
     """A reading and what is to be said of it.
 
-    findings are those of today's settings without the hazards, kept the names of those that were asked about on site
-    and kept. grade is that of the check after it, empty without one. severity is 0 where nothing wants a look.
+    findings are those of today's settings without the hazards, of_itself those that do not come from the section it is
+    a point of; kept are the names of those that were asked about on site and kept. air_temp_c is what its visit says.
+    severity is 0 where nothing wants a look.
     """
 
     reading: FinalReading
     author_id: str
     author: str
     around: Surroundings
+    of_itself: tuple[Finding, ...]
+    air_temp_c: float | None
     findings: tuple[Finding, ...]
     kept: tuple[str, ...]
     bracket: Bracket
@@ -89,13 +92,15 @@ class Judgement:
         return [one for one in self.occasions if one.station_code == code]
 
 
-def judge(survey, plan_version, settings, readings, checks, visits):
+def judge(survey, plan_version, settings, readings, checks, visits, before=None):
     """Return the Judgement of a survey.
 
     readings, checks and visits are all rows of the survey with what hangs on them; readings in time order; settings
-    are calc's.
+    are calc's. before is an earlier Judgement by the same plan, settings and facts of the survey: what it found holds
+    wherever nothing that it rests on has changed.
     """
-    finals = [final(one) for one in readings]
+    known = before.by_id if before else {}
+    finals = [_same_or_new(known.get(one.id), final(one)) for one in readings]
     authors = {one.id: one.author_id for one in readings}
     balance = mixed_conductance(survey, plan_version)
     occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings, balance)
@@ -104,27 +109,48 @@ def judge(survey, plan_version, settings, readings, checks, visits):
     brackets, around = Brackets(judged, settings), Neighbourhood(survey, plan_version, finals)
     full = saturations_of(finals)
     by_id = {
-        one.id: _judged(survey, settings, one, now, around, brackets, occasion_of[one.id], float(saturation))
+        one.id: _judged(
+            (survey, settings), one, now, around, brackets, occasion_of[one.id], float(saturation), known.get(one.id)
+        )
         for one, now, saturation in zip(readings, finals, full, strict=True)
     }
     return Judgement(by_id, occasions, judged)
 
 
-def _judged(survey, settings, reading, now, neighbourhood, brackets, occasion, saturation_mg_l):
+def _same_or_new(old, now):
+    """Return the reading as it was judged before where nothing in it has changed: then it is the same to look at."""
+    return old.reading if old is not None and old.reading == now else now
+
+
+def _judged(by, reading, now, neighbourhood, brackets, occasion, saturation_mg_l, old):
+    survey, settings = by
     around = neighbourhood.around(now.station_code, now.taken_at, now.id, now.replicate)
     bracket, before, after = brackets.of(now.meter, now.taken_at)
-    findings = findings_on_stored(
-        survey,
-        settings,
-        now,
-        around,
-        reading.received_at,
-        source=reading.pressure_source,
-        bracket=bracket,
-        air_temp_c=occasion.visit.facts.get("air_temp_c") if occasion.visit else None,
-        saturation_mg_l=saturation_mg_l,
-    )
-    findings += (*not_mixed(occasion.section), *stratified(occasion.layers))
+    air_temp_c = occasion.visit.facts.get("air_temp_c") if occasion.visit else None
+    if (
+        old is not None
+        and old.reading is now
+        and (old.around, old.bracket, old.air_temp_c)
+        == (
+            around,
+            bracket,
+            air_temp_c,
+        )
+    ):
+        of_itself = old.of_itself
+    else:
+        of_itself = findings_on_stored(
+            survey,
+            settings,
+            now,
+            around,
+            reading.received_at,
+            source=reading.pressure_source,
+            bracket=bracket,
+            air_temp_c=air_temp_c,
+            saturation_mg_l=saturation_mg_l,
+        )
+    findings = (*of_itself, *not_mixed(occasion.section), *stratified(occasion.layers))
     findings = tuple(one for one in findings if not one.hazard)
     reasons = reasons_of(reading, now, [one.name for one in findings], settings.oxygen_low_mg_l)
     return Judged(
@@ -132,6 +158,8 @@ def _judged(survey, settings, reading, now, neighbourhood, brackets, occasion, s
         author_id=reading.author_id,
         author=reading.author.name,
         around=around,
+        of_itself=of_itself,
+        air_temp_c=air_temp_c,
         findings=findings,
         kept=tuple(str(one.get("name")) for one in reading.kept_findings),
         bracket=bracket,
@@ -160,8 +188,9 @@ def judgement_of(db, survey):
             return found
     # What is kept needs rows of its own: those of a session that rolls back are emptied, and filled by no other.
     with Session(db.connection(), join_transaction_mode="rollback_only") as aside:
-        rows = (queries.readings_of(aside, survey.id), checks_of(aside, survey.id), visits_of(aside, survey.id))
-        found = judge(survey, current_plan(aside, survey.id), thresholds(settings), *rows)
+        rows = (queries.plain_readings_of(aside, survey.id), checks_of(aside, survey.id), visits_of(aside, survey.id))
+        before = found if held is not None and held[1:] == mark[1:] else None
+        found = judge(survey, current_plan(aside, survey.id), thresholds(settings), *rows, before=before)
     with _keeping:
         _kept[survey.id] = (mark, found)
         _kept.move_to_end(survey.id)
