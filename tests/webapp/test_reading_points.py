@@ -6,6 +6,7 @@ import pytest
 
 from calc.settings import Settings
 from tests.webapp.plans import PLAN, put_plan
+from webapp.models import Visit, VisitEntry
 from webapp.plan.prediction import prediction_of
 from webapp.readings.day import Day
 from webapp.readings.judging import judgement_of
@@ -167,3 +168,22 @@ def test_replicate_is_due_from_the_first_reading_of_a_day_until_there_is_one(db,
     for number in range(10):
         last = read("D3", 100 + number)
     assert "1 so far in 11 readings" in Day(db, survey).replicate_due(last)
+
+
+def test_deep_water_is_read_as_a_profile_from_a_boat_and_where_it_is_layered(db, survey, people, read, section):
+    section("D2", 0)
+    bridge = read("D3", 60, depth_m=3.0)
+    assert [one.sensor_depth_m for one in still(db, survey, bridge)[1]] == [0.6, 2.4]
+    read("D3", 63, 7.0, depth_m=3.0, sensor_depth_m=0.6)
+    layered = read("D3", 66, 5.0, depth_m=3.0, sensor_depth_m=2.4)
+    profile = [0.3, 1.3, 2.3]
+    assert [one.sensor_depth_m for one in still(db, survey, layered)[1]] == profile[:2]
+    boat = read("D3", 400, depth_m=3.0)
+    visit = Visit(survey_id=survey.id, station_id=boat.station_id, opened_by_id=people["crew"].id)
+    facts = {"arrived_at": boat.taken_at.isoformat(), "platform": "boat"}
+    visit.entries = [VisitEntry(author_id=people["crew"].id, made_at=boat.taken_at, facts=facts)]
+    db.add(visit)
+    db.commit()
+    assert [one.sensor_depth_m for one in still(db, survey, boat)[1]] == [*profile, 2.5]
+    occasions = judgement_of(db, survey).of_station("D3")
+    assert before_reading(None, None, occasions, Settings(), "D3", boat.taken_at).depths_m == (*profile, 2.5)

@@ -12,7 +12,7 @@ from webapp.readings.expected import mixed_conductance, prediction_or_reasons
 from webapp.readings.judging import judgement_of
 from webapp.readings.layers import final, placed
 from webapp.readings.occasions import occasions_of
-from webapp.readings.points import before_reading, points_left, section_reason
+from webapp.readings.points import BOAT, before_reading, points_left, section_reason
 from webapp.readings.queries import readings_of
 from webapp.readings.repeats import due_of, local_day
 from webapp.readings.section_words import spreads
@@ -83,7 +83,7 @@ class Day:
     def still_to_read(self, reading):
         """Return (why left, centre and right are wanted at the station, the Points left there) after a reading.
 
-        Told by the clock alone, without the visits: it is for the crew that stands there now.
+        Occasions are told by the clock alone, without the visits: it is for the crew that stands there now.
         """
         now = final(reading)
         in_order = sorted(self.readings, key=lambda one: one.taken_at)
@@ -92,7 +92,9 @@ class Day:
         here = next(one for one in occasions if any(each.id == now.id for each in one.readings))
         prediction, _ = prediction_or_reasons(self.survey, self.plan)
         why = section_reason(self.plan, prediction, occasions, now.station_code)
-        return why, points_left(now, here, bool(why), self.settings)
+        deep = now.depth_m is not None and now.depth_m > self.settings.profile_depth_m
+        boat = deep and self._platform(now) == BOAT
+        return why, points_left(now, here, bool(why), self.settings, boat)
 
     def replicate_due(self, reading):
         """Return a sentence where the crew of a stored reading owes a replicate that day; empty where not."""

@@ -8,11 +8,13 @@ from calc.quality_visit import wading
 from webapp.readings.occasions import vertical_of
 from webapp.readings.surroundings import NEIGHBOURLY
 
+BOAT = "boat"
 ACROSS = ("left", "centre", "right")
 # A section at the first stations below whatever joins the river, and again at every so many once it is mixed.
 FIRST_BELOW = 2
 EVERY = 5
-_NEAR_M, _NEAR_SHARE = 0.1, 0.1
+# How far from a wanted depth a sensor may hang: a tenth of the depth of the water, within these. [m]
+_NEAR_M, _FAR_M, _NEAR_SHARE = 0.1, 0.2, 0.1
 
 
 @dataclass(frozen=True)
@@ -60,14 +62,15 @@ def section_reason(plan_version, prediction, occasions, code):
     return f"Every {EVERY}th station is checked across." if (place - mixed[0]) % EVERY == 0 else ""
 
 
-def points_left(reading, occasion, across, settings):
+def points_left(reading, occasion, across, settings, boat=False):
     """Return the Points still to read on the occasion of a reading, those of its own vertical first.
 
-    across says whether left, centre and right are wanted. A vertical that nobody told counts as the only one.
+    across says whether left, centre and right are wanted. A vertical that nobody told counts as the only one. From a
+    boat, and where top and bottom differ, deep water is read as a profile.
     """
     used = [one for one in occasion.readings if not one.set_aside]
     own = [one for one in used if vertical_of(one) == vertical_of(reading)]
-    wanted = depths_wanted(reading.depth_m, settings)
+    wanted = depths_wanted(reading.depth_m, settings, still=boat or bool(occasion.layers.stratified))
     deep = wanted if len(wanted) > 1 else ()
     left = [
         Point(reading.position, reading.distance_left_m, depth)
@@ -91,7 +94,9 @@ def before_reading(plan_version, prediction, occasions, settings, code, now):
     if not hazards and expected is not None:
         planned = wading(expected.depth_m, _planned_velocity(prediction, row["distance_km"]), settings)
         hazards = [one for one in planned if one.name == "do_not_wade"]
-    return Before(depth, read is not None, depths_wanted(depth, settings), tuple(hazards))
+    visits = [one.visit for one in occasions if one.visit is not None]
+    boat = bool(visits) and visits[-1].facts.get("platform") == BOAT
+    return Before(depth, read is not None, depths_wanted(depth, settings, still=boat), tuple(hazards))
 
 
 def _waded(recent, occasions):
@@ -133,4 +138,4 @@ def _shown_mixed(occasions, code):
 def _at_depth(reading, wanted_m, depth_m):
     if reading.sensor_depth_m is None:
         return False
-    return abs(reading.sensor_depth_m - wanted_m) <= max(_NEAR_M, _NEAR_SHARE * depth_m)
+    return abs(reading.sensor_depth_m - wanted_m) <= min(max(_NEAR_M, _NEAR_SHARE * depth_m), _FAR_M)
