@@ -184,6 +184,6 @@ def test_deep_water_is_read_as_a_profile_from_a_boat_and_where_it_is_layered(db,
     visit.entries = [VisitEntry(author_id=people["crew"].id, made_at=boat.taken_at, facts=facts)]
     db.add(visit)
     db.commit()
-    assert [one.sensor_depth_m for one in still(db, survey, boat)[1]] == [*profile, 2.5]
+    assert [one.sensor_depth_m for one in still(db, survey, boat)[1]] == profile
     occasions = judgement_of(db, survey).of_station("D3")
-    assert before_reading(None, None, occasions, Settings(), "D3", boat.taken_at).depths_m == (*profile, 2.5)
+    assert before_reading(None, None, occasions, Settings(), "D3", boat.taken_at).depths_m == tuple(profile)
