@@ -116,14 +116,10 @@ def test_every_way_to_write_is_refused_until_the_survey_is_opened_again(db, surv
     assert writes(db, survey, people, ids)["check"]().meter.name == "Meter A"
 
 
-def test_who_is_on_an_approved_survey_may_change(db, survey, people, ids):
-    surveys.remove_member(db, survey.id, people["crew"].id, people["office"].id)
-    surveys.add_member(db, survey.id, people["crew"].id, people["office"].id)
-    assert {"person removed", "person added"} <= {line["what"] for line in rows(db, survey)["history"]}
-
-
 def test_a_survey_file_that_adds_to_an_approved_survey_is_refused(db, survey, people, ids):
     office = people["office"].id
+    surveys.remove_member(db, survey.id, people["crew"].id, office)  # who is on it may change
+    surveys.add_member(db, survey.id, people["crew"].id, office)
     exported = surveyfile.read(surveyfile.export(db, survey))
     assert surveyfile.import_file(db, exported, office).total == 0  # the same is no change
     event = {"id": new_id(), "check_id": CHECK, "kind": "set_aside", "reason": "wet", "made_by_id": office}
@@ -148,27 +144,19 @@ def test_a_reading_that_waits_on_a_phone_stays_there_with_the_reason(db, survey,
         assert answer.status_code == 409
         assert "X-Stored-Id" not in answer.headers
         assert LOCKED in answer.text
+    record = {"id": PHONE, "survey": survey.id, "code": "D3", "author": people["crew"].id, "state": "waiting"}
+    copy = {"bankside": "waiting readings", "v": 1, "records": [{**record, "fields": form(people, PHONE)}]}
+    file = {"file": (io.BytesIO(json.dumps(copy).encode()), "copy.json")}
+    assert LOCKED in crew.post("/phone/copy", file, content_type="multipart/form-data").text
     assert PHONE not in [row["id"] for row in rows(db, survey)["reading"]]
-
-
-def test_a_reading_stored_before_the_approval_is_let_go_of(db, survey, people, ids, browser_as):
-    crew, address = browser_as("crew"), f"/surveys/{survey.id}/stations/D3/reading"
     event = db.query(SurveyEvent).one()
     event.kind = "reopened"
     db.commit()
     assert crew.post(address, form(people, PHONE)).headers["X-Stored-Id"] == PHONE
     event.kind = "approved"
     db.commit()
-    assert crew.post(address, form(people, PHONE)).headers["X-Stored-Id"] == PHONE  # the first answer was lost
-
-
-def test_a_phone_s_file_stores_nothing_of_an_approved_survey(db, survey, people, ids, browser_as):
-    record = {"id": PHONE, "survey": survey.id, "code": "D3", "author": people["crew"].id, "state": "waiting"}
-    copy = {"bankside": "waiting readings", "v": 1, "records": [{**record, "fields": form(people, PHONE)}]}
-    file = {"file": (io.BytesIO(json.dumps(copy).encode()), "copy.json")}
-    answer = browser_as("crew").post("/phone/copy", file, content_type="multipart/form-data")
-    assert LOCKED in answer.text
-    assert PHONE not in [row["id"] for row in rows(db, survey)["reading"]]
+    # One that was stored before, whose answer was lost, is let go of.
+    assert crew.post(address, form(people, PHONE)).headers["X-Stored-Id"] == PHONE
 
 
 def test_pages_say_why_nothing_was_changed(db, survey, people, ids, browser_as):

@@ -128,11 +128,15 @@ def test_a_field_that_cannot_be_is_told(field, text, says):
     assert len(errors) == 1
 
 
-def test_another_persons_bottle_waits_for_them(planned, people, browser_as):
-    form = typed(author_id=people["lead"].id)
-    answer = browser_as("crew").post(f"/surveys/{planned.id}/stations/D3/bottle", form, htmx=True)
+def test_another_persons_bottle_waits_for_them_and_another_surveys_is_not_found(planned, people, browser_as):
+    crew, form = browser_as("crew"), typed(author_id=people["lead"].id)
+    answer = crew.post(f"/surveys/{planned.id}/stations/D3/bottle", form, htmx=True)
     assert (answer.status_code, answer.headers["X-Belongs-To"]) == (409, "another")
     assert "X-Stored-Id" not in answer.headers
+    for where in ("bottles", "bottles/x", "stations/D3/bottle", "bottles/hand-over"):
+        assert crew.get(f"/surveys/nowhere/{where}").status_code == 404
+    for where in ("bottles/x", "stations/X9/bottle"):
+        assert crew.get(f"/surveys/{planned.id}/{where}").status_code == 404
 
 
 def test_what_is_odd_is_asked_about_once_and_kept(db, survey, people, browser_as):
@@ -165,7 +169,7 @@ def test_a_reading_at_the_point_within_ten_minutes_asks_nothing(db, survey, peop
     assert asks(0, replicate_of="B9") == ["replicate_unknown"]
 
 
-def test_what_waited_on_a_phone_is_not_asked_about(db, survey, people):
+def test_what_waited_on_a_phone_is_not_asked_about():
     new = filled(on_ice_at=FILLED + HOUR)
     assert asking.asks(Settings(), new, [], [], NOW, saved_at=FILLED) == []
 
@@ -298,14 +302,9 @@ def test_a_bad_cell_of_a_laboratorys_table_is_named_and_nothing_stored(db, plann
         (2, "Started"), (2, "Result"), (3, "Bottle"), (4, "Result"), (5, "Started"),
     ]  # fmt: skip
     assert not seen.good
-
-
-def test_the_empty_table_names_every_bottle_and_reads_back(db, planned, people):
-    bottles = [put(db, planned, people, filled(code)) for code in ("=B1", "B2")]
-    text = importing.empty_sheet(Show.of(planned), bottles)
-    seen = importing.preview(db, planned, text, NOW)
-    assert {cell.column_label for cell in seen.errors} == {"Result"}
-    assert [row["code"] for row in seen.file.rows] == ["=B1", "B2"]
+    bottles = [*queries.bottles_of(db, planned.id), put(db, planned, people, filled("=B2"))]
+    seen = importing.preview(db, planned, importing.empty_sheet(Show.of(planned), bottles), NOW)
+    assert [row["code"] for row in seen.file.rows] == ["B1", "=B2"]  # the table to fill in reads back
 
 
 def test_an_approved_survey_takes_no_bottle_hand_over_or_result(db, planned, people, browser_as):
@@ -327,11 +326,3 @@ def test_an_approved_survey_takes_no_bottle_hand_over_or_result(db, planned, peo
     assert answer.status_code == 409
     assert "This survey is approved" in answer.text
     assert "X-Stored-Id" not in answer.headers
-
-
-def test_bottles_of_others_are_not_found(planned, people, browser_as):
-    crew = browser_as("crew")
-    for where in ("bottles", "bottles/x", "stations/D3/bottle", "stations/X9/bottle", "bottles/hand-over"):
-        assert crew.get(f"/surveys/nowhere/{where}").status_code == 404
-    assert crew.get(f"/surveys/{planned.id}/stations/X9/bottle").status_code == 404
-    assert crew.get(f"/surveys/{planned.id}/bottles/x").status_code == 404
