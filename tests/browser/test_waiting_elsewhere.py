@@ -1,5 +1,9 @@
 """Waiting readings where browsers give less, plain HTTP on a hotspot's name, and after the whole browser was lost."""
 
+import os
+import signal
+from pathlib import Path
+
 import pytest
 from playwright.sync_api import expect
 
@@ -68,10 +72,26 @@ def test_plain_http_on_a_hotspots_name_keeps_queues_and_sends(opened, server, st
     assert [one[1:] for one in stored("hotspot")] == [(7.1, "crew"), (7.2, "crew")]
 
 
-def test_closed_browser_gives_back_what_was_half_typed_and_what_waits(opened, server, stored):  # noqa: F811
+def kill_browser(profile):
+    """Kill the browser of a profile at once, as a phone that runs out of battery does; it is a process of this test."""
+    for process in Path("/proc").glob("[0-9]*"):
+        try:
+            command = (process / "cmdline").read_bytes().decode(errors="replace")
+        except OSError:  # it ended meanwhile
+            continue
+        if f"--user-data-dir={profile}" in command and "--type=" not in command:
+            os.kill(int(process.name), signal.SIGKILL)
+
+
+def test_browser_killed_during_entry_and_opened_again_offline_lost_nothing_that_was_typed(
+    opened, server, stored, tmp_path  # noqa: F811
+):  # fmt: skip
     context, page = opened(server.address)
     sign_in(page, server.address, "crew")
     survey = page.survey = survey_address(page)
+    page.goto(survey + "/sheet")
+    page.get_by_role("button", name="Make ready for the river").tap()
+    expect(page.get_by_text("Ready for the river: plan version 1")).to_be_visible(timeout=60000)
     fill(page, "7,3", "lost browser")
     server.kill()
     save(page)
@@ -79,12 +99,22 @@ def test_closed_browser_gives_back_what_was_half_typed_and_what_waits(opened, se
     page.get_by_role("button", name="Another reading here").tap()
     page.get_by_label("Oxygen").fill("6,9")
     page.wait_for_timeout(150)
-    context.close()
-    server.start()
+    with context.expect_event("close"):
+        kill_browser(tmp_path / "profile")
     _, page = opened(server.address)
     page.goto(f"{survey}/stations/D8/reading")
+    expect(page.get_by_text("No answer from the server")).to_be_visible()
     expect(page.get_by_text("What you typed at")).to_be_visible()
     assert page.get_by_label("Oxygen").input_value() == "6,9"
+    expect(page.locator(LINE)).to_contain_text("1 reading waits on this phone")
+    server.start()
+    # A browser writes its cookies to the disk now and then: a killed one may have lost the newest.
+    signed_out = page.get_by_text("You are signed out.")
+    expect(signed_out.or_(page.locator(LINE, has_text="Nothing waits on this phone"))).to_be_visible(timeout=60000)
+    if signed_out.is_visible():
+        page.get_by_label("Sign-in name").fill("crew")
+        page.get_by_label("Password").fill("river-crew-demo")
+        page.get_by_role("button", name="Sign in here").tap()
     expect(page.locator(LINE)).to_contain_text("Nothing waits on this phone", timeout=60000)
     assert kept(page) == [["sent", "7,3"]]
     assert [one[1:] for one in stored("lost browser")] == [(7.3, "crew")]

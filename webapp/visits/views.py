@@ -39,32 +39,36 @@ def new(survey_id, code):
     survey = get_survey(db, survey_id, current_user.id)
     get_station(db, survey_id, code)
     show = Show.of(survey)
-    going_on = _going_on(db, survey, code, now)
+    own = _own(db, survey)
+    going_on = _going_on(db, survey, code, own, now)
     if going_on is None:
-        form = forms.fresh_form(show, now, _crew_before(db, survey))
+        form = forms.fresh_form(show, now, _crew_before(own))
         return _form_page(survey, show, code, form, fresh=True)
     visit, final = going_on
     form = forms.form_of(show, final, visit.entries, now, leaving="leaving" in request.args)
     return _form_page(survey, show, code, form, fresh=True, final=final)
 
 
-def _going_on(db, survey, code, now):
+def _own(db, survey):
+    """Return (visit, its final state) of this person's visits to any station."""
+    own = [one for one in queries.visits_of(db, survey.id) if one.opened_by_id == current_user.id]
+    return [(one, final_visit(one)) for one in own]
+
+
+def _going_on(db, survey, code, own, now):
     """Return (visit, its final state) that the form goes on with: the one asked for, else this person's own."""
     if "another" in request.args:
         return None
     if wanted := request.args.get("visit"):
         visit = queries.get_visit(db, survey.id, wanted)
         return (visit, final_visit(visit)) if visit.station.code == code else None
-    own = [one for one in queries.visits_of(db, survey.id) if one.opened_by_id == current_user.id]
-    here = [(one, final_visit(one)) for one in own if one.station.code == code]
-    recent = [pair for pair in here if forms.is_recent(pair[1], now)]
+    recent = [pair for pair in own if pair[1].station_code == code and forms.is_recent(pair[1], now)]
     return max(recent, key=lambda pair: pair[1].arrived_at, default=None)
 
 
-def _crew_before(db, survey):
+def _crew_before(own):
     """Return who was there at this person's last visit: usually the same people as now."""
-    own = [one for one in queries.visits_of(db, survey.id) if one.opened_by_id == current_user.id]
-    finals = sorted((one for one in map(final_visit, own) if one.arrived_at), key=lambda one: one.arrived_at)
+    finals = sorted((final for _, final in own if final.arrived_at), key=lambda one: one.arrived_at)
     return (finals[-1].facts.get("crew") if finals else "") or current_user.name
 
 
