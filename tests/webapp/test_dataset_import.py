@@ -7,6 +7,8 @@ import zipfile
 from types import SimpleNamespace
 
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from tests.conftest import PASSWORD, ROLES, SURVEY_FORM
 from tests.needs import postgres_server
@@ -55,6 +57,13 @@ def strange(tmp_path):
         with database.writing() as db:
             office = people_service.add_person(db, STRANGER).id
         yield database, office
+
+
+@pytest.fixture(scope="module")
+def strange_tables():
+    """The tables that an import reads."""
+    own = [one.table for name, one in kept().items() if name != "survey_member"]
+    return [*own, "settings", "plan_rows", "reading_values"]
 
 
 def imported(database, content, by_id):
@@ -198,6 +207,29 @@ def test_a_bad_cell_is_named_by_file_row_and_column(source, table, column, value
     cell = refusal.value.cells[0]
     assert (cell.file, cell.row, cell.column, cell.typed) == (f"{table}.csv", 2, column, value[:60])
     assert message in cell.message
+
+
+STRANGE = [
+    "", "'", "-1", "0", "1e400", "nan", "9" * 400, "[]", "{}", '{"a": 1}', '[{"name": 1}]', "[" * 3000, "true", "D3",
+    "a/b", "0001-01-01T00:00:00+23:59", "2026-08-12T06:00:00Z", "\ud7ff", "x" * 5000, "..", "1.5", "draft",
+]  # fmt: skip
+
+
+@settings(max_examples=25, deadline=None, suppress_health_check=[HealthCheck.too_slow])
+@given(place=st.tuples(*[st.integers(0, 10**6)] * 3), value=st.one_of(st.sampled_from(STRANGE), st.text(max_size=20)))
+def test_whatever_a_cell_says_it_is_read_or_refused(source, strange_tables, place, value):
+    table = strange_tables[place[0] % len(strange_tables)]
+
+    def change(rows):
+        row = rows[1 + place[1] % (len(rows) - 1)]
+        row[place[2] % len(row)] = value
+
+    try:
+        found = looked(source.database, with_rows(source.content, table, change), source.people["office"].id)
+    except (BadSurveyFile, NotAllowed) as refusal:
+        assert 0 < len(str(refusal)) < 400
+    else:
+        assert found.outcome.name
 
 
 def test_all_bad_cells_are_named_at_once(source):
