@@ -1,9 +1,9 @@
 """What a check on a reading answers with, and the few helpers the checks share."""
 
 import dataclasses
-import math
 from collections.abc import Mapping
 from dataclasses import dataclass
+from math import isfinite, nan
 
 from calc.errors import OutOfRangeError
 
@@ -46,7 +46,7 @@ class Finding:
 def known(*values):
     """Return the values as floats, NaN for those missing (None, NaN) or infinite. No comparison with NaN holds."""
     # A list first: this runs a hundred times for each reading of a survey, and a generator would take twice as long.
-    return tuple([math.nan if value is None or not math.isfinite(value) else float(value) for value in values])
+    return tuple([nan if value is None or not isfinite(value) else float(value) for value in values])
 
 
 def exceeds(value, limit):
@@ -69,7 +69,7 @@ def or_nan(function, *values):
     try:
         return float(function(*values))
     except OutOfRangeError:
-        return math.nan
+        return nan
 
 
 def shown(value, digits):
