@@ -81,6 +81,7 @@ def main():
         client = app.test_client()
         name, password, _ = demo.SIGN_INS[2]
         client.post("/sign-in", data={"sign_in": name, "password": password})
+        decision = timed(_decisions(client, database, survey_id))
         pages = {name: _both_times(client, f"/surveys/{survey_id}/{path}") for name, path in PAGES.items()}
         with database.reading() as db:
             survey = db.scalar(select(Survey).order_by(Survey.created_at.desc()))
@@ -97,6 +98,7 @@ def main():
     for name, (cold, warm) in pages.items():
         print(f"{name} of {READINGS}: {cold:.2f} s (goal {GOAL_TABLE_S:.0f}), {cold / plain:.1f} x plain CSV;", end=" ")
         print(f"{warm:.2f} s while nothing changes")
+    print(f"keeping a reading and showing the next: {decision:.2f} s, {decision / plain:.1f} x plain CSV")
     print(f"full export as a zip: {export:.2f} s (goal {GOAL_EXPORT_S:.0f}), {export / plain:.1f} x plain CSV")
     print(f"the same again: {again:.2f} s; reading its {len(content) / 1e6:.1f} MB back and comparing: {look:.2f} s")
 
@@ -113,6 +115,20 @@ def _both_times(client, address):
         fetched()
 
     return timed(judged_anew), timed(fetched)
+
+
+def _decisions(client, database, survey_id):
+    """Return a deed that keeps the next reading of the list as a reviewer and goes on to the one after it."""
+    with database.reading() as db:
+        ids = iter([one.id for one in readings_of(db, survey_id)][READINGS // 2 :])
+
+    def keep():
+        form = {"based_on": "0", "why_kept": "nothing speaks against it"}
+        address = f"/surveys/{survey_id}/readings/{next(ids)}/keep?list=on"
+        answer = client.post(address, data=form, follow_redirects=True)
+        assert answer.status_code == 200, answer.status
+
+    return keep
 
 
 def _export(database):
