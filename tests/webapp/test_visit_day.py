@@ -1,9 +1,12 @@
 """Visits over a day: several crews, past midnight, over a change of the clocks; what the water and the sun did."""
 
+import json
 import uuid
 from datetime import UTC, datetime, timedelta
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from calc.settings import Settings
 from tests.webapp.plans import put_plan
@@ -181,3 +184,22 @@ def test_position_of_a_station_is_that_of_its_access_point_else_any_that_is_know
     tables = {"stations": [{"code": "D1", "access": "Mill"}, {"code": "D2", "access": None}], "access": access}
     assert [place_of(tables, code) for code in ("D1", "D2", "D9")] == [(3.0, 4.0), (1.0, 2.0), (1.0, 2.0)]
     assert place_of({}, "D1") is None
+
+
+NASTY = ["", "0", "-1", "4,05", "1,234", "nan", "1e999", "9" * 400, "٣٫٥", "\x00", "a\x00b", "[[", '["a"', "null",
+         "2026-10-25T02:30", "0001-01-01T00:00", "9999-12-31T23:59+23:59", "yes", "x" * 3000, "31 30;29/28"]  # fmt: skip
+FIELDS = ["submission_id", "visit_id", "seen", "units", "saved_at", "arrived_at", "left_at", "platform", "weather",
+          "status", "partial_reason", "flow_method", "flow_m3_s", "flow_uncertainty_percent", "float_distance",
+          "float_times", "stage_m", "wading_depth_m", "wading_velocity_m_s", "crew", "note", "reason"]  # fmt: skip
+
+
+@settings(max_examples=150, deadline=None, derandomize=True)
+@given(st.dictionaries(st.sampled_from(FIELDS), st.sampled_from(NASTY) | st.text(max_size=20), max_size=8))
+def test_whatever_is_typed_is_either_taken_or_said_beside_a_field(typed):
+    form = {"submission_id": str(uuid.uuid4()), "arrived_at": "2026-08-12T10:14", **typed}
+    entry, errors = forms.parse_entry(form, VIENNA, "D3", NOW)
+    assert (entry is None) == bool(errors)
+    assert set(errors) <= {*FIELDS}
+    judged_wading(*forms.parse_wading(form, VIENNA), SETTINGS)
+    if entry is not None:
+        json.dumps([entry.facts, entry.entered, entry.seen])

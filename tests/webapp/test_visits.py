@@ -279,3 +279,30 @@ def test_visit_in_feet_is_stored_in_metres(browser_as, db, survey, address):
     browser_as("crew").post(address, FORM | {"units": "us", "width_m": "10", "wading_velocity_m_s": "2"})
     facts = the_visit(db, survey).facts
     assert (facts["width_m"], facts["wading_velocity_m_s"]) == (pytest.approx(3.048), pytest.approx(0.6096))
+
+
+@pytest.mark.parametrize(
+    ("depth", "velocity", "said"),
+    [
+        ("1,2", "0.9", "Do not wade."),
+        ("1", "", "above the project"),
+        ("0.5", "0.5", "no permission"),
+        ("a", "\x00", ""),
+    ],
+)
+def test_wading_is_judged_while_it_is_typed(browser_as, survey, depth, velocity, said):
+    typed = {"wading_depth_m": depth, "wading_velocity_m_s": velocity}
+    answer = browser_as("crew").post(f"/surveys/{survey.id}/wading", typed, htmx=True)
+    assert (answer.status_code, said in answer.text) == (200, True)
+    assert "safe" not in answer.text
+
+
+def test_warning_about_wading_stands_before_everything_else_and_in_feet_where_the_survey_is(
+    browser_as, survey, address
+):
+    crew = browser_as("crew")
+    page = crew.post(address, FORM | {"wading_depth_m": "1.2", "wading_velocity_m_s": "0.9"}, htmx=True).text
+    assert page.index("Do not wade.") < page.index("Saved on the server")
+    us = {"units": "us", "wading_depth_m": "4", "wading_velocity_m_s": "3", "stage_m": "x", "submission_id": FIRST}
+    form = crew.post(address, FORM | us, htmx=True).text
+    assert form.index("Do not wade. Depth 4.0 ft times velocity") < form.index("is 12.0 ft²/s.") < form.index("<form")
