@@ -187,7 +187,8 @@ def test_position_of_a_station_is_that_of_its_access_point_else_any_that_is_know
 
 
 NASTY = ["", "0", "-1", "4,05", "1,234", "nan", "1e999", "9" * 400, "٣٫٥", "\x00", "a\x00b", "[[", '["a"', "null",
-         "2026-10-25T02:30", "0001-01-01T00:00", "9999-12-31T23:59+23:59", "yes", "x" * 3000, "31 30;29/28"]  # fmt: skip
+         "2026-10-25T02:30", "0001-01-01T00:00", "9999-12-31T23:59+23:59", "yes", "x" * 3000,
+         "31 30;29/28"]  # fmt: skip
 FIELDS = ["submission_id", "visit_id", "seen", "units", "saved_at", "arrived_at", "left_at", "platform", "weather",
           "status", "partial_reason", "flow_method", "flow_m3_s", "flow_uncertainty_percent", "float_distance",
           "float_times", "stage_m", "wading_depth_m", "wading_velocity_m_s", "crew", "note", "reason"]  # fmt: skip
