@@ -119,6 +119,13 @@ def test_late_result_is_told_and_one_below_the_limit_is_no_number(folder):
     assert rows_in(folder, "hand_overs")[0]["bottle_codes"] == "D2-1;D2-2"
 
 
+def test_every_reason_that_is_given_is_explained(folder):
+    known = {(row["about"], row["reason"]) for row in rows_in(folder, "reasons")}
+    for about in ("readings", "bottles"):
+        given = {one for row in rows_in(folder, about) for one in row["reasons"].split(";") if one}
+        assert given and {(about, one) for one in given} <= known
+
+
 def test_what_deviates_from_the_plan_is_listed(folder):
     kinds = {row["kind"]: row for row in rows_in(folder, "deviations")}
     assert kinds["not_read"]["station_code"] and kinds["partial_visit"]["says"] == "hail"

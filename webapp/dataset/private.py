@@ -6,7 +6,7 @@ from webapp.plan.tables import ACCESS, ALL_TABLES
 LEFT_OUT = (
     (ACCESS.key, "contact", "Owners' contacts are for the crew only."),
     ("survey", "safety_note", "It holds telephone numbers and names for emergencies."),
-    ("person", "sign_in", "Names stand beside what people did; how they sign in is nobody's business."),
+    ("people", "sign_in", "Names stand beside what people did; how they sign in is nobody's business."),
 )
 _PRIVATE = frozenset(key for _, key, _ in LEFT_OUT) | {
     column.key for table in ALL_TABLES.values() for column in table.columns if column.private

@@ -235,11 +235,15 @@ def corrections_table(events, names):
     )
 
 
-def reasons_table(words):
-    """Return what the reasons of a reading mean."""
+def reasons_table(**words):
+    """Return what the reasons of readings and of bottles mean; words are those of each, by what they are about."""
     fields = (
+        text("about", "About", constraints={"required": True}, choices={name: name for name in words}),
         text("reason", "Reason", constraints={"required": True}),
         text("meaning", "What it means", constraints={"required": True}),
     )
-    rows = [{"reason": key, "meaning": says} for key, says in words.items()]
-    return DataTable("reasons", "Reasons", "What the reasons in the readings mean.", fields, ("reason",), rows)
+    rows = [
+        {"about": about, "reason": key, "meaning": says} for about, some in words.items() for key, says in some.items()
+    ]
+    says = "What the reasons of readings and bottles mean."
+    return DataTable("reasons", "Reasons", says, fields, ("about", "reason"), rows)

@@ -8,6 +8,7 @@ from types import SimpleNamespace
 from webapp.approval.queries import APPROVED, state_of
 from webapp.bottles.judged import judged_bottles
 from webapp.bottles.queries import bottles_of, results_of
+from webapp.bottles.words import REASONS as BOTTLE_REASONS
 from webapp.dataset import evidence, keeping, package, queries, records, tables
 from webapp.dataset.about import about
 from webapp.dataset.equations import equations_table
@@ -125,7 +126,7 @@ def _tables(found):
         keeping.values_table(rows["reading"]),
         corrections_table(rows["reading_event"], names),
         summary_table(lines, zone_says),
-        reasons_table(REASONS),
+        reasons_table(readings=REASONS, bottles=BOTTLE_REASONS),
         *_record_tables(found),
         *_evidence_tables(found),
         tables.prediction_table(plan, _predicted(prediction_of, found.survey, plan)),
