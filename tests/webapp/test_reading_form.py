@@ -323,6 +323,13 @@ def test_meter_that_is_unknown_or_out_of_service_is_asked_about_and_may_be_kept(
     assert [one.meter for one in stored()] == [named.get("meter_other") or named["meter"]]
 
 
+def test_form_does_not_offer_again_a_meter_that_was_taken_out_of_service(crew, address, meters):
+    form = a_form(meter="Meter B")
+    keep = html.unescape(re.search(r'name="keep" value="([^"]+)"', crew.post(address, form).text)[1])
+    crew.post(address, {**form, "keep": keep})
+    assert '<option value="Meter A" selected>' in crew.get(address).text
+
+
 def test_registered_meter_is_known_however_its_name_is_written(crew, address, meters):
     assert crew.post(address, a_form(meter="meter a")).status_code == 303
 

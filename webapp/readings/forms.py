@@ -107,9 +107,10 @@ def meter_choices(meters, form):
 
 
 def _usual_meter(last, meters):
-    """Return the name of the meter that was used last; of the only one in service before the first reading."""
+    """Return the name of the meter that was used last, else of the only one in service."""
     in_service = [one.name for one in meters if not one.out_of_service]
-    if last:
+    withdrawn = {one.name.casefold() for one in meters if one.out_of_service} - {one.casefold() for one in in_service}
+    if last and last.meter and last.meter.casefold() not in withdrawn:
         return last.meter
     return in_service[0] if len(in_service) == 1 else ""
 
