@@ -63,7 +63,7 @@ def test_visit_past_midnight_ends_on_the_next_day_and_is_told_with_it(app, saved
     visit = saved("crew", "D3", arrived_at="2026-08-12T23:40", left_at="2026-08-13T00:20")
     assert visit.left_at - visit.arrived_at == timedelta(minutes=40)
     with app.extensions["bankside_database"].reading() as db:
-        sheet = visits_on_sheet(VIENNA, queries.visits_of(db, survey.id), SETTINGS)
+        sheet = visits_on_sheet(VIENNA, queries.visits_of(db, survey.id), SETTINGS, NOW)
     assert sheet.lines["D3"][1] == "Visit by Cleo Banks, Wed 12 Aug 23:40 to Thu 13 Aug 00:20"
 
 

@@ -83,7 +83,7 @@ def _context(survey):
         "plan_number": plan.number if plan else 0,
         "sheet": service.sheet_of(survey, plan, readings, current_user.name),
         "news": news.news_of(db, survey, show, plan, seen, current_user.name),
-        "visits": visits_on_sheet(show, visits_of(db, survey.id), settings),
+        "visits": visits_on_sheet(show, visits_of(db, survey.id), settings, datetime.now(UTC)),
         "points": service.points_on_sheet(survey, judgement_of(db, survey), settings, current_user.id, now),
         "window": snapshot.window_of(survey, plan, settings, readings),
         "now": now,

@@ -14,18 +14,18 @@ class SheetVisits:
     news: list
 
 
-def visits_on_sheet(show, visits, settings):
+def visits_on_sheet(show, visits, settings, now):
     """Return the SheetVisits of a survey's Visits."""
     finals = sorted((one for one in map(final_visit, visits) if one.arrived_at), key=lambda one: one.arrived_at)
     last = {one.station_code: one for one in finals}
     count = {code: sum(one.station_code == code for one in finals) for code in last}
-    lines = {code: (one, _words(show, one, count[code])) for code, one in last.items()}
+    lines = {code: (one, _words(show, one, count[code], now)) for code, one in last.items()}
     return SheetVisits(lines, news_of_the_day(finals, settings))
 
 
-def _words(show, visit, count):
+def _words(show, visit, count, now):
     """Return a visit in one line: which it is, whose, from when to when, and whether anything is open."""
-    began = show.day_clock(visit.arrived_at)
+    began = show.when(visit.arrived_at, now)
     ended = f" to {show.when(visit.left_at, visit.arrived_at)}" if visit.left_at else ", not left yet"
     words = f"{f'Visit {count}' if count > 1 else 'Visit'} by {visit.opened_by}, {began}{ended}"
     if visit.facts.get("status") == "partial":

@@ -15,7 +15,7 @@ from webapp.people.access import needs
 from webapp.plan.queries import current_plan
 from webapp.readings.asking import thresholds
 from webapp.readings.judging import judgement_of
-from webapp.readings.quality_words import QUALITIES
+from webapp.readings.quality_words import QUALITIES, REASONS
 from webapp.readings.queries import get_station
 from webapp.readings.surroundings import where
 from webapp.surveys.queries import current_settings, get_survey
@@ -182,6 +182,7 @@ def _visit_page(survey, visit_id, status=200, errors=None, form=None):
         account=told,
         judged=judgement.by_id,
         qualities=QUALITIES,
+        reasons=REASONS,
         visit=told.visit,
         errors=errors or {},
         form=form or {},
