@@ -34,11 +34,16 @@ def put_check(db, survey, people, meter, hours, value, kind="end_of_day", **more
 
 
 def put_day(db, survey, people, end=7.80, zero=0.05, by="crew"):
-    """Store the plan, a read-back, four readings 2 h apart and the checks that end the day after 8 h; return the meter.
+    """Store the plan and a day on it as put_drift does; return the meter."""
+    put_plan(db, survey, people["lead"])
+    return put_drift(db, survey, people, end, zero, by)
+
+
+def put_drift(db, survey, people, end=7.80, zero=0.05, by="crew"):
+    """Store a read-back, four readings 2 h apart and the checks that end the day after 8 h; return the meter.
 
     end and zero are what the meter read at the end in air-saturated water and in zero solution; None for no check.
     """
-    put_plan(db, survey, people["lead"])
     meter = put_meter(db, survey)
     put_check(db, survey, people, meter, 0, 8.26, "read_back")
     rows = [

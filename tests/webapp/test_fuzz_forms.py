@@ -11,9 +11,12 @@ from hypothesis import strategies as st
 from werkzeug.exceptions import HTTPException
 
 from tests.conftest import PASSWORD, ROLES
+from tests.webapp.metered import put_drift
 from tests.webapp.sheets import put_readings
 from webapp.people import service as people_service
+from webapp.people.access import SignedIn
 from webapp.people.forms import NewPerson
+from webapp.review import service as review_service
 from webapp.surveys import service as survey_service
 
 WHY = {"reason": "the probe hung in the air", "version_reason": "seen on site"}
@@ -90,7 +93,9 @@ class Forms(HTMLParser):
 @pytest.fixture
 def fuzzed(app, db, survey, people, browser_as):
     """A survey with a plan and readings, its people's browsers, and somebody on it whom the forms may turn out."""
-    put_readings(db, survey, people)
+    ids = put_readings(db, survey, people)
+    put_drift(db, survey, people)
+    review_service.ask(db, survey.id, ids["D5"], "Was it in the current?", 0, SignedIn(people["lead"]))
     guest = people_service.add_person(db, NewPerson("Gwen Shore", "guest.test", "crew", PASSWORD))
     survey_service.add_member(db, survey.id, guest.id, people["office"].id)
     people_service.add_person(db, NewPerson("Otto Weir", "outside.test", "crew", PASSWORD))
