@@ -123,6 +123,7 @@ def _todo(survey_id, status=200, errors=None, conflict="", outcome=None):
         pages=max(1, -(-len(found) // PAGE_SIZE)),
         asked=_asked(),
         form=request.form if errors else {},
+        ticked=set(request.form.getlist("ticked")) if errors else (),
         filled=request.args,
         errors={**(errors or {}), **refused},
         choices=listing.choices_of(judged, show),
