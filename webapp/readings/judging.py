@@ -104,17 +104,14 @@ def judge(survey, plan_version, settings, readings, checks, visits, before=None)
     authors = {one.id: one.author_id for one in readings}
     balance = mixed_conductance(survey, plan_version)
     occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings, balance)
+    checked = judged_checks(checks, settings)
+    judges = _Judges(survey, settings, Neighbourhood(survey, plan_version, finals), Brackets(checked, settings), known)
     occasion_of = {reading.id: one for one in occasions for reading in one.readings}
-    judged = judged_checks(checks, settings)
-    brackets, around = Brackets(judged, settings), Neighbourhood(survey, plan_version, finals)
-    full = saturations_of(finals)
     by_id = {
-        one.id: _judged(
-            (survey, settings), one, now, around, brackets, occasion_of[one.id], float(saturation), known.get(one.id)
-        )
-        for one, now, saturation in zip(readings, finals, full, strict=True)
+        one.id: judges.judged(one, now, occasion_of[one.id], float(saturation))
+        for one, now, saturation in zip(readings, finals, saturations_of(finals), strict=True)
     }
-    return Judgement(by_id, occasions, judged)
+    return Judgement(by_id, occasions, checked)
 
 
 def _same_or_new(old, now):
@@ -122,55 +119,54 @@ def _same_or_new(old, now):
     return old.reading if old is not None and old.reading == now else now
 
 
-def _judged(by, reading, now, neighbourhood, brackets, occasion, saturation_mg_l, old):
-    survey, settings = by
-    around = neighbourhood.around(now.station_code, now.taken_at, now.id, now.replicate)
-    bracket, before, after = brackets.of(now.meter, now.taken_at)
-    air_temp_c = occasion.visit.facts.get("air_temp_c") if occasion.visit else None
-    if (
-        old is not None
-        and old.reading is now
-        and (old.around, old.bracket, old.air_temp_c)
-        == (
-            around,
-            bracket,
-            air_temp_c,
-        )
-    ):
-        of_itself = old.of_itself
-    else:
-        of_itself = findings_on_stored(
-            survey,
-            settings,
-            now,
-            around,
-            reading.received_at,
-            source=reading.pressure_source,
-            bracket=bracket,
+@dataclass(frozen=True)
+class _Judges:
+    """What every reading of a survey is judged by; known holds what was judged before, by id."""
+
+    survey: object
+    settings: object
+    neighbourhood: Neighbourhood
+    brackets: Brackets
+    known: dict
+
+    def judged(self, reading, now, occasion, saturation_mg_l):
+        """Return the Judged of a reading; now is it as it stands."""
+        around = self.neighbourhood.around(now.station_code, now.taken_at, now.id, now.replicate)
+        bracket, before, after = self.brackets.of(now.meter, now.taken_at)
+        air_temp_c = occasion.visit.facts.get("air_temp_c") if occasion.visit else None
+        known = {"bracket": bracket, "air_temp_c": air_temp_c, "saturation_mg_l": saturation_mg_l}
+        of_itself = self._of_itself(reading, now, around, known)
+        findings = (*of_itself, *not_mixed(occasion.section), *stratified(occasion.layers))
+        findings = tuple(one for one in findings if not one.hazard)
+        reasons = reasons_of(reading, now, [one.name for one in findings], self.settings.oxygen_low_mg_l)
+        return Judged(
+            reading=now,
+            author_id=reading.author_id,
+            author=reading.author.name,
+            around=around,
+            of_itself=of_itself,
             air_temp_c=air_temp_c,
-            saturation_mg_l=saturation_mg_l,
+            findings=findings,
+            kept=tuple(str(one.get("name")) for one in reading.kept_findings),
+            bracket=bracket,
+            check_before=before,
+            check_after=after,
+            occasion=occasion,
+            repeats_id=around.repeats.id if around.repeats else "",
+            quality=quality_of(now, reasons),
+            reasons=reasons,
+            severity=severity_of(now, reasons),
         )
-    findings = (*of_itself, *not_mixed(occasion.section), *stratified(occasion.layers))
-    findings = tuple(one for one in findings if not one.hazard)
-    reasons = reasons_of(reading, now, [one.name for one in findings], settings.oxygen_low_mg_l)
-    return Judged(
-        reading=now,
-        author_id=reading.author_id,
-        author=reading.author.name,
-        around=around,
-        of_itself=of_itself,
-        air_temp_c=air_temp_c,
-        findings=findings,
-        kept=tuple(str(one.get("name")) for one in reading.kept_findings),
-        bracket=bracket,
-        check_before=before,
-        check_after=after,
-        occasion=occasion,
-        repeats_id=around.repeats.id if around.repeats else "",
-        quality=quality_of(now, reasons),
-        reasons=reasons,
-        severity=severity_of(now, reasons),
-    )
+
+    def _of_itself(self, reading, now, around, known):
+        """Return the findings on the reading alone: those of before where nothing that they rest on has changed."""
+        old = self.known.get(reading.id)
+        if old is not None and old.reading is now:
+            rests_on = (old.around, old.bracket, old.air_temp_c)
+            if rests_on == (around, known["bracket"], known["air_temp_c"]):
+                return old.of_itself
+        source = reading.pressure_source
+        return findings_on_stored(self.survey, self.settings, now, around, reading.received_at, source=source, **known)
 
 
 _kept = OrderedDict()
