@@ -9,8 +9,9 @@ from tests.webapp import servers
 from tests.webapp.everything import put_everything
 from tests.webapp.test_surveyfile_bad import with_rows
 from webapp.people.queries import find_by_sign_in
-from webapp.surveyfile import service
+from webapp.surveyfile import checks, service
 from webapp.surveyfile.archive import BadSurveyFile
+from webapp.surveyfile.tables import carried
 from webapp.surveys.forms import parse_survey
 from webapp.surveys.service import create_survey
 
@@ -131,3 +132,14 @@ def test_a_station_that_no_plan_ever_had_is_refused(content):
 def test_what_a_newer_bankside_tells_of_a_visit_is_kept(content):
     newer = with_rows(content, "visit_entry", lambda rows: rows[-1].update(facts={"turbidity_ntu": 3.5, "clear": True}))
     assert service.read(newer)["visit_entry"][-1]["facts"] == {"turbidity_ntu": 3.5, "clear": True}
+
+
+def test_every_choice_fits_into_its_column():
+    too_long = [
+        (name, column, key)
+        for name, choices in checks._CHOICES.items()
+        for column, allowed in choices.items()
+        for key in allowed
+        if len(key) > (carried()[name].columns[column].type.length or 100)
+    ]
+    assert too_long == []

@@ -50,7 +50,7 @@ class MeterCheck(Base):
     author_id: Mapped[str] = to("person.id")
     kind: Mapped[str] = mapped_column(String(14))
     parameter: Mapped[str] = mapped_column(String(12), default="do")
-    standard: Mapped[str] = mapped_column(String(20))
+    standard: Mapped[str] = mapped_column(String(30))
     value: Mapped[float] = mapped_column(Float)
     expected: Mapped[float | None] = mapped_column(Float)
     compared: Mapped[float | None] = mapped_column(Float)
