@@ -10,7 +10,7 @@ import pytest
 from tests.webapp.metered import START, judged, put_check, put_day
 from webapp.display import Show
 from webapp.errors import Conflict, NotAllowed
-from webapp.models import History, ReadingEvent
+from webapp.models import History, ReadingEvent, SurveyEvent
 from webapp.people.access import SignedIn
 from webapp.readings.judging import judgement_of
 from webapp.review import bulk, forms, listing, service
@@ -214,3 +214,16 @@ def test_table_shows_and_filters_quality_checks_and_review(browser_as, db, surve
     assert codes("quality=good") == ["D3"] and codes("review=kept") == ["D3"]
     assert codes("checks=not_bracketed") == []
     assert len(codes("checks=bracketed")) == 6 and len(codes("meter=Meter+A")) == 6
+
+
+def test_approved_survey_takes_no_decision_and_each_page_says_why(browser_as, db, survey, people, day):
+    one = by_place(db, survey)["D1"].reading
+    db.add(SurveyEvent(survey_id=survey.id, kind="approved", version="v1", reason="done", made_by_id=people["lead"].id))
+    db.commit()
+    office, base = browser_as("office"), f"/surveys/{survey.id}"
+    kept = office.post(f"{base}/readings/{one.id}/keep", {"based_on": "0", "why_kept": WHY})
+    asked = office.post(f"{base}/readings/{one.id}/ask?list=on", {"based_on": "0", "question": "Which bank?"})
+    bulk_kept = office.post(f"{base}/review", {"ticked": f"{one.id}.0", "why_kept": WHY})
+    for answer in (kept, asked, bulk_kept):
+        assert answer.status_code == 409 and "approved" in plain(answer)
+    assert db.query(ReadingEvent).count() == 0
