@@ -152,6 +152,7 @@ def test_the_pages_take_a_survey_through_its_steps(db, survey, people, read, bro
     assert lead.post(f"{address}/approve", form_of(db, survey)).status_code == 403
     assert "<button>Approve</button>" in office.get(address).text
     assert office.post(f"{address}/approve", form_of(db, survey)).status_code == 303
+    assert "Approved</strong> by Olive Reed" in crew.get(f"/surveys/{survey.id}/readings").text
     page = office.get(address).text
     assert "Download what was approved" in page
     assert "by Olive Reed" in page

@@ -5,6 +5,7 @@ import uuid
 from flask import Blueprint, redirect, render_template, request, url_for
 from flask_login import current_user, login_required
 
+from webapp.approval.queries import state_of
 from webapp.db import get_db, reads_only, write_aside
 from webapp.display import Show
 from webapp.errors import Conflict, NotAllowed
@@ -68,6 +69,7 @@ def table(survey_id):
         to_look_at=listing.to_look_at(judged),
         imported=_counts(request.args, "added", "known"),
         has_plan=plan is not None,
+        state=state_of(db, survey_id),
     )
 
 
