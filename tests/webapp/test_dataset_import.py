@@ -4,16 +4,19 @@ import csv
 import io
 import json
 import zipfile
+from datetime import UTC, datetime
 from types import SimpleNamespace
 
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
+from sqlalchemy import select
 
 from tests.conftest import PASSWORD, ROLES, SURVEY_FORM
 from tests.needs import postgres_server
 from tests.webapp import servers
 from tests.webapp.everything import put_everything
+from webapp import demo
 from webapp.dataset import importing, service
 from webapp.dataset.cells import BadDataset
 from webapp.dataset.kept import NOT_HERE, kept
@@ -371,3 +374,17 @@ def test_read_back_on_postgresql_it_is_the_same_zip(source):
             office = people_service.add_person(db, STRANGER).id
         imported(database, source.content, office)
         assert service.zip_of(exported(database, source.survey.id)) == source.content
+
+
+def test_what_forms_stored_in_the_demos_surveys_comes_back_the_same(strange, tmp_path):
+    database, office = strange
+    with servers.server(f"sqlite:///{tmp_path / 'demo.sqlite3'}") as filled:
+        with filled.writing() as db:
+            demo.load(db, datetime.now(UTC))
+        with filled.reading() as db:
+            ids = list(db.scalars(select(Survey.id)))
+        assert ids
+        for survey_id in ids:
+            dataset = exported(filled, survey_id)
+            imported(database, service.zip_of(dataset), office)
+            assert exported(database, survey_id).files == dataset.files

@@ -1,6 +1,7 @@
 """What the tables of a dataset tell beside the readings, and that pandas and R open it by the lines it shows."""
 
 import csv
+import math
 import shutil
 import subprocess
 
@@ -10,6 +11,7 @@ import pytest
 from tests.needs import missing
 from tests.webapp.everything import unpacked
 from webapp.dataset.fields import as_written
+from webapp.dataset.line import may_be_off_mg_l
 from webapp.dataset.recipes import PANDAS, R
 
 
@@ -80,6 +82,14 @@ def test_how_far_oxygen_may_be_off_is_told_between_two_checks_without_drift(fold
     assert corrected["do_uncertainty_mg_l"] == ""
     assert float(other["do_uncertainty_mg_l"]) == pytest.approx((0.46**2 + (0.2333 / 2) ** 2) ** 0.5, abs=0.005)
     assert at(folder, "D4")[0]["do_uncertainty_mg_l"] == ""
+
+
+@pytest.mark.parametrize(
+    ("errors", "spread", "expected"),
+    [((0.05, -0.1), 0.0, 0.2), ((0.05, -0.3), 0.0, 0.3), ((0.0, 0.0), 0.3, 0.25), ((0.05, math.nan), 0.0, None)],
+)
+def test_no_reading_is_said_to_be_better_than_a_repeat_of_it(errors, spread, expected):
+    assert may_be_off_mg_l(errors, 0.2, spread) == (expected and pytest.approx(expected))
 
 
 def test_replicate_is_named_with_its_difference_and_limit(folder):

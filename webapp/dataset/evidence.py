@@ -112,8 +112,13 @@ def _limit(name, one, two, settings):
         return settings.replicate_c, "Cel"
     if name == "conductance_us_cm":
         return settings.replicate_conductance_percent, "%"
-    low = exceeds(settings.replicate_low_below_mg_l, (one + two) / 2)
-    return (settings.replicate_low_mg_l if low else settings.replicate_mg_l), "mg/L"
+    return repeat_limit_mg_l((one + two) / 2, settings), "mg/L"
+
+
+def repeat_limit_mg_l(do_mg_l, settings):
+    """Return how far a repeat of oxygen may differ. [mg/L]"""
+    low = do_mg_l is not None and exceeds(settings.replicate_low_below_mg_l, do_mg_l)
+    return settings.replicate_low_mg_l if low else settings.replicate_mg_l
 
 
 def _pair_row(key, values, unit, limit, agrees):

@@ -13,7 +13,10 @@ _DECIMALS = 4
 
 @dataclass(frozen=True)
 class Line:
-    """A reading as it is stored, as the dataset keeps it, as it stands, what follows from it and is said of it."""
+    """A reading as it is stored, as the dataset keeps it, as it stands, what follows from it and is said of it.
+
+    limit_mg_l is the reporting limit, repeat_mg_l how far a repeat of such a reading may differ.
+    """
 
     reading: object
     stored: dict
@@ -22,6 +25,7 @@ class Line:
     judged: Judged
     censor: str
     limit_mg_l: float
+    repeat_mg_l: float
     status: str
     reviewer: str
     meter_id: str
@@ -39,18 +43,11 @@ class Line:
 
     @property
     def uncertainty_mg_l(self):
-        """Return how far oxygen may be off, or None where it can't be told.
-
-        It is told between two checks of the meter, for a reading that was not corrected for drift: the larger error of
-        the two, and half the spread of the raw values, as the root of the sum of their squares.
-        """
+        """Return how far oxygen may be off; None without a check on both sides, or where drift was corrected."""
         checks = (self.judged.check_before, self.judged.check_after)
         if self.final.do_mg_l is None or self.final.drift is not None or None in checks:
             return None
-        errors = [abs(one.verdict.error) for one in checks]
-        if not all(math.isfinite(one) for one in errors):
-            return None
-        return math.hypot(max(errors), (self.spread_mg_l or 0) / 2)
+        return may_be_off_mg_l([one.verdict.error for one in checks], self.repeat_mg_l, self.spread_mg_l or 0.0)
 
     @property
     def final_do_mg_l(self):
@@ -58,6 +55,17 @@ class Line:
         if self.censor == "less_than":
             return None
         return self.final.do_mg_l if self.final.drift is None else rounded_off(self.final.do_mg_l)
+
+
+def may_be_off_mg_l(errors, repeat_mg_l, spread_mg_l):
+    """Return how far oxygen may be off, None where an error is not known. [mg/L]
+
+    That is the larger error of the checks around it, or how far a repeat may differ where that is more, and half the
+    spread of the raw values, as the root of the sum of their squares.
+    """
+    if not all(math.isfinite(one) for one in errors):
+        return None
+    return math.hypot(max(repeat_mg_l, *(abs(one) for one in errors)), spread_mg_l / 2)
 
 
 def rounded_off(value):

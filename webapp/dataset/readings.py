@@ -156,8 +156,8 @@ _JUDGED_FIELDS = (
         "do_uncertainty_mg_l",
         "How far oxygen may be off",
         "mg/L",
-        "The larger error of the checks before and after, and half the spread, added in quadrature; empty where one "
-        "check is missing or drift was corrected.",
+        "The largest of the errors of the checks before and after and of how far a repeat may differ, and half the "
+        "spread of the raw values, added in quadrature; empty where a check is missing or drift was corrected.",
     ),
     text("do_censor", "Oxygen is", choices={"none": "a number", "less_than": "below the reporting limit"}),
     number("do_reporting_limit_mg_l", "Reporting limit of oxygen", "mg/L", "do_mg_l_final is empty below it."),

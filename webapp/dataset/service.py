@@ -108,7 +108,7 @@ def _gathered(db, survey):
         settings=settings,
         state=state,
         judgement=judgement,
-        lines=_lines(survey, plan, judgement, rows, names, thresholds(settings).oxygen_low_mg_l, state),
+        lines=_lines(survey, plan, judgement, rows, names, thresholds(settings), state),
         bottles=judged_bottles(bottles_of(db, survey.id), results_of(db, survey.id), thresholds(settings)),
     )
 
@@ -172,8 +172,8 @@ def _predicted(by, survey, plan):
     return None if found is None or hasattr(found, "missing") else found
 
 
-def _lines(survey, plan, judgement, rows, names, limit, state):
-    stations = (plan.tables.get("stations") or []) if plan else []
+def _lines(survey, plan, judgement, rows, names, settings, state):
+    stations, limit = (plan.tables.get("stations") or []) if plan else [], settings.oxygen_low_mg_l
     kept = keeping.kept_rows("reading", rows["reading"], names)
     readings = {row["id"]: SimpleNamespace(**row) for row in rows["reading"]}
     # The first of one name, as two servers may each have registered it.
@@ -190,6 +190,7 @@ def _lines(survey, plan, judgement, rows, names, limit, state):
             judged=judgement.by_id[final.id],
             censor="less_than" if final.do_mg_l is not None and final.do_mg_l < limit else "none",
             limit_mg_l=limit,
+            repeat_mg_l=evidence.repeat_limit_mg_l(final.do_mg_l, settings),
             status=_status(state, final),
             reviewer=names.people.get(final.reviewer_id, ""),
             meter_id=meters.get(final.meter.casefold(), ""),
