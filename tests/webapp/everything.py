@@ -90,7 +90,8 @@ def put_section(db, survey, person, station, plan):
             taken_at=TAKEN + timedelta(hours=3, minutes=place), position=position, do_mg_l=6.2 + place / 3, ph=7.4,
             water_temp_c=20.0 + place, conductance_us_cm=431.0, pressure_mmhg=741.0, pressure_source="barometer",
             series=series, soak_s=95.0, stable=place != 1, unstable_reason="'gusts",
-            distance_left_m=2.5 * min(place, 2), replicate=place == 3, longitude=-0.1, latitude=48.0, note="  two\r\nlines ",
+            distance_left_m=2.5 * min(place, 2), replicate=place == 3, longitude=-0.1, latitude=48.0,
+            note="  two\r\nlines ",
             kept_findings=[{"name": "step_against_neighbour", "says": "=1", "reason": "-"}],
         )
         for place, position in enumerate(("left", "centre", "right", "right"))
