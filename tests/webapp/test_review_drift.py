@@ -193,9 +193,12 @@ def test_page_shows_every_number_before_anything_is_applied(page, db):
     assert db.query(ReadingEvent).count() == 0
 
 
-def test_correction_is_applied_and_taken_back_on_the_page(page, db, survey):
+def test_correction_is_applied_and_taken_back_on_the_page(page, db, survey, browser_as):
     get, post = page
+    address = f"/surveys/{survey.id}/review"
+    assert "Drift of the meters: 1 to decide" in browser_as("office").get(address).text
     assert post("office").status_code == 303
+    assert "to decide" not in browser_as("office").get(address).text
     assert "Applied." in get("office").text
     assert values(db, survey)[-1] == pytest.approx(5.30, abs=0.005)
     assert post("office", "/undo").status_code == 303

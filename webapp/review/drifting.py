@@ -21,6 +21,12 @@ def offers_of(db, survey):
     return drift_pairs(judgement.by_id.values(), judgement.checks, thresholds(current_settings(db, survey.id)))
 
 
+def count_open(db, survey):
+    """Return how many corrections wait for somebody: offered, not complete, not reportable, or no longer right."""
+    pairs, gone = offers_of(db, survey)
+    return sum(pair.state != "applied" for pair in pairs) + len(gone)
+
+
 def apply_drift(db, survey, choice, person):
     """Correct the readings between two checks as the page showed it; return how many are. The same form is one.
 

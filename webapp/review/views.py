@@ -121,6 +121,7 @@ def _todo(survey_id, status=200, errors=None, conflict="", outcome=None):
         total=len(judged),
         looked_at=listing.looked_at(judged),
         together=len(together),
+        drifts=drifting.count_open(db, survey),
         number=filters.page,
         pages=max(1, -(-len(found) // PAGE_SIZE)),
         asked=_asked(),
