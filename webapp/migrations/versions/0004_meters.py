@@ -47,7 +47,7 @@ def _meter_check():
         sa.Column("author_id", sa.String(length=36), nullable=False),
         sa.Column("kind", sa.String(length=14), nullable=False),
         sa.Column("parameter", sa.String(length=12), nullable=False),
-        sa.Column("standard", sa.String(length=20), nullable=False),
+        sa.Column("standard", sa.String(length=30), nullable=False),
         sa.Column("value", sa.Float(), nullable=False),
         sa.Column("expected", sa.Float(), nullable=True),
         sa.Column("compared", sa.Float(), nullable=True),
