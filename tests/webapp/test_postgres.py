@@ -18,15 +18,23 @@ from tests.conftest import PASSWORD, ROLES, SURVEY_FORM, Browser
 from tests.needs import postgres_server
 from tests.webapp.plans import PLAN
 from webapp import create_app
+from webapp.approval import forms as approval
+from webapp.approval import queries as approval_queries
+from webapp.approval import service as approval_service
 from webapp.config import read_config
 from webapp.db import make_engine
 from webapp.display import Show
+from webapp.errors import Conflict
 from webapp.migrate import upgrade
-from webapp.models import Base, PlanVersion, Reading
+from webapp.models import Base, PlanVersion, Reading, Survey
 from webapp.people import service as people_service
+from webapp.people.access import SignedIn
 from webapp.people.forms import NewPerson
 from webapp.people.queries import find_by_sign_in
+from webapp.plan.queries import current_plan
 from webapp.plan.tables import LISTS, PLAN_TABLES
+from webapp.readings.new import NewReading
+from webapp.readings.service import put_reading
 from webapp.tablefile import write_table
 
 
@@ -221,3 +229,34 @@ def test_nul_characters_are_no_trouble_of_ours(at, survey):
     )
     for address, form in sent:
         assert office.post(address, form).status_code < 500, address
+
+
+def test_an_approval_waits_for_a_reading_under_way_and_then_looks_again(apps, at, survey):
+    survey_id, told = survey.split("/")[2], []
+    save(at("crew"), survey, "D3", reading())
+    one, other = (copy.extensions["bankside_database"] for copy in apps)
+    new = NewReading(str(uuid.uuid4()), "D3", datetime(2026, 8, 12, 12, tzinfo=UTC), 5.0, 20.0)
+    with one.writing() as db:
+        step = approval.Asked(str(uuid.uuid4()), approval_queries.mark_of(db, survey_id), "looked through")
+        approval_service.mark_reviewed(db, db.get(Survey, survey_id), step, SignedIn(at.people["lead"]))
+
+    def approve():
+        with other.writing() as db:
+            here = db.get(Survey, survey_id)
+            step = approval.Asked(str(uuid.uuid4()), approval_queries.mark_of(db, survey_id), "for the permit")
+            waiting.set()
+            with pytest.raises(Conflict, match="changed since this page was opened"):
+                approval_service.approve(db, here, step, SignedIn(at.people["office"]))
+            told.append("refused")
+
+    waiting, slow = threading.Event(), threading.Thread(target=approve)
+    with one.writing() as db:
+        plan = current_plan(db, survey_id)
+        put_reading(db, db.get(Survey, survey_id), new, at.people["crew"].id, plan, datetime.now(UTC))
+        slow.start()
+        assert waiting.wait(20)
+        slow.join(0.5)
+        assert told == []
+        db.commit()
+    slow.join(20)
+    assert told == ["refused"]
