@@ -59,6 +59,15 @@ CREW = {
     "visit": sent(
         "stations/D6/visit", "Save visit", "What was saved", stage_m="0.41", float_distance="10", float_times="21"
     ),
+    "meters": at("meters"),
+    "new meter": at("meters/add"),
+    "meter check": at("meters/check"),
+    "meter check refused": sent("meters/check", "Save check", "Nothing was saved", value="low"),
+    "stored meter check": first("meters", r"/meters/checks?/[0-9a-f-]{36}$"),
+    "bottle form": at("stations/D5/bottle"),
+    "bottle refused": sent("stations/D5/bottle", "Save bottle", "Nothing was saved", code=""),
+    "bottles": at("bottles"),
+    "hand-over": at("bottles/hand-over"),
     "sag": at("sag"),
     "readings": at("readings"),
     "reading": first("readings", r"/readings/[0-9a-f-]{36}$"),
@@ -104,6 +113,14 @@ OFFICE = {
         "readings/import", "Check the table", "1 new reading", text=READINGS.format(oxygen="4,2")
     ),
     "dataset": at("dataset"),
+    "dataset import": at("/datasets/import"),
+    "review": at("review"),
+    "drift": at("review/drift"),
+    "evidence": first("review", r"/readings/[0-9a-f-]{36}"),
+    "settings": at("settings"),
+    "settings refused": sent("settings", "Save", "Nothing was saved", stable_mg_l="much"),
+    "approval": at("approval"),
+    "laboratory import": at("bottles/import"),
 }
 PAGES = [(role, name) for role, pages in (("crew", CREW), ("lead", LEAD), ("office", OFFICE)) for name in pages]
 
