@@ -3,12 +3,13 @@
 import dataclasses
 from collections.abc import Mapping
 from dataclasses import dataclass
-from math import isfinite, nan
+from math import inf, isfinite, nan
 
 from calc.errors import OutOfRangeError
 
 # Entries are decimals: 8.3 - 7.3 must count as a step of exactly 1, not of 1.0000000000000009.
 _ROUND_OFF = 1e-9
+_ENDLESS = (inf, -inf)
 
 
 @dataclass(frozen=True)
@@ -45,7 +46,13 @@ class Finding:
 
 def known(*values):
     """Return the values as floats, NaN for those missing (None, NaN) or infinite. No comparison with NaN holds."""
-    # A list first: this runs a hundred times for each reading of a survey, and a generator would take twice as long.
+    # This runs twenty times for each reading of a survey: floats are handed back as they are, and a list is made first,
+    # for a generator would take twice as long.
+    for value in values:
+        if type(value) is not float or value in _ENDLESS:
+            break
+    else:
+        return values
     return tuple([nan if value is None or not isfinite(value) else float(value) for value in values])
 
 

@@ -158,21 +158,40 @@ def reading_findings(reading, context, settings):
     )
     saturation = math.nan if pressure_slips or temperature_slips else _saturation(reading, context)
     return (
-        *(wading(reading.depth_m, reading.velocity_m_s, settings) if reading.platform in ("", "wade") else ()),
+        *_wading(reading, settings),
         *cold_water(reading.water_temp_c, settings),
         *_oxygen(reading, context, saturation, settings),
         *(temperature_slips or _temperature(reading, context, settings)),
         *(pressure_slips or pressure_against_elevation(context.station_pressure_mmhg, context.elevation_m, settings)),
         *_water(reading, context, settings),
-        *parcel_timing(context.hours_late, context.travel_time_h, settings),
-        *snapshot_long(context.snapshot_span_h, settings),
+        *_pace(context, settings),
         *taken_at(context.hours_after_now, context.hours_before_survey, settings),
-        *position_poor(reading.position_radius_m, settings),
+        *(position_poor(reading.position_radius_m, settings) if _given(reading.position_radius_m) else ()),
         *bracket_finding(context.bracket),
     )
 
 
+def _given(value):
+    """Return whether there is a value. A check without one finds nothing: not to begin it saves most of the time."""
+    return value is not None and not math.isnan(value)
+
+
+def _wading(reading, settings):
+    if reading.platform not in ("", "wade") or not _given(reading.depth_m):
+        return ()
+    return wading(reading.depth_m, reading.velocity_m_s, settings)
+
+
+def _pace(context, settings):
+    return (
+        *(parcel_timing(context.hours_late, context.travel_time_h, settings) if _given(context.hours_late) else ()),
+        *(snapshot_long(context.snapshot_span_h, settings) if _given(context.snapshot_span_h) else ()),
+    )
+
+
 def _pressure_slips(reading, context, settings):
+    if not _given(reading.pressure_mmhg) and not _given(reading.pressure_value):
+        return ()
     # A weather value is reduced to sea level, so its unit shows at elevation 0.
     elevation = 0.0 if reading.pressure_source == "weather" else context.elevation_m
     return sea_level_pressure(
@@ -210,10 +229,14 @@ def _oxygen(reading, context, saturation, settings):
     return (
         *(supersaturation(percent, settings) or oxygen_unlikely(do, settings)),
         *_percent_on_meter(reading, do, saturation, settings),
-        *air_signature(percent, reading.water_temp_c, context.air_temp_c, settings),
+        *(
+            air_signature(percent, reading.water_temp_c, context.air_temp_c, settings)
+            if _given(context.air_temp_c)
+            else ()
+        ),
         *frozen_value(do, context.recent_do_mg_l, settings),
         *unstable(reading.stability, settings),
-        *replicate_spread(do, context.replicate_do_mg_l, settings),
+        *(replicate_spread(do, context.replicate_do_mg_l, settings) if _given(context.replicate_do_mg_l) else ()),
         *_oxygen_steps(do, context, settings, reading.position),
     )
 
@@ -221,7 +244,7 @@ def _oxygen(reading, context, saturation, settings):
 def _percent_on_meter(reading, do, saturation, settings):
     """Return the finding on the meter's percentage; saturation at 760 mmHg is only worked out to explain one."""
     percent = reading.do_percent_meter
-    if not percent_against_concentration(do, percent, saturation, math.nan, settings):
+    if not _given(percent) or not percent_against_concentration(do, percent, saturation, math.nan, settings):
         return ()
     (water_temp,) = known(reading.water_temp_c)
     saturation_760 = or_nan(saturation_mg_l, water_temp, 760.0, _salinity(reading))
@@ -234,23 +257,20 @@ def _oxygen_steps(do, context, settings, position):
         ("upstream", context.upstream_do_mg_l, context.upstream_predicted_do_mg_l),
         ("downstream", context.downstream_do_mg_l, context.downstream_predicted_do_mg_l),
     )
-    steps = [
-        step_against_neighbour(
-            do,
-            neighbour,
-            settings,
-            side=side,
-            expected_step_mg_l=_difference(predicted, predicted_there),
-            band_half_mg_l=_difference(high, low) / 2,
-            position=position,
-        )
-        for side, neighbour, predicted_there in neighbours
-    ]
-    return (
-        *steps[0],
-        *steps[1],
-        *step_against_prediction(do, predicted, low, high, settings, position=position),
-    )
+    band_half = _difference(high, low) / 2
+    found = []
+    for side, neighbour, predicted_there in neighbours:
+        if _given(neighbour):
+            found += step_against_neighbour(
+                do,
+                neighbour,
+                settings,
+                side=side,
+                expected_step_mg_l=_difference(predicted, predicted_there),
+                band_half_mg_l=band_half,
+                position=position,
+            )
+    return (*found, *step_against_prediction(do, predicted, low, high, settings, position=position))
 
 
 def _difference(value, other):
@@ -261,24 +281,27 @@ def _difference(value, other):
 def _temperature(reading, context, settings):
     water_temp = reading.water_temp_c
     steps = temperature_step(water_temp, context.upstream_temp_c, context.downstream_temp_c, settings)
+    repeated = context.replicate_temp_c
     return (
         *(temperature_unlikely(water_temp, settings) or steps),
-        *replicate_temperature(water_temp, context.replicate_temp_c, settings),
+        *(replicate_temperature(water_temp, repeated, settings) if _given(repeated) else ()),
     )
 
 
 def _water(reading, context, settings):
     return (
-        *conductance_step(
-            reading.conductance_us_cm,
-            context.upstream_conductance_us_cm,
-            context.downstream_conductance_us_cm,
-            settings,
-        ),
-        *replicate_conductance(reading.conductance_us_cm, context.replicate_conductance_us_cm, settings),
-        *conductance_high(reading.conductance_us_cm, reading.water_temp_c, settings),
-        *depth_unlikely(reading.depth_m, context.planned_depth_m, settings),
-        *sensor_depth(reading.sensor_depth_m, reading.depth_m, settings),
-        *velocity_unlikely(reading.velocity_m_s, settings),
-        *ph_unlikely(reading.ph, settings),
+        *(_conductance(reading, context, settings) if _given(reading.conductance_us_cm) else ()),
+        *(depth_unlikely(reading.depth_m, context.planned_depth_m, settings) if _given(reading.depth_m) else ()),
+        *(sensor_depth(reading.sensor_depth_m, reading.depth_m, settings) if _given(reading.sensor_depth_m) else ()),
+        *(velocity_unlikely(reading.velocity_m_s, settings) if _given(reading.velocity_m_s) else ()),
+        *(ph_unlikely(reading.ph, settings) if _given(reading.ph) else ()),
+    )
+
+
+def _conductance(reading, context, settings):
+    here = reading.conductance_us_cm
+    return (
+        *conductance_step(here, context.upstream_conductance_us_cm, context.downstream_conductance_us_cm, settings),
+        *replicate_conductance(here, context.replicate_conductance_us_cm, settings),
+        *conductance_high(here, reading.water_temp_c, settings),
     )

@@ -24,23 +24,28 @@ def wading(depth_m, velocity_m_s, settings):
     """
     depth, velocity = known(depth_m, velocity_m_s)
     product = depth * abs(velocity)
-    measured = (
-        f"Depth {shown(depth, 2)} m times velocity {shown(abs(velocity), 2)} m/s is {shown(product, 2)} m²/s "
-        f"({shown(product / FOOT_M**2, 1)} ft²/s)."
-    )
     if reaches(product, settings.wading_stop_m2_s):
         limit = settings.wading_stop_m2_s
-        says = f"Do not wade. {measured} The limit is {shown(limit, 2)} ({shown(limit / FOOT_M**2, 0)} ft²/s)."
+        says = f"Do not wade. {_product_of(depth, velocity)} "
+        says += f"The limit is {shown(limit, 2)} ({shown(limit / FOOT_M**2, 0)} ft²/s)."
         do = "Use a bridge, a boat or the bank."
         return (_wading("do_not_wade", "velocity_m_s", says, do),)
     do = "Local rules, your employer's plan and your judgement decide: bed, cold, debris, experience."
     if reaches(product, settings.wading_caution_m2_s):
-        says = f"{measured} The project's wading limit is {settings.wading_caution_m2_s:g} m²/s."
+        says = f"{_product_of(depth, velocity)} The project's wading limit is {settings.wading_caution_m2_s:g} m²/s."
         return (_wading("wading_caution", "velocity_m_s", says, do),)
     if exceeds(depth, settings.wading_depth_m):
         says = f"Depth {shown(depth, 2)} m is above the project's wading limit of {settings.wading_depth_m:g} m."
         return (_wading("wading_caution", "depth_m", says, do),)
     return ()
+
+
+def _product_of(depth, velocity):
+    product = depth * abs(velocity)
+    return (
+        f"Depth {shown(depth, 2)} m times velocity {shown(abs(velocity), 2)} m/s is {shown(product, 2)} m²/s "
+        f"({shown(product / FOOT_M**2, 1)} ft²/s)."
+    )
 
 
 def _wading(name, field, says, do):
