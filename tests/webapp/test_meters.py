@@ -456,6 +456,15 @@ def test_next_step_after_a_check(more, kind, begins):
     assert step.says.startswith(begins)
 
 
+@pytest.mark.parametrize("kind", ["as_found", "read_back"])
+def test_next_step_after_passing_is_the_zero_check_that_is_due(kind):
+    values = asdict(new_check(new_meter(), kind=kind))
+    del values["kept"]
+    (judged,) = judged_checks([MeterCheck(**values, events=[])], SETTINGS)
+    step = next_step(VIENNA, judged, zero_due=True)
+    assert step.kind == "zero" and "A zero check is due: make it now." in step.says
+
+
 def test_meters_of_another_survey_come_without_their_checks_and_once(day, judged, db, survey, people):
     day.check(day.meter("Meter A", serial="17-204"))
     day.meter("Meter B")

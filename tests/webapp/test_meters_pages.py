@@ -234,6 +234,17 @@ def test_check_is_saved_and_says_what_to_do_next(crew, address, a_form, stored):
     assert "kind=adjusted" in page
 
 
+def test_check_made_at_once_after_another_begins_with_its_pressure_and_place(crew, address, a_form, day):
+    form = a_form(pressure="741", place="U1")
+    stored = crew.get(crew.post(f"{address}/check", form).location).text
+    assert "A zero check is due: make it now." in stored and "kind=zero" in stored
+    beside = crew.get(f"{address}/check?meter={form['meter']}&kind=read_back")
+    assert value_of(beside, "pressure") == "741" and 'value="U1"' in beside.text
+    assert value_of(beside, "water_temp_c") == ""
+    elsewhere = crew.get(f"{address}/check?meter={day.meter('Meter B').id}&kind=as_found")
+    assert value_of(elsewhere, "pressure") == "" and 'value="U1"' not in elsewhere.text
+
+
 def test_with_htmx_the_verdict_comes_in_place(crew, address, a_form):
     form = a_form()
     answer = crew.post(f"{address}/check", form, htmx=True)

@@ -1,7 +1,7 @@
 """What is typed about meters and their checks, into values or a message beside each field."""
 
 import uuid
-from datetime import date
+from datetime import date, timedelta
 
 from webapp.forms import Fields
 from webapp.meters.new import NewCheck, NewMeter, Standard, find_meter
@@ -22,6 +22,8 @@ FIELD_OF = {"pressure_value": "pressure", "standard": "expires_on"}
 KNOWN_BY_THEMSELVES = (*MADE_WITH_AIR, "zero_solution")
 # What the form asks for under "More about this check".
 MORE = ("conductance_us_cm", "lot", "expires_on", "place", "action", "note")
+# As found, adjusted and read back follow each other within this.
+AT_ONCE = timedelta(minutes=30)
 
 
 def parse_meter(source, show, name=None):
@@ -190,8 +192,12 @@ def _one_line(text):
 
 
 def fresh_check(show, last, now, meter_id, kind, parameter):
-    """Return the texts of a fresh form: what is proposed, the time, and the pressure's unit and source as last time."""
+    """Return the texts of a fresh form: what is proposed, the time, and the pressure's unit and source as last time.
+
+    A check that follows another of the same meter at once is made beside it: it begins with its place and air pressure.
+    """
     pressure = (last.entered.get("pressure") or {}) if last else {}
+    follows = last is not None and last.meter_id == meter_id and abs(now - last.checked_at) <= AT_ONCE
     return {
         "submission_id": str(uuid.uuid4()),
         "taken_at": show.typed_time(now),
@@ -200,8 +206,9 @@ def fresh_check(show, last, now, meter_id, kind, parameter):
         "kind": kind,
         "parameter": parameter,
         "standard": usual_standard(parameter, kind),
-        "place": last.place if last else "",
+        "place": last.place if follows else "",
         "action": _usual_action(kind),
+        "pressure": pressure.get("text", "") if follows else "",
         "pressure_source": last.pressure_source if last else "standard",
         "pressure_unit": pressure.get("unit") or ("[in_i'Hg]" if show.unit_system == "us" else "mm[Hg]"),
     }

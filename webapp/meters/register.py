@@ -60,6 +60,10 @@ def _states(db, survey, show, meters, judged, settings, now):
     return meter_states(show, meters, judged, readings, settings, now, lowest_expected(db, survey))
 
 
+def _state_of(states, name):
+    return next(one for one in states if one.meter.name.casefold() == name.casefold())
+
+
 def lowest_expected(db, survey):
     """Return the lowest oxygen that the plan expects, None without a prediction. [mg/L]"""
     prediction, _ = prediction_or_reasons(survey, current_plan(db, survey.id))
@@ -79,7 +83,7 @@ def proposed(db, survey, show, now, asked, last=None):
     kind = asked["kind"] if asked["kind"] in KINDS else ""
     if meter is not None and not kind and parameter == "do":
         states = _states(db, survey, show, meters, judged, settings, now)
-        kind = next(one.next_kind for one in states if one.meter.name.casefold() == meter.name.casefold())
+        kind = _state_of(states, meter.name).next_kind
     return meter.id if meter else "", kind or "as_found", parameter
 
 
@@ -103,13 +107,16 @@ def expected_words(survey, show, standard):
     )
 
 
-def check_of(db, survey, show, check):
-    """Return the SeenCheck of a stored check."""
-    (judged,) = judged_checks([check], thresholds(current_settings(db, survey.id)))
+def check_of(db, survey, show, check, now):
+    """Return the SeenCheck of a stored check at an instant."""
+    meters, known, settings = _known(db, survey)
+    judged = next(one for one in known if one.check.id == check.id)
+    states = _states(db, survey, show, meters, known, settings, now)
+    zero_due = any(one.name == "zero_check_due" for one in _state_of(states, check.meter.name).due)
     says = check.judged.get("says") or ""
     return SeenCheck(
         judged=judged,
-        step=next_step(show, judged),
+        step=next_step(show, judged, zero_due),
         then=says if says != judged.verdict.says else "",
         pressure_from=PRESSURE_FROM.get(check.pressure_source, ""),
         with_air=check.standard in MADE_WITH_AIR,

@@ -16,8 +16,8 @@ class Step:
     kind: str = ""
 
 
-def next_step(show, judged):
-    """Return the Step after a JudgedCheck."""
+def next_step(show, judged, zero_due=False):
+    """Return the Step after a JudgedCheck; zero_due is whether its meter lacks a check in zero solution."""
     check, verdict = judged.check, judged.verdict
     if judged.set_aside:
         return Step("This check is set aside: make it again.", check.kind)
@@ -34,7 +34,7 @@ def next_step(show, judged):
     if check.kind == "after_cleaning":
         return Step("What it was off before cleaning and is not now was fouling; the rest is drift of the sensor.")
     if verdict.passes:
-        return Step(_PASSED[check.kind])
+        return _after_passing(check, zero_due)
     says = _FAILED[check.kind].format(to=value_text(show, check.parameter, judged.expected))
     return Step(f"{says} {_STAYS}" if check.kind == "read_back" else says, _NEXT[check.kind])
 
@@ -50,6 +50,12 @@ _FAILED = {
     "field": "Wait a minute and check again. If it stays, adjust it to {to} and read it back.",
 }
 _NEXT = {"as_found": "adjusted", "read_back": "adjusted", "field": "field"}
+
+
+def _after_passing(check, zero_due):
+    if zero_due and check.parameter == "do" and check.kind in ("as_found", "read_back"):
+        return Step(f"{_PASSED[check.kind]} A zero check is due: make it now.", "zero")
+    return Step(_PASSED[check.kind])
 
 
 def _after_zero(verdict):

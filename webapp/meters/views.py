@@ -283,7 +283,7 @@ def _check_page(survey, check, status=200, errors=None, conflict="", done=False)
         survey=survey,
         show=show,
         tab="meters",
-        seen=register.check_of(db, survey, show, check),
+        seen=register.check_of(db, survey, show, check, datetime.now(UTC)),
         may_decide=service.may_decide(current_user, check),
         form={} if done else request.form,
         errors=errors or {},
