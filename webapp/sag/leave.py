@@ -21,7 +21,6 @@ TITLES = {
 _ANCHOR_MG_L = 0.3
 CHECK_YOURSELF = (
     ("unsent", "Nothing waits on any phone: every crew has sent its readings."),
-    ("meters", "Every meter was checked at the end of the day, before it was cleaned or adjusted."),
     ("bottles", "Bottles are counted against the list, on ice, and their custody has begun."),
     ("copy", "A second copy exists: on the server, a second phone, or as a file."),
     ("people", "Everybody is off the water and accounted for, and the call-in is done."),
