@@ -45,10 +45,12 @@ async function keepFirst(event) {
     cannotKeep();
   });
   event.detail.issueRequest(true);
+  it.inert = true; // what would be typed until the answer comes, the answer would take away again
 }
 
 async function answered({ detail: { requestConfig, xhr } }) {
   if (!saving || !requestConfig.elt.matches("form[data-waiting]")) return;
+  requestConfig.elt.inert = false;
   const record = saving;
   saving = undefined;
   if (record.lost) return;

@@ -133,3 +133,17 @@ def test_five_taps_on_save_at_two_seconds_of_latency_are_one_reading(phone, stor
     expect(phone.locator("main")).to_contain_text("Saved on the server", timeout=20000)
     assert len(stored("five taps")) == 1
     assert [state for state, _ in kept(phone)] == ["sent"]
+
+
+def test_nothing_can_be_typed_that_the_answer_would_take_away_again(phone):  # noqa: F811
+    fill(phone, "six", "slow")
+    network = {"offline": False, "latency": 1500, "downloadThroughput": -1, "uploadThroughput": -1}
+    phone.context.new_cdp_session(phone).send("Network.emulateNetworkConditions", network)
+    form = phone.locator("form[data-waiting]")
+    phone.locator("button.save").tap()
+    expect(form).to_have_attribute("inert", "")
+    phone.keyboard.type("7")
+    expect(phone.locator("main")).to_contain_text("Nothing was saved", timeout=20000)
+    expect(form).not_to_have_attribute("inert", "")
+    assert phone.locator("[name=do_mg_l]").input_value() == "six"
+    phone.locator("[name=do_mg_l]").fill("7.1")
