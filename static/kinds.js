@@ -1,5 +1,5 @@
 // What a phone may keep, by kind: what it is called and where it is saved. A record without a kind, of an old page, is a reading.
-import { plural } from "./phone.js";
+import { dayClock, plural } from "./phone.js";
 
 const station = (last) => ({ survey, code }) => `/surveys/${survey}/stations/${encodeURIComponent(code)}/${last}`;
 const KINDS = {
@@ -36,7 +36,7 @@ export function counted(records) {
 }
 
 export function timeOf(record) {
-  return (timeFields.map((name) => record.fields[name]).find(Boolean) ?? "").replace("T", " ");
+  return dayClock(timeFields.map((name) => record.fields[name]).find(Boolean) ?? "");
 }
 
 // What it is and where: "D5" of a reading as ever, "Meter check, Meter A" as its form calls it.
@@ -57,5 +57,5 @@ export function valueOf({ fields, ...record }) {
   }
   if (record.kind === "bottle") return fields.code;
   if (record.kind === "check") return fields.value ? `shows ${fields.value}` : "";
-  return fields.left_at ? `left ${fields.left_at.replace("T", " ")}` : "";
+  return fields.left_at ? `left ${dayClock(fields.left_at)}` : "";
 }

@@ -28,6 +28,17 @@ export function clock(instant) {
   return `${date.toLocaleDateString("en-GB", { day: "numeric", month: "short" })} ${time}`;
 }
 
+// "Tue 1 Dec 15:54" of what a datetime-local field holds, as the server writes it; another text as it is.
+export function dayClock(text) {
+  const date = new Date(`${text}Z`);
+  if (Number.isNaN(date.getTime())) return text;
+  const parts = new Intl.DateTimeFormat("en-US", {
+    timeZone: "UTC", weekday: "short", day: "numeric", month: "short", hour: "2-digit", minute: "2-digit", hourCycle: "h23",
+  }).formatToParts(date);
+  const { weekday, day, month, hour, minute } = Object.fromEntries(parts.map(({ type, value }) => [type, value]));
+  return `${weekday} ${day} ${month} ${hour}:${minute}`;
+}
+
 export function plural(count, one, many) {
   return `${count} ${count === 1 ? one : many}`;
 }

@@ -1,6 +1,6 @@
 // The visit form on this phone: the wading warning as it is typed, leaving, and going on with a visit without signal.
 import { get, records, remove } from "./waiting_store.js";
-import { nowIn, person } from "./phone.js";
+import { dayClock, nowIn, person } from "./phone.js";
 import { draftKey, fill, form, freshen, say } from "./typing.js";
 import { wadingOf } from "./check_kinds.js";
 
@@ -43,7 +43,7 @@ function goOn(it, saved) {
   it.elements.visit_id.value = visitOf(last);
   fill(it, Object.fromEntries(kept));
   it.closest("section").querySelector("h1").textContent = `Your visit at ${last.code}`;
-  say(`It began ${last.fields.arrived_at.replace("T", " ")}; what you add belongs to it. Begin afresh for another visit.`);
+  say(`It began ${dayClock(last.fields.arrived_at)}; what you add belongs to it. Begin afresh for another visit.`);
   warn(it);
 }
 

@@ -135,7 +135,7 @@ def test_codes_are_turned_one_at_a_time_and_a_long_reading_goes_by_file(phone): 
     phone.evaluate(MANY, [phone.survey, ["first", "second", "long " * 300]])
     phone.get_by_role("button", name="Show as codes").tap()
     title, picture = phone.locator("[data-code-title]"), phone.locator("[data-code] svg")
-    expect(title).to_contain_text("1 of 3: reading of Cleo Banks at D7, time 2026-08-12 09:00")
+    expect(title).to_contain_text("1 of 3: reading of Cleo Banks at D7, time Wed 12 Aug 09:00")
     assert wider_than(phone, 320) == []
     assert picture.bounding_box()["width"] > 280
     assert crowded(phone) == []

@@ -129,7 +129,7 @@ def test_going_on_with_a_visit_adds_an_entry_that_says_only_what_changed(browser
     crew = browser_as("crew")
     crew.post(address, FORM)
     page = crew.get(address + f"?visit={FIRST}&leaving=1").text
-    assert "It began 2026-08-12 10:14" in page and hidden(page, "seen") == f'["{FIRST}"]'
+    assert "It began Wed 12 Aug 10:14" in page and hidden(page, "seen") == f'["{FIRST}"]'
     leaving = form_of(crew, survey, FIRST, left_at="2026-08-12T10:41", status="partial", partial_reason="thunder")
     assert crew.post(address, leaving).status_code == 303
     [visit] = visits(db, survey)
