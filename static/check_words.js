@@ -10,12 +10,17 @@ export function hours(minutes) {
   return `${Math.floor(whole / 60)} h ${String(whole % 60).padStart(2, "0")} min`;
 }
 
+// Within this a reading is as predicted, for the server too.
+const NEAR_MG_L = 0.3;
+
 export function sentence({ oxygen, predicted, low, high }) {
   if (predicted === undefined) return "Nothing to compare with on this phone.";
-  const band = `${mg(low, 1)} to ${mg(high, 1)} mg/L`;
-  if (oxygen >= low && oxygen <= high) return `As predicted: the plan has ${band} here.`;
   const apart = Math.abs(oxygen - predicted);
-  return `${mg(apart, 1)} mg/L ${oxygen < predicted ? "below" : "above"} the prediction: the plan has ${band} here.`;
+  const band = `${mg(low, 1)} to ${mg(high, 1)}`;
+  if (apart <= NEAR_MG_L) return `As predicted: the plan has ${mg(predicted, 1)} mg/L (${band}) here.`;
+  const says = `${mg(apart, 1)} mg/L ${oxygen < predicted ? "lower" : "higher"} than predicted`;
+  if (oxygen < low || oxygen > high) return `${says}: the plan has ${band} mg/L here.`;
+  return `${says}. The plan's own doubts allow it: ${band} mg/L.`;
 }
 
 export function facts(check) {

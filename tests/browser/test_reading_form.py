@@ -9,6 +9,7 @@ from playwright.sync_api import expect
 from calc.settings import Settings
 from tests.browser.conftest import survey_address
 from webapp.display import Show
+from webapp.readings import meaning
 from webapp.readings.forms import parse_reading
 from webapp.readings.settling import settle
 
@@ -125,3 +126,20 @@ def test_phone_takes_the_median_that_the_server_takes(page_as):
               "taken_at": "2026-08-12T10:00"} for box, text, _ in VALUES]  # fmt: skip
     news = [settle(parse_reading(form, Show(), "D8", now)[0], Settings()) for form in forms]
     assert [one.do_mg_l for one in news] == pytest.approx(found)
+
+
+@pytest.mark.parametrize(
+    ("oxygen", "low", "high"), [(5.1, 4.6, 5.8), (5.5, 5.1, 5.3), (4.3, 1.9, 7.0), (6.4, 4.6, 5.8)]
+)
+def test_phone_calls_a_reading_as_predicted_where_the_server_does(page_as, oxygen, low, high):
+    page = page_as("crew")
+    page.goto(f"{survey_address(page)}/stations/D8/reading")
+    says = page.evaluate(
+        """async (check) => {
+          const script = [...document.scripts].find((one) => one.src.includes("/kept.js")).src;
+          return (await import(script.replace("kept.js", "check_words.js"))).sentence(check);
+        }""",
+        {"oxygen": oxygen, "predicted": 5.2, "low": low, "high": high},
+    )
+    facts = meaning.Facts("D8", oxygen, predicted_mg_l=5.2, low_mg_l=low, high_mg_l=high, limb=meaning.LOWEST)
+    assert says.split(":")[0].split(". ")[0] == meaning.sentence(facts).split(":")[0]
