@@ -41,7 +41,9 @@ async function page(event, path) {
     if (kept && plain && reply.status === 200 && !reply.redirected) event.waitUntil(renew(cache, path, reply.clone()));
     return reply;
   } catch (trouble) {
-    const instead = kept ?? (await cache.match("/phone", anyHeaders));
+    // The list of meters needs signal; the form to check one is on the phone.
+    const check = path.endsWith("/meters") && (await cache.match(`${path}/check`, anyHeaders));
+    const instead = kept ?? (check || (await cache.match("/phone", anyHeaders)));
     if (instead) return marked(instead);
     throw trouble;
   }

@@ -101,7 +101,9 @@ def test_check_and_visit_without_signal_are_judged_on_the_phone_and_arrive_as_wh
 
 def checked_without_signal(ready):
     """Save a meter check and return the numbers that the phone then shows."""
-    ready.goto(ready.survey + "/meters/check")
+    ready.goto(ready.survey + "/sheet")
+    ready.get_by_role("link", name="Meters", exact=True).tap()
+    expect(ready.get_by_role("heading", name="Meter check: oxygen")).to_be_visible()
     ready.get_by_label("Meter", exact=True).select_option("Meter B")
     ready.get_by_label("Which check").select_option("as_found")
     ready.get_by_label("Against").select_option("air_saturated_water")
