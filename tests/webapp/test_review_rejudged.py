@@ -61,6 +61,26 @@ def test_plain_readings_say_what_the_others_say(db, survey, people):
     plain, others = queries.plain_readings_of(db, survey.id), queries.readings_of(db, survey.id)
     assert [final(one) for one in plain] == [final(one) for one in others]
     for one, other in zip(plain, others, strict=True):
-        columns = [column.key for column in Reading.__table__.columns]
+        columns = [name for name in one._fields if name not in ("station", "author", "events")]
         assert [getattr(one, name) for name in columns] == [getattr(other, name) for name in columns]
+        assert [event.id for event in one.events] == [event.id for event in other.events]
         assert (one.author.name, one.station.code) == (other.author.name, other.station.code)
+
+
+def test_readings_loaded_again_are_the_same_objects_but_those_decided_about(db, survey, people):
+    put_day(db, survey, people)
+    first = queries.plain_readings_of(db, survey.id)
+    service.keep(db, survey.id, first[1].id, "fine", 0, SignedIn(people["office"]))
+    second = queries.plain_readings_of(db, survey.id, first)
+    assert [one is other for one, other in zip(first, second, strict=True)] == [at != 1 for at in range(len(first))]
+    assert [event.kind for event in second[1].events] == ["kept"]
+
+
+def test_a_decision_leaves_what_is_said_of_far_readings_as_it_was(db, survey, people):
+    put_day(db, survey, people)
+    before = judging.judgement_of(db, survey)
+    first, *others = before.by_id
+    service.keep(db, survey.id, first, "fine", 0, SignedIn(people["office"]))
+    after = judging.judgement_of(db, survey)
+    assert after.by_id[first].reading.review == "kept"
+    assert any(after.by_id[one] is before.by_id[one] for one in others)

@@ -3,7 +3,8 @@
 import math
 from dataclasses import dataclass
 
-from calc.quality_meter import Bracket, CheckVerdict, MeterCheckTime, bracket, check_verdict, expected_value
+from calc.quality_bracket import brackets
+from calc.quality_meter import Bracket, CheckVerdict, MeterCheckTime, check_verdict, expected_value
 from webapp.models import MeterCheck
 
 _HOUR = 3600
@@ -76,11 +77,27 @@ class Brackets:
 
         A reading without a meter's name belongs to the only meter that was checked, where there is just one.
         """
-        name = meter_name.casefold()
+        return self.of_many([(meter_name, taken_at)])[0]
+
+    def of_many(self, meters_and_times):
+        """Return what of does for each (meter's name, time): the checks of a meter are put in order once."""
+        places = {}
+        for place, (meter_name, _) in enumerate(meters_and_times):
+            places.setdefault(meter_name, []).append(place)
+        found = [None] * len(meters_and_times)
+        for meter_name, some in places.items():
+            times_h = [hours(meters_and_times[place][1]) for place in some]
+            for place, one in zip(some, self._between(meter_name.casefold(), times_h), strict=True):
+                found[place] = one
+        return found
+
+    def _between(self, name, times_h):
         if not name and len(self._by_meter) == 1:
             (name,) = self._by_meter
         checks = self._by_meter.get(name)
         if not checks:
-            return Bracket("no_check_before", None, None), None, None
-        found = bracket(hours(taken_at), self._times[name], self._settings)
-        return found, *(None if place is None else checks[place] for place in (found.before, found.after))
+            return [(Bracket("no_check_before", None, None), None, None)] * len(times_h)
+        return [
+            (one, *(None if place is None else checks[place] for place in (one.before, one.after)))
+            for one in brackets(times_h, self._times[name], self._settings)
+        ]

@@ -1,8 +1,10 @@
 """Every reading of a survey judged by today's settings: quality, reasons, its checks, its visit. Nothing is stored."""
 
+import gc
 import threading
 from collections import OrderedDict
-from dataclasses import dataclass
+from contextlib import contextmanager
+from dataclasses import dataclass, field
 
 from sqlalchemy.orm import Session
 
@@ -81,11 +83,15 @@ class Judged:
 
 @dataclass(frozen=True)
 class Judgement:
-    """All readings of a survey, judged: by id, in time order, and by the occasions they were taken on."""
+    """All readings of a survey, judged: by id, in time order, and by the occasions they were taken on.
+
+    rows are the readings, checks and visits that it rests on.
+    """
 
     by_id: dict[str, Judged]
     occasions: list[Occasion]
     checks: list[JudgedCheck]
+    rows: tuple = field(default=((), (), ()), repr=False, compare=False)
 
     def of_station(self, code):
         """Return the occasions at a station, the latest last."""
@@ -99,24 +105,37 @@ def judge(survey, plan_version, settings, readings, checks, visits, before=None)
     are calc's. before is an earlier Judgement by the same plan, settings and facts of the survey: what it found holds
     wherever nothing that it rests on has changed.
     """
-    known = before.by_id if before else {}
-    finals = [_same_or_new(known.get(one.id), final(one)) for one in readings]
+    before = before or Judgement({}, [], [])
+    finals = _finals(readings, before)
     authors = {one.id: one.author_id for one in readings}
     balance = mixed_conductance(survey, plan_version)
     occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings, balance)
-    checked = judged_checks(checks, settings)
-    judges = _Judges(survey, settings, Neighbourhood(survey, plan_version, finals), Brackets(checked, settings), known)
+    occasions = [_as_before(one, before) for one in occasions]
+    checked = before.checks if checks is before.rows[1] else judged_checks(checks, settings)
+    judges = _Judges(survey, settings, Neighbourhood(survey, plan_version, finals), before.by_id)
     occasion_of = {reading.id: one for one in occasions for reading in one.readings}
+    brackets = Brackets(checked, settings).of_many([(one.meter, one.taken_at) for one in finals])
     by_id = {
-        one.id: judges.judged(one, now, occasion_of[one.id], float(saturation))
-        for one, now, saturation in zip(readings, finals, saturations_of(finals), strict=True)
+        one.id: judges.judged(one, now, occasion_of[one.id], between, float(saturation))
+        for one, now, between, saturation in zip(readings, finals, brackets, saturations_of(finals), strict=True)
     }
-    return Judgement(by_id, occasions, checked)
+    return Judgement(by_id, occasions, checked, (readings, checks, visits))
 
 
-def _same_or_new(old, now):
-    """Return the reading as it was judged before where nothing in it has changed: then it is the same to look at."""
-    return old.reading if old is not None and old.reading == now else now
+def _finals(readings, before):
+    """Return the FinalReading of each row: the one that was judged before where the row is the same."""
+    rows = {row.id: row for row in before.rows[0]}
+    return [before.by_id[one.id].reading if rows.get(one.id) is one else final(one) for one in readings]
+
+
+def _as_before(occasion, before):
+    """Return the Occasion that was judged before where this one says the same: its verdicts follow from these."""
+    for reading in occasion.readings[:1]:
+        held = before.by_id[reading.id].occasion if reading.id in before.by_id else None
+        same = (occasion.station_code, occasion.visit_no, occasion.visit, occasion.readings)
+        if held is not None and same == (held.station_code, held.visit_no, held.visit, held.readings):
+            return held
+    return occasion
 
 
 @dataclass(frozen=True)
@@ -126,18 +145,20 @@ class _Judges:
     survey: object
     settings: object
     neighbourhood: Neighbourhood
-    brackets: Brackets
     known: dict
 
-    def judged(self, reading, now, occasion, saturation_mg_l):
-        """Return the Judged of a reading; now is it as it stands."""
+    def judged(self, reading, now, occasion, between, saturation_mg_l):
+        """Return the Judged of a reading; now is it as it stands, between what Brackets.of says of it."""
         around = self.neighbourhood.around(now.station_code, now.taken_at, now.id, now.replicate)
-        bracket, before, after = self.brackets.of(now.meter, now.taken_at)
+        old = self.known.get(reading.id)
+        if old is not None and _rests_on_the_same(old, now, occasion, between, around):
+            return old
+        bracket, check_before, check_after = between
         air_temp_c = occasion.visit.facts.get("air_temp_c") if occasion.visit else None
         known = {"bracket": bracket, "air_temp_c": air_temp_c, "saturation_mg_l": saturation_mg_l}
         of_itself = self._of_itself(reading, now, around, known)
         findings = (*of_itself, *not_mixed(occasion.section), *stratified(occasion.layers))
-        findings = tuple(one for one in findings if not one.hazard)
+        findings = tuple([one for one in findings if not one.hazard])
         reasons = reasons_of(reading, now, [one.name for one in findings], self.settings.oxygen_low_mg_l)
         return Judged(
             reading=now,
@@ -147,10 +168,10 @@ class _Judges:
             of_itself=of_itself,
             air_temp_c=air_temp_c,
             findings=findings,
-            kept=tuple(str(one.get("name")) for one in reading.kept_findings),
+            kept=tuple([str(one.get("name")) for one in reading.kept_findings]),
             bracket=bracket,
-            check_before=before,
-            check_after=after,
+            check_before=check_before,
+            check_after=check_after,
             occasion=occasion,
             repeats_id=around.repeats.id if around.repeats else "",
             quality=quality_of(now, reasons),
@@ -169,6 +190,15 @@ class _Judges:
         return findings_on_stored(self.survey, self.settings, now, around, reading.received_at, source=source, **known)
 
 
+def _rests_on_the_same(old, now, occasion, between, around):
+    """Return whether all that is said of a reading was said before from the very same."""
+    if old.reading is not now or old.occasion is not occasion:
+        return False
+    bracket, check_before, check_after = between
+    same_checks = old.check_before is check_before and old.check_after is check_after
+    return same_checks and old.bracket == bracket and old.around == around
+
+
 _kept = OrderedDict()
 _keeping = threading.Lock()
 
@@ -182,10 +212,10 @@ def judgement_of(db, survey):
         if held == mark:
             _kept.move_to_end(survey.id)
             return found
+    before = found if held is not None and held[1:] == mark[1:] else None
     # What is kept needs rows of its own: those of a session that rolls back are emptied, and filled by no other.
-    with Session(db.connection(), join_transaction_mode="rollback_only") as aside:
-        rows = (queries.plain_readings_of(aside, survey.id), checks_of(aside, survey.id), visits_of(aside, survey.id))
-        before = found if held is not None and held[1:] == mark[1:] else None
+    with _collecting_later(), Session(db.connection(), join_transaction_mode="rollback_only") as aside:
+        rows = _rows_of(aside, survey.id, mark[0], found, held and held[0])
         found = judge(survey, current_plan(aside, survey.id), thresholds(settings), *rows, before=before)
     with _keeping:
         _kept[survey.id] = (mark, found)
@@ -193,6 +223,31 @@ def judgement_of(db, survey):
         while len(_kept) > _KEPT_SURVEYS:
             _kept.popitem(last=False)
     return found
+
+
+def _rows_of(db, survey_id, counts, found, held):
+    """Return the readings, checks and visits of a survey: those of the Judgement found where held says the same."""
+    readings, checks, visits = found.rows if found else ((), None, None)
+    if found is None or held.readings != counts.readings:
+        readings = queries.plain_readings_of(db, survey_id, readings)
+    if found is None or held.checks != counts.checks:
+        checks = checks_of(db, survey_id)
+    if found is None or held.visits != counts.visits:
+        visits = visits_of(db, survey_id)
+    return readings, checks, visits
+
+
+@contextmanager
+def _collecting_later():
+    """Keep the garbage collector from walking many new rows again and again: none of them is garbage, none a cycle."""
+    on = gc.isenabled()
+    if on:
+        gc.disable()
+    try:
+        yield
+    finally:
+        if on:
+            gc.enable()
 
 
 def _facts(survey):

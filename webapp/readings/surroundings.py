@@ -100,13 +100,14 @@ class Neighbourhood:
         self._times = [one.taken_at for one in self._used]
         self._run_starts = _run_starts(self._times)
         self._by_id = {one.id: one for one in self._used}
-        self._at, self._on_day = {}, {}
+        self._at, self._times_at, self._on_day = {}, {}, {}
         for one in self._used:
             self._at.setdefault(one.station_code, []).append(one)
+            self._times_at.setdefault(one.station_code, []).append(one.taken_at)
             self._on_day.setdefault((one.station_code, self._day(one.taken_at)), []).append(one)
-        places = [(place, code) for code, place in self._distances.items() if code in self._at]
-        self._down = sorted(places)
-        self._up = self._down[::-1]
+        self._arrivals = {code: self._arrival(code) for code in self._expected}
+        self._places = sorted((place, code) for code, place in self._distances.items() if code in self._at)
+        self._towards = {}
 
     def around(self, code, taken_at, reading_id=None, replicate=False, point=None):
         """Return the Surroundings of a reading at a station and time; reading_id is its own, which does not count.
@@ -115,15 +116,13 @@ class Neighbourhood:
         """
         survey, distance = self._survey, self._distances.get(code)
         point = point or self._by_id.get(reading_id)
-        expected = self._expected.get(code)
-        travel_h = expected.travel_time_h if expected and distance >= 0 else None
-        arrives_at = arrival_of(survey, travel_h)
+        travel_h, arrives_at = self._arrivals.get(code, (None, None))
         return Surroundings(
             code=code,
             distance_km=distance,
             prediction=self._prediction,
             missing=self._missing,
-            expected=expected,
+            expected=self._expected.get(code),
             upstream=self._neighbour(-1, distance, taken_at),
             downstream=self._neighbour(1, distance, taken_at),
             repeats=self._repeated(code, taken_at, reading_id, point) if replicate else None,
@@ -135,28 +134,39 @@ class Neighbourhood:
             anchor=self._anchor(code, taken_at, reading_id, point),
         )
 
+    def _arrival(self, code):
+        """Return (travel time in h, when the parcel is there) of a station, None where it can't be told."""
+        expected, distance = self._expected[code], self._distances[code]
+        travel_h = expected.travel_time_h if expected and distance >= 0 else None
+        return travel_h, arrival_of(self._survey, travel_h)
+
     def _neighbour(self, side, distance, taken_at):
         """Return the nearest station read upstream (-1) or downstream (1), on the same side of the outfall."""
         if distance is None:
             return None
-        for there, code in self._up if side < 0 else self._down:
-            if (there - distance) * side <= 0 or (there < 0) != (distance < 0):
-                continue
-            nearest = min(self._beside(code, taken_at), key=lambda one: abs(one.taken_at - taken_at), default=None)
-            if nearest is not None and abs(nearest.taken_at - taken_at) <= NEIGHBOURLY:
-                return Neighbour(code, nearest, self._expected.get(code))
+        if (codes := self._towards.get((side, distance))) is None:
+            codes = self._towards[side, distance] = self._codes_towards(side, distance)
+        for code in codes:
+            times = self._times_at[code]
+            after = bisect_right(times, taken_at)
+            nearest = after - 1 if after else 0
+            if 0 < after < len(times) and times[after] - taken_at < taken_at - times[nearest]:
+                nearest = after
+            if abs(times[nearest] - taken_at) <= NEIGHBOURLY:
+                return Neighbour(code, self._at[code][nearest], self._expected.get(code))
         return None
 
-    def _beside(self, code, taken_at):
-        """Return the readings at a station just before and just after a time."""
-        here = self._at[code]
-        place = bisect_right(here, taken_at, key=_when)
-        return here[max(0, place - 1) : place + 1]
+    def _codes_towards(self, side, distance):
+        """Return the stations read on one side of a place and the same side of the outfall, the nearest first."""
+        beyond = [
+            code for there, code in self._places if (there - distance) * side > 0 and (there < 0) == (distance < 0)
+        ]
+        return beyond if side > 0 else beyond[::-1]
 
     def _repeated(self, code, taken_at, reading_id, point):
         """Return the reading that a replicate repeats: the last one at its point on this occasion."""
         here = self._at.get(code, [])
-        for one in reversed(here[: bisect_right(here, taken_at, key=_when)]):
+        for one in reversed(here[: bisect_right(self._times_at.get(code, []), taken_at)]):
             if taken_at - one.taken_at > OCCASION:
                 return None
             if one.id != reading_id and (point is None or same_point(one, point)):
@@ -178,11 +188,13 @@ class Neighbourhood:
     def _recent(self, code, taken_at):
         """Return oxygen at the stations read before this one, one value each, the latest last."""
         latest = {}
-        wanted = min(_RECENT_STATIONS, len(self._at.keys() - {code}))
+        wanted = min(_RECENT_STATIONS, len(self._at) - (code in self._at))
         end = bisect_right(self._times, taken_at)
-        for one in reversed(self._used[max(0, end - _FURTHEST_BACK) : end]):
-            if one.station_code != code and one.do_mg_l is not None:
-                latest.setdefault(one.station_code, one.do_mg_l)
+        for place in range(end - 1, max(0, end - _FURTHEST_BACK) - 1, -1):
+            one = self._used[place]
+            there = one.station_code
+            if there not in latest and there != code and one.do_mg_l is not None:
+                latest[there] = one.do_mg_l
                 if len(latest) == wanted:
                     break
         return tuple(reversed(latest.values()))
