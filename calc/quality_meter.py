@@ -205,9 +205,11 @@ def _says(parameter, expected, reading, percent, limit):
     either = " warmer or colder" if parameter == "temperature" else ""
     share = "" if math.isnan(percent) or parameter in ("temperature", "ph") else f" ({shown(abs(percent), 1)} %)"
     verdict = "more than" if exceeds(abs(error), limit) else "within"
+    off = f"{shown(abs(error), digits)}{unit} {high if error > 0 else low}{share}"
+    if float(shown(abs(error), digits)) == 0:
+        off = "exactly right"
     return (
-        f"{shown(reading, digits)}{unit} where {shown(expected, digits)}{unit} is expected: "
-        f"{shown(abs(error), digits)}{unit} {high if error > 0 else low}{share}, {verdict} the "
+        f"{shown(reading, digits)}{unit} where {shown(expected, digits)}{unit} is expected: {off}, {verdict} the "
         f"{shown(limit, max(digits, 1))}{unit}{either} that passes."
     )
 

@@ -154,6 +154,12 @@ def test_a_temperature_is_told_warmer_or_colder_and_a_ph_without_a_unit():
     assert acid.says == "6.90 where 7.00 is expected: 0.10 low, within the 0.20 that passes."
 
 
+def test_a_meter_that_shows_what_it_should_is_said_to_be_exactly_right():
+    for shown in (9.08, 9.082, 9.078):
+        verdict = check_verdict("do", "read_back", "air_saturated_water", 9.08, shown, SETTINGS)
+        assert "9.08 mg/L is expected: exactly right, within the 0.20 mg/L that passes." in verdict.says
+
+
 @pytest.mark.parametrize(
     ("given", "match"),
     [
