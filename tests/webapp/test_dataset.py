@@ -16,10 +16,21 @@ from tests.conftest import SURVEY_FORM
 from tests.webapp.everything import PRIVATE_PHONE, put_everything, unpacked
 from tests.webapp.plans import PLAN, put_plan
 from tests.webapp.sheets import TAKEN, correct, put_readings
-from webapp.dataset import service
-from webapp.dataset.fields import FORMULA_STARTS, PLAIN_NUMBER, as_written, decimal, exact, harmless
+from webapp.dataset import package, service
+from webapp.dataset.fields import (
+    FORMULA_STARTS,
+    PLAIN_NUMBER,
+    DataTable,
+    as_written,
+    decimal,
+    exact,
+    harmless,
+    text,
+)
 from webapp.dataset.summary import rounded
-from webapp.models import Reading
+from webapp.models import Person, Reading
+from webapp.people.access import SignedIn
+from webapp.review import service as review
 
 
 @pytest.fixture
@@ -55,6 +66,10 @@ def reading_at(files, code, name="readings.csv"):
     return next(row for row in rows_in(files, name) if row["station_code"] == code)
 
 
+def by_id(files, reading_id):
+    return next(row for row in rows_in(files, "readings.csv") if row["reading_id"] == reading_id)
+
+
 def test_frictionless_finds_nothing_wrong(files, folder):
     report = Package(str(folder / "datapackage.json")).validate()
     assert report.valid, report.flatten(["name", "rowNumber", "fieldName", "message"])
@@ -82,6 +97,35 @@ def test_every_number_column_of_readings_is_numeric_to_pandas(files, folder):
 
 def test_same_data_exported_twice_is_the_same_bytes(browser_as, filled):
     assert fetch(browser_as, filled) == fetch(browser_as, filled)
+
+
+def test_order_in_which_keys_are_given_makes_no_other_bytes():
+    rows, fields = [{"a": "1", "b": "2"}], (text("a", "A"), text("b", "B"))
+    keys = {"b": ("people", "person"), "a": ("stations", "code")}
+    made = [DataTable("t", "T", "", fields, ("a",), rows, dict(some)) for some in (keys, reversed(keys.items()))]
+    one, other = (package.descriptor({}, [table], {"t.csv": b""}) for table in made)
+    assert one == other
+    schema = json.loads(one)["resources"][0]["schema"]
+    assert [key["fields"] for key in schema["foreignKeys"]] == [["a"], ["b"]]
+
+
+def test_who_answers_a_question_is_not_told_as_its_reviewer(db, filled, people):
+    reading = db.query(Reading).filter(~Reading.events.any()).first()
+    taker, reviewer = SignedIn(db.get(Person, reading.author_id)), SignedIn(people["office"])
+    review.ask(db, filled.id, reading.id, "At the bridge?", 0, reviewer)
+    review.answer(db, filled.id, reading.id, "Yes.", 1, taker)
+    found = by_id(service.dataset_of(db, filled).files, reading.id)
+    assert (found["status"], found["reviewed_by"]) == ("draft", "")
+    review.keep(db, filled.id, reading.id, "As the crew says.", 2, reviewer)
+    found = by_id(service.dataset_of(db, filled).files, reading.id)
+    assert (found["status"], found["reviewed_by"]) == ("reviewed", people["office"].name)
+
+
+def test_several_raw_values_are_read_even_where_percent_was_noted_too(db, filled):
+    reading = next(one for one in db.query(Reading) if one.series)
+    reading.do_percent = 68.0
+    db.commit()
+    assert by_id(service.dataset_of(db, filled).files, reading.id)["do_source"] == "read"
 
 
 def test_any_change_makes_another_version(browser_as, filled, db, people):

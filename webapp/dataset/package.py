@@ -48,9 +48,11 @@ def _resource(table, content):
         "primaryKey": list(table.key),
     }
     if table.foreign:
+        # In the order of the columns: the models give keys in an order that differs from one start to the next.
+        places = {field.name: place for place, field in enumerate(table.fields)}
         schema["foreignKeys"] = [
             {"fields": [own], "reference": {"resource": other, "fields": [theirs]}}
-            for own, (other, theirs) in table.foreign.items()
+            for own, (other, theirs) in sorted(table.foreign.items(), key=lambda one: places[one[0]])
         ]
     return {
         "name": table.name,

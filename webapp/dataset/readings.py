@@ -220,6 +220,8 @@ def _id(judged_check):
 def _do_source(reading):
     if reading.do_mg_l is None:
         return None
+    if any(one.get("do_mg_l") is not None for one in reading.series or ()):
+        return "read"
     return "percent" if reading.do_percent is not None and not as_typed(reading, "do_mg_l")[0] else "read"
 
 

@@ -22,6 +22,7 @@ from webapp.plan.day import today_of
 from webapp.plan.prediction import prediction_of
 from webapp.readings.asking import thresholds
 from webapp.readings.judging import judgement_of
+from webapp.readings.layers import KEPT
 from webapp.readings.quality_words import REASONS
 from webapp.review.derived import derive
 from webapp.review.drift import drift_pairs
@@ -192,7 +193,8 @@ def _lines(survey, plan, judgement, rows, names, settings, state):
             limit_mg_l=limit,
             repeat_mg_l=evidence.repeat_limit_mg_l(final.do_mg_l, settings),
             status=_status(state, final),
-            reviewer=names.people.get(final.reviewer_id, ""),
+            # Who asks, or answers, has not reviewed it.
+            reviewer=names.people.get(final.reviewer_id, "") if final.review == KEPT else "",
             meter_id=meters.get(final.meter.casefold(), ""),
         )
         for row, final, one in zip(kept, finals, derived, strict=True)
@@ -202,4 +204,4 @@ def _lines(survey, plan, judgement, rows, names, settings, state):
 def _status(state, final):
     if state == APPROVED:
         return state
-    return "reviewed" if final.review == "kept" else "draft"
+    return "reviewed" if final.review == KEPT else "draft"
