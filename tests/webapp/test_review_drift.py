@@ -96,6 +96,17 @@ def test_each_reading_keeps_what_the_correction_rests_on_and_history_has_one_lin
     assert all("drift_corrected" in one.reasons for one in judged(db, survey).values())
 
 
+def test_drift_is_found_no_more_where_it_was_corrected(db, survey, people):
+    put_day(db, survey, people)
+    found = [{finding.name for finding in one.findings} for one in judged(db, survey).values()]
+    assert all("drift_uncorrected" in names for names in found)
+    apply(db, survey, people)
+    db.commit()
+    for one in judged(db, survey).values():
+        assert "drift_uncorrected" not in {finding.name for finding in one.findings}
+        assert "drift_corrected" in one.reasons
+
+
 def test_same_form_sent_twice_is_one_correction(db, survey, people):
     put_day(db, survey, people)
     (pair,), _ = offers(db, survey)

@@ -158,7 +158,8 @@ class _Judges:
         known = {"bracket": bracket, "air_temp_c": air_temp_c, "saturation_mg_l": saturation_mg_l}
         of_itself = self._of_itself(reading, now, around, known)
         findings = (*of_itself, *not_mixed(occasion.section), *stratified(occasion.layers))
-        findings = tuple([one for one in findings if not one.hazard])
+        mended = {"drift_uncorrected"} if now.drift is not None else ()
+        findings = tuple([one for one in findings if not one.hazard and one.name not in mended])
         reasons = reasons_of(reading, now, [one.name for one in findings], self.settings.oxygen_low_mg_l)
         return Judged(
             reading=now,
