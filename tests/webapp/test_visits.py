@@ -9,6 +9,7 @@ from webapp.display import Show
 from webapp.models import History, SurveyMember
 from webapp.visits import forms, queries
 from webapp.visits.layers import final_visit
+from webapp.visits.words import flow_text
 
 FIRST = "0b8f6f2c-32cb-4a52-9a6f-0f5b0d3b1c11"
 FORM = {"submission_id": FIRST, "arrived_at": "2026-08-12T10:14", "platform": "wade", "stage_m": "0,412",
@@ -114,6 +115,19 @@ def test_refused_form_stays_as_typed_and_nothing_is_stored(browser_as, db, surve
     assert (answer.status_code, "Enter the stage as a number" in answer.text) == (422, True)
     assert 'value="8.5"' in answer.text and 'value="low"' in answer.text
     assert visits(db, survey) == []
+
+
+@pytest.mark.parametrize(
+    ("flow_m3_s", "units", "said"),
+    [
+        (11.9, "si", "11.9 m³/s"),
+        (0.4823, "si", "0.482 m³/s"),
+        (1234.4, "si", "1234 m³/s"),
+        (11.6666, "us", "412 ft³/s"),
+    ],
+)
+def test_a_flow_is_told_to_three_figures(flow_m3_s, units, said):
+    assert flow_text(Show(unit_system=units), flow_m3_s) == said
 
 
 def test_float_runs_give_the_mean_velocity_with_the_factor_shown_in_words(browser_as, db, survey, address):

@@ -1,5 +1,6 @@
 """What a visit may tell, what it is called and how it is shown."""
 
+import math
 from dataclasses import dataclass
 
 PLATFORMS = {
@@ -126,12 +127,19 @@ def _float(show, facts):
 
 
 def _flow(show, facts):
-    said = [show.text("flow", facts["flow_m3_s"])]
+    said = [flow_text(show, facts["flow_m3_s"])]
     if facts.get("flow_method"):
         said.append(FLOW_METHODS.get(facts["flow_method"], facts["flow_method"]).lower())
     if (percent := facts.get("flow_uncertainty_percent")) is not None:
         said.append(f"{uncertainty_class(percent)} (within {percent:g} %)")
     return ", ".join(said)
+
+
+def flow_text(show, flow_m3_s):
+    """Return a flow to three figures, with its unit: no gauging knows more. [m³/s]"""
+    size = abs(show.shown("flow", flow_m3_s))
+    digits = 3 if size < 1 else max(0, 2 - math.floor(math.log10(size)))
+    return show.text("flow", flow_m3_s, digits)
 
 
 def uncertainty_class(percent):
