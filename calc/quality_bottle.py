@@ -183,12 +183,16 @@ def bottle_counts(bottles, replicates, blanks, settings):
     ):
         wanted = percent / 100 * bottles
         if exceeds(wanted, count):
-            says = f"{shown(count, 0)} {name} for {shown(bottles, 0)} bottles; {percent:g} % are wanted."
+            says = f"{_many(count, name)} for {_many(bottles, 'bottles')}; {percent:g} % are wanted."
             cause = "They were not planned, or not yet collected."
             found.append(
                 Finding(f"too_few_{name}", "bottles", says, cause, "Collect the missing ones on the next run.")
             )
     return tuple(found)
+
+
+def _many(count, name):
+    return f"1 {name.removesuffix('s')}" if count == 1 else f"{shown(count, 0)} {name}"
 
 
 def blank(depletion_mg_l, settings):

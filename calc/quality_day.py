@@ -27,8 +27,9 @@ def replicate_due(readings_by_crew_today, replicates_by_crew_today, settings):
     wanted = max(settings.replicate_per_day, math.ceil(readings / every))
     if not exceeds(wanted, replicates):
         return ""
+    many = "1 reading" if readings == 1 else f"{shown(readings, 0)} readings"
     return (
-        f"A replicate is due: {shown(replicates, 0)} so far in {shown(readings, 0)} readings today. One in "
+        f"A replicate is due: {shown(replicates, 0)} so far in {many} today. One in "
         f"{settings.replicate_every:g} is wanted, and at least {settings.replicate_per_day:g} a day. Lift the probe, "
         "put it back, let it settle and read again."
     )

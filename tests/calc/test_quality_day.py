@@ -49,6 +49,7 @@ def test_a_replicate_is_due_for_each_ten_readings_begun(readings, replicates, du
 def test_the_sentence_on_replicates_tells_how_many_there_are():
     says = replicate_due(12, 1, SETTINGS)
     assert says.startswith("A replicate is due: 1 so far in 12 readings today. One in 10 is wanted")
+    assert replicate_due(1, 0, SETTINGS).startswith("A replicate is due: 0 so far in 1 reading today.")
 
 
 def test_a_survey_may_want_more_replicates():
