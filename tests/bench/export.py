@@ -88,7 +88,7 @@ def main():
             readings = readings_of(db, survey_id)
             plain = timed(lambda: plainly_written(readings))
         # What judges every reading is kept in memory: the first export after a change does without.
-        export = timed(lambda: _export(database), before=judging._kept.clear)
+        export = timed(lambda: _export(database), before=judging.forget)
         again = timed(lambda: _export(database))
         content = _export(database)
         with database.reading() as db:
@@ -111,7 +111,7 @@ def _both_times(client, address):
         assert answer.status_code == 200, answer.status
 
     def judged_anew():
-        judging._kept.clear()
+        judging.forget()
         fetched()
 
     return timed(judged_anew), timed(fetched)

@@ -26,7 +26,7 @@ def both(db, survey):
     db.expire_all()
     survey = db.get(Survey, survey.id)
     going_on = said(judging.judgement_of(db, survey))
-    judging._kept.clear()
+    judging.forget()
     anew = said(judging.judgement_of(db, survey))
     assert going_on == anew
     return anew

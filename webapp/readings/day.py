@@ -10,10 +10,10 @@ from webapp.readings.asking import findings_on_new, thresholds, to_ask
 from webapp.readings.check import on_site_check
 from webapp.readings.expected import mixed_conductance, prediction_or_reasons
 from webapp.readings.judging import judgement_of
+from webapp.readings.kept import readings_kept
 from webapp.readings.layers import final, placed
 from webapp.readings.occasions import occasions_of
 from webapp.readings.points import BOAT, before_reading, points_left, section_reason
-from webapp.readings.queries import readings_of
 from webapp.readings.repeats import due_of, local_day
 from webapp.readings.section_words import spreads
 from webapp.readings.settling import settle
@@ -36,9 +36,8 @@ class Day:
         self.now = datetime.now(UTC)
         self.plan = current_plan(db, survey.id)
         self.settings = thresholds(current_settings(db, survey.id))
-        stored = readings_of(db, survey.id)
+        stored, self.readings = readings_kept(db, survey.id)
         self.authors = {one.id: one.author_id for one in stored}
-        self.readings = [final(one) for one in stored]
         self.meters = meters_of(db, survey.id)
 
     def settled(self, new):

@@ -14,9 +14,10 @@ from calc.quality_section import not_mixed, stratified
 from webapp.meters.queries import checks_of
 from webapp.meters.verdicts import Brackets, JudgedCheck, judged_checks
 from webapp.plan.queries import current_plan
-from webapp.readings import queries
+from webapp.readings import kept, queries
 from webapp.readings.asking import findings_on_stored, thresholds
 from webapp.readings.expected import mixed_conductance
+from webapp.readings.kept import readings_kept
 from webapp.readings.layers import FinalReading, final
 from webapp.readings.occasions import Occasion, occasions_of
 from webapp.readings.quality_words import quality_of, reasons_of, severity_of
@@ -98,15 +99,15 @@ class Judgement:
         return [one for one in self.occasions if one.station_code == code]
 
 
-def judge(survey, plan_version, settings, readings, checks, visits, before=None):
+def judge(survey, plan_version, settings, readings, checks, visits, finals=None, before=None):
     """Return the Judgement of a survey.
 
-    readings, checks and visits are all rows of the survey with what hangs on them; readings in time order; settings
-    are calc's. before is an earlier Judgement by the same plan, settings and facts of the survey: what it found holds
-    wherever nothing that it rests on has changed.
+    readings, checks and visits are all rows of the survey with what hangs on them; readings in time order, finals what
+    they are as they stand, where that is known; settings are calc's. before is an earlier Judgement by the same plan,
+    settings and facts of the survey: what it found holds wherever nothing that it rests on has changed.
     """
     before = before or Judgement({}, [], [])
-    finals = _finals(readings, before)
+    finals = [final(one) for one in readings] if finals is None else finals
     authors = {one.id: one.author_id for one in readings}
     balance = mixed_conductance(survey, plan_version)
     occasions = occasions_of(finals, authors, [final_visit(one) for one in visits], settings, balance)
@@ -120,12 +121,6 @@ def judge(survey, plan_version, settings, readings, checks, visits, before=None)
         for one, now, between, saturation in zip(readings, finals, brackets, saturations_of(finals), strict=True)
     }
     return Judgement(by_id, occasions, checked, (readings, checks, visits))
-
-
-def _finals(readings, before):
-    """Return the FinalReading of each row: the one that was judged before where the row is the same."""
-    rows = {row.id: row for row in before.rows[0]}
-    return [before.by_id[one.id].reading if rows.get(one.id) is one else final(one) for one in readings]
 
 
 def _as_before(occasion, before):
@@ -216,8 +211,10 @@ def judgement_of(db, survey):
     before = found if held is not None and held[1:] == mark[1:] else None
     # What is kept needs rows of its own: those of a session that rolls back are emptied, and filled by no other.
     with _collecting_later(), Session(db.connection(), join_transaction_mode="rollback_only") as aside:
-        rows = _rows_of(aside, survey.id, mark[0], found, held and held[0])
-        found = judge(survey, current_plan(aside, survey.id), thresholds(settings), *rows, before=before)
+        readings, finals = readings_kept(aside, survey.id)
+        others = _others(aside, survey.id, mark[0], found, held and held[0])
+        plan = current_plan(aside, survey.id)
+        found = judge(survey, plan, thresholds(settings), readings, *others, finals, before)
     with _keeping:
         _kept[survey.id] = (mark, found)
         _kept.move_to_end(survey.id)
@@ -226,16 +223,21 @@ def judgement_of(db, survey):
     return found
 
 
-def _rows_of(db, survey_id, counts, found, held):
-    """Return the readings, checks and visits of a survey: those of the Judgement found where held says the same."""
-    readings, checks, visits = found.rows if found else ((), None, None)
-    if found is None or held.readings != counts.readings:
-        readings = queries.plain_readings_of(db, survey_id, readings)
+def forget():
+    """Drop what is kept in memory, as a start of the server does."""
+    with _keeping:
+        _kept.clear()
+    kept.forget()
+
+
+def _others(db, survey_id, counts, found, held):
+    """Return the checks and visits of a survey: those of the Judgement found where held says the same."""
+    _, checks, visits = found.rows if found else (None, None, None)
     if found is None or held.checks != counts.checks:
         checks = checks_of(db, survey_id)
     if found is None or held.visits != counts.visits:
         visits = visits_of(db, survey_id)
-    return readings, checks, visits
+    return checks, visits
 
 
 @contextmanager

@@ -29,6 +29,7 @@ _JUDGED_BY = (
 PlainReading = namedtuple("PlainReading", [*(column.key for column in _JUDGED_BY), "station", "author", "events"])
 
 
+_Station, _Author = namedtuple("_Station", ["code"]), namedtuple("_Author", ["name"])
 Mark = namedtuple("Mark", ["readings", "checks", "visits"])
 
 
@@ -48,31 +49,31 @@ def plain_readings_of(db, survey_id, held=()):
     if not held:
         events = _events_of(db, survey_id)
         return [one._replace(events=events[one.id]) if one.id in events else one for one in _loaded(db, survey_id)]
-    ids = list(db.scalars(select(Reading.id).where(Reading.survey_id == survey_id).order_by(*_IN_ORDER)))
+    counts = _counted(db, survey_id)
     known = {one.id: one for one in held}
-    if missing := [one for one in ids if one not in known]:
+    if missing := [one for one in counts if one not in known]:
         known |= {one.id: one for one in _loaded(db, survey_id, missing)}
-    counts = _decisions_of(db, survey_id)
-    if behind := [one for one in ids if len(known[one].events) != counts.get(one, 0)]:
+    if behind := [one for one, count in counts.items() if len(known[one].events) != count]:
         events = _events_of(db, survey_id, behind)
         known |= {one: known[one]._replace(events=events[one]) for one in behind}
-    return [known[one] for one in ids]
+    return [known[one] for one in counts]
 
 
 def _loaded(db, survey_id, ids=None):
     """Return the PlainReadings of these ids, or of all, without what was decided about them."""
-    query = _of_these(select(*_JUDGED_BY).where(Reading.survey_id == survey_id), ids)
-    rows = db.execute(query.order_by(*_IN_ORDER)).all()
-    stations = {one.id: one for one in db.scalars(select(Station).where(Station.survey_id == survey_id))}
-    people = select(Person).where(Person.id.in_({row.author_id for row in rows}))
-    authors = {one.id: one for one in db.scalars(people)}
-    return [PlainReading(*row, stations[row.station_id], authors[row.author_id], ()) for row in rows]
+    query = select(*_JUDGED_BY, Station.code, Person.name).join(Reading.station).join(Reading.author)
+    query = _of_these(query.where(Reading.survey_id == survey_id), ids)
+    return [
+        PlainReading(*rest, _Station(code), _Author(name), ())
+        for *rest, code, name in db.execute(query.order_by(*_IN_ORDER))
+    ]
 
 
-def _decisions_of(db, survey_id):
-    """Return how many decisions there are about each reading that there are any about, by its id."""
-    query = select(ReadingEvent.reading_id, func.count()).join(Reading).where(Reading.survey_id == survey_id)
-    return {row[0]: row[1] for row in db.execute(query.group_by(ReadingEvent.reading_id))}
+def _counted(db, survey_id):
+    """Return how many decisions there are about each reading, by its id, in the order they were taken."""
+    query = select(Reading.id, func.count(ReadingEvent.id)).outerjoin(ReadingEvent)
+    query = query.where(Reading.survey_id == survey_id).group_by(Reading.id).order_by(*_IN_ORDER)
+    return {row[0]: row[1] for row in db.execute(query)}
 
 
 def _events_of(db, survey_id, ids=None):

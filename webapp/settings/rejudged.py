@@ -1,11 +1,8 @@
 """What changed settings do to what is said of the readings. Nothing judged is stored, so this is told once and kept."""
 
 from calc.settings import Settings
-from webapp.meters.queries import checks_of
 from webapp.plan.queries import current_plan
 from webapp.readings.judging import judge, judgement_of
-from webapp.readings.queries import readings_of
-from webapp.visits.queries import visits_of
 
 
 def judged_otherwise(db, survey, values):
@@ -13,11 +10,12 @@ def judged_otherwise(db, survey, values):
 
     values holds every setting by key; what they are compared with are the survey's settings as they are stored.
     """
-    before = judgement_of(db, survey).by_id
+    now = judgement_of(db, survey)
+    before = now.by_id
     if not before:
         return 0, 0
-    rows = readings_of(db, survey.id), checks_of(db, survey.id), visits_of(db, survey.id)
-    after = judge(survey, current_plan(db, survey.id), Settings.from_dict(values), *rows).by_id
+    finals = [one.reading for one in before.values()]
+    after = judge(survey, current_plan(db, survey.id), Settings.from_dict(values), *now.rows, finals).by_id
     moved = [
         one for one in before if (before[one].quality, before[one].reasons) != (after[one].quality, after[one].reasons)
     ]
