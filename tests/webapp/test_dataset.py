@@ -5,6 +5,7 @@ import hashlib
 import io
 import json
 import zipfile
+from datetime import UTC, datetime
 
 import pandas
 import pytest
@@ -126,6 +127,19 @@ def test_several_raw_values_are_read_even_where_percent_was_noted_too(db, filled
     reading.do_percent = 68.0
     db.commit()
     assert by_id(service.dataset_of(db, filled).files, reading.id)["do_source"] == "read"
+
+
+def test_solar_time_is_that_of_the_access_point_where_the_reading_has_no_place(db, filled, people):
+    access = [{**row, "longitude": -30.0, "latitude": 44.0} for row in PLAN["access"]]
+    put_plan(db, filled, people["lead"], {**PLAN, "access": access}, number=2)
+    rows = rows_in(service.dataset_of(db, filled).files, "station_summary.csv")
+    placed = {one.id for one in db.query(Reading) if one.longitude is not None}
+    here = [row for row in rows if row["reading_id"] not in placed]
+    assert here and placed
+    for row in here:
+        utc = datetime.fromisoformat(row["observed_at"]).astimezone(UTC)
+        expected = (utc.hour + utc.minute / 60 + utc.second / 3600 - 2) % 24
+        assert float(row["mean_solar_time_h"]) == pytest.approx(expected, abs=0.006)
 
 
 def test_any_change_makes_another_version(browser_as, filled, db, people):

@@ -61,6 +61,7 @@ def _version(event):
 
 _CONVENTIONS = (
     "CSV as in RFC 4180: UTF-8, comma, decimal point, a header; an empty cell is a missing value.",
+    'Yes and no are true and false in small letters; R reads them as text: compare with "true".',
     "Units are SI and stand in every column's name; dictionary.csv gives them as UCUM codes.",
     "Times are ISO 8601 with the offset of the survey's time zone at that time.",
     "Raw is what was recorded and never changes; corrected, drift_corrected and final stand beside it; "

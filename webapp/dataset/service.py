@@ -126,7 +126,7 @@ def _tables(found):
         readings_table(lines, zone_says),
         keeping.values_table(rows["reading"]),
         corrections_table(rows["reading_event"], names),
-        summary_table(lines, zone_says),
+        summary_table(lines, zone_says, _longitudes(plan)),
         reasons_table(readings=REASONS, bottles=BOTTLE_REASONS),
         *_record_tables(found),
         *_evidence_tables(found),
@@ -137,6 +137,14 @@ def _tables(found):
         records.audit_table(rows["history"], names),
         tables.left_out_table(),
     ]
+
+
+def _longitudes(plan):
+    """Return the longitude of each station's access point by the station's code, as far as the plan has it."""
+    if plan is None:
+        return {}
+    access = {row.get("name"): row.get("longitude") for row in plan.tables.get("access") or []}
+    return {row["code"]: access.get(row.get("access")) for row in plan.tables.get("stations") or []}
 
 
 def _record_tables(found):

@@ -31,15 +31,18 @@ _OF_THE_VISIT = (
     yes_no("stratified", "Layered", "Of the visit; empty where too little is known."),
     number("replicate_difference_mg_l", "Differs from what it repeats by", "mg/L"),
     number(
-        "mean_solar_time_h", "Mean solar time", "h", "From the longitude of the reading, without the equation of time."
+        "mean_solar_time_h",
+        "Mean solar time",
+        "h",
+        "From the longitude of the reading, else of its station's access point; without the equation of time.",
     ),
     text("bracket", "Between two checks of its meter", choices=BRACKETS),
     text("platform", "How they read"),
 )
 
 
-def summary_table(lines, zone_says):
-    """Return a wide table for people: one row per reading, each number rounded once."""
+def summary_table(lines, zone_says, longitudes):
+    """Return a wide table for people: one row per reading, each number rounded once; longitudes are by station."""
     fields = (
         text("reading_id", "Reading's id", constraints={"required": True}),
         text("station_code", "Station"),
@@ -51,22 +54,23 @@ def summary_table(lines, zone_says):
         number("do_reporting_limit_mg_l", "Reporting limit of oxygen", "mg/L"),
         *_OF_THE_VISIT,
         text("quality", "Quality", choices=QUALITIES),
-        text("reasons", "Reasons"),
+        text("reasons", "Reasons", "Separated by semicolons: see reasons.csv."),
         text("author", "Who recorded it"),
         text("note", "Note"),
     )
     says = (
         "For people: final numbers, rounded once, half to even, to what can be measured: oxygen 0.1 mg/L, percent 1, "
         "temperature 0.1 °C, pressure 1 mmHg, pH 0.1, conductance 3 significant figures, distance 0.01 km, travel time "
-        "0.1 h. Deficit and difference are computed before rounding. Readings set aside are here too: see quality."
+        "0.1 h; differences between readings, and solar time, to 0.01. Deficit and difference are computed before "
+        "rounding. Readings set aside are here too: see quality."
     )
     foreign = {"reading_id": ("readings", "reading_id"), "station_code": ("stations", "code")}
     finals = {one.reading.id: one.final for one in lines}
-    rows = [_row(one, finals) for one in lines]
+    rows = [_row(one, finals, longitudes.get(one.final.station_code)) for one in lines]
     return DataTable("station_summary", "Readings for people", says, fields, ("reading_id",), rows, foreign)
 
 
-def _row(line, finals):
+def _row(line, finals, longitude):
     row = {
         "reading_id": line.reading.id,
         "station_code": line.final.station_code,
@@ -80,6 +84,7 @@ def _row(line, finals):
         "author": line.stored["author"],
         "note": line.reading.note,
         "bracket": line.judged.bracket.state,
+        "mean_solar_time_h": _solar_time_h(line.final, longitude),
         **_of_the_visit(line, finals),
     }
     for name, _, _, digits in _NUMBERS:
@@ -100,16 +105,17 @@ def _of_the_visit(line, finals):
         "mixed": judged.section.mixed,
         "stratified": judged.layers.stratified,
         "replicate_difference_mg_l": rounded(final.do_mg_l - repeated.do_mg_l, 2) if both else None,
-        "mean_solar_time_h": _solar_time_h(final),
         "platform": visit.facts.get("platform") if visit is not None else None,
     }
 
 
-def _solar_time_h(final):
-    if final.longitude is None:
+def _solar_time_h(final, longitude):
+    if final.longitude is not None:
+        longitude = final.longitude
+    if longitude is None:
         return None
     utc = final.taken_at.astimezone(UTC)
-    return rounded((utc.hour + utc.minute / 60 + utc.second / 3600 + final.longitude / 15) % 24, 2)
+    return rounded((utc.hour + utc.minute / 60 + utc.second / 3600 + longitude / 15) % 24, 2)
 
 
 def rounded(value, digits):
