@@ -85,6 +85,18 @@ def test_who_is_on_a_survey_is_no_change_of_it(db, survey, people, read):
     assert state(db, survey).kind == "approved"
 
 
+def test_pages_that_would_change_an_approved_survey_say_so_before_anything_is_typed(
+    db, survey, people, read, browser_as
+):
+    office, says = browser_as("office"), "Nothing of it changes until the office opens it again."
+    pages = [f"/surveys/{survey.id}/{path}" for path in ("settings", "review", f"readings/{read['D3']}")]
+    assert not any(says in office.get(page).text for page in pages)
+    reviewed(db, survey, people)
+    approved(db, survey, people)
+    db.commit()
+    assert all(says in office.get(page).text for page in pages)
+
+
 def test_whoever_marked_it_as_reviewed_does_not_approve_it(db, survey, people, read):
     reviewed(db, survey, people, by="office")
     with pytest.raises(NotAllowed, match="You marked it as reviewed"):

@@ -3,6 +3,7 @@
 from flask import Blueprint, redirect, render_template, request, url_for
 from flask_login import current_user, login_required
 
+from webapp.approval import queries as approval_queries
 from webapp.db import get_db
 from webapp.display import Show
 from webapp.errors import Conflict
@@ -62,6 +63,7 @@ def _page(db, survey, status=200, form=None, errors=None, conflict="", seen=None
         "settings/page.html",
         survey=survey,
         show=Show.of(survey),
+        state=approval_queries.state_of(db, survey.id),
         tab="plan",
         topics=service.TOPICS,
         lines=lines,
