@@ -2,13 +2,15 @@
 
 import re
 import uuid
-from datetime import UTC, datetime
+from datetime import UTC, datetime, timedelta
 from zoneinfo import ZoneInfo
 
 from webapp.display import Show
 
 NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)")
 LOOKS_GROUPED = re.compile(r"[+-]?[1-9]\d{0,2},\d{3}")
+# How far a clock may run ahead of the server's before a time is taken for a slip.
+FURTHEST_AHEAD = timedelta(minutes=10)
 MINUS_SIGNS = str.maketrans({"\u2212": "-", "\u2013": "-", "\u00a0": " "})
 
 
@@ -113,6 +115,16 @@ class Fields:
             return str(uuid.UUID(self._raw(name)))
         except ValueError:
             return self.refuse(name, "This form came without its id. Open it again and repeat what you typed.")
+
+    def past_time(self, name, label, now, required=True):
+        """Return the instant of a time as local_time does, but refuse one that is still to come."""
+        return self.not_to_come(name, self.local_time(name, label, required), now)
+
+    def not_to_come(self, name, instant, now):
+        """Return an instant that may be missing, or refuse it where it is still to come."""
+        if instant is not None and instant > now + FURTHEST_AHEAD:
+            return self.refuse(name, "That time is still to come. Check the date, the hour and this phone's clock.")
+        return instant
 
     def local_time(self, name, label, required=True):
         """Return the instant of a time written in the survey's zone, for example 2026-08-14T05:42."""

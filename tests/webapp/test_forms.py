@@ -63,6 +63,14 @@ def test_number_in_the_unit_on_screen_is_stored_in_si_with_what_was_typed():
     assert fields.entered["t"] == {"text": "68", "unit": "[degF]"}
 
 
+def test_time_still_to_come_is_refused_but_a_clock_ten_minutes_ahead_is_not():
+    now = datetime(2026, 8, 12, 4, 0, tzinfo=UTC)
+    fields = Fields({"soon": "2026-08-12T04:10Z", "later": "2026-08-12T04:11Z"})
+    assert fields.past_time("soon", "time", now) == datetime(2026, 8, 12, 4, 10, tzinfo=UTC)
+    assert fields.past_time("later", "time", now) is None
+    assert fields.errors["later"].startswith("That time is still to come")
+
+
 def test_local_time_is_read_in_the_survey_zone():
     fields = Fields({"at": "2026-08-12T06:00"}, Show(time_zone="Europe/Vienna"))
     assert fields.local_time("at", "time") == datetime(2026, 8, 12, 4, 0, tzinfo=UTC)

@@ -8,10 +8,8 @@ from webapp.bottles.new import NewBottle, NewHandOver, NewResult
 from webapp.bottles.words import ANALYSES, CONTROLS, FULL, KINDS, POSITIONS
 from webapp.forms import Fields, NotANumber
 
-FURTHEST_AHEAD = timedelta(minutes=10)
 # What the form asks for under "More about this bottle".
 MORE = ("kind", "replicate_of", "sample_depth_m", "position", "volume_ml", "preservative", "filtered", "note")
-_STILL_TO_COME = "That time is still to come. Check the date, the hour and this phone's clock."
 
 
 def fresh_bottle(show, last, now):
@@ -29,8 +27,8 @@ def parse_bottle(source, show, station_code, now):
     """Return (NewBottle, {}) or (None, {field: message})."""
     fields = Fields(source, show)
     kind = fields.choice("kind", "kind of bottle", KINDS, "sample")
-    collected = _time(fields, "collected_at", "time it was filled", now, required=True)
-    on_ice = _time(fields, "on_ice_at", "time it went on ice", now)
+    collected = fields.past_time("collected_at", "time it was filled", now)
+    on_ice = fields.past_time("on_ice_at", "time it went on ice", now, required=False)
     if not fields.holds("on_ice_at") and fields.ticked("ice_at_once"):
         on_ice = collected
     if collected and on_ice and on_ice < collected.replace(second=0, microsecond=0):
@@ -72,7 +70,7 @@ def parse_hand_over(source, bottle_ids, show, bottles, now):
     chosen = tuple(dict.fromkeys(one for one in bottle_ids if one in known))
     if not chosen:
         fields.refuse("bottles", "Tick the bottles that were handed over.")
-    at = _time(fields, "at", "time of the hand-over", now, required=True)
+    at = fields.past_time("at", "time of the hand-over", now)
     if at and (late := [known[one].code for one in chosen if known[one].collected_at > at + timedelta(minutes=1)]):
         fields.refuse("at", f"That is before {', '.join(late)} was filled; check the time and the bottles.")
     new = NewHandOver(
@@ -93,7 +91,7 @@ def parse_result(source, show, bottle, now):
     """Return (NewResult, {}) or (None, {field: message}) of one bottle's result."""
     fields = Fields(source, show)
     times = {
-        name: _time(fields, name, label, now)
+        name: fields.past_time(name, label, now, required=False)
         for name, label in (
             ("arrived_at", "time it arrived"),
             ("started_at", "time the analysis began"),
@@ -173,8 +171,3 @@ def _result(fields, typed):
             fields.refuse("result", f"Say which you mean: {trouble}.")
         fields.refuse("result", "Enter the result as a number, for example 4.1, or after < or >, for example <2.")
         return "none", None, None
-
-
-def _time(fields, name, label, now, required=False):
-    at = fields.local_time(name, label, required=required)
-    return fields.refuse(name, _STILL_TO_COME) if at is not None and at > now + FURTHEST_AHEAD else at

@@ -8,11 +8,11 @@ from datetime import UTC
 
 from webapp.bottles import queries, service
 from webapp.bottles.columns import RESULTS, read_result
-from webapp.bottles.forms import FURTHEST_AHEAD, out_of_order
+from webapp.bottles.forms import out_of_order
 from webapp.bottles.new import NewResult
 from webapp.bottles.words import CONTROLS
 from webapp.display import Show
-from webapp.forms import NotANumber
+from webapp.forms import FURTHEST_AHEAD, NotANumber
 from webapp.surveys.service import remember
 from webapp.tablefile import BadCell, read_table, write_table
 from webapp.tablehead import written_head

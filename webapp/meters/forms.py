@@ -14,8 +14,8 @@ from webapp.meters.words import (
     PERCENT_BASES,
     STANDARDS,
 )
-from webapp.readings.columns import PRESSURE_SOURCES, PRESSURE_UNITS, READINGS
-from webapp.readings.new import FURTHEST_AHEAD
+from webapp.readings.columns import PRESSURE_UNITS
+from webapp.readings.pressure import pressure_of
 
 # The names that calc uses for a field of the form.
 FIELD_OF = {"pressure_value": "pressure", "standard": "expires_on"}
@@ -71,7 +71,7 @@ def parse_check(source, show, meters, now):
     new = NewCheck(
         id=fields.uuid("submission_id"),
         meter_id=_meter(fields, meters),
-        checked_at=_time(fields, now),
+        checked_at=fields.past_time("taken_at", "time of the check", now),
         kind=kind,
         parameter=parameter,
         standard=standard,
@@ -151,28 +151,11 @@ def _conditions(fields, with_air):
         # saturation is known between 0 and 40 °C
         "water_temp_c": own.number("water_temp_c", "temperature of the water", 0, 40, "temperature", with_air),
         "conductance_us_cm": own.number("conductance_us_cm", "conductance", 0, 70000, "conductance", False),
-        **_pressure(own),
+        **pressure_of(own),
     }
     if not with_air:
         fields.entered.update({name: typed for name, typed in own.entered.items() if name not in own.errors})
     return found
-
-
-def _pressure(fields):
-    source = fields.choice("pressure_source", "source of the air pressure", PRESSURE_SOURCES, "standard")
-    unit = fields.choice("pressure_unit", "unit of the air pressure", PRESSURE_UNITS, "mm[Hg]")
-    column = READINGS.column("pressure")
-    value = fields.number("pressure", "air pressure", column.low, column.high, "pressure", False, unit or "mm[Hg]")
-    if value is not None and source == "standard":
-        fields.refuse("pressure_source", "Say where the air pressure comes from: a weather report's is converted.")
-    return {"pressure_mmhg": value, "pressure_source": source or "standard"}
-
-
-def _time(fields, now):
-    checked_at = fields.local_time("taken_at", "time of the check")
-    if checked_at is not None and checked_at > now + FURTHEST_AHEAD:
-        return fields.refuse("taken_at", "That time is still to come. Check the date, the hour and this phone's clock.")
-    return checked_at
 
 
 def _day(fields, name, label):

@@ -7,12 +7,12 @@ from webapp.forms import Fields
 from webapp.readings.columns import (
     PERCENT_BASES,
     POSITIONS,
-    PRESSURE_SOURCES,
     PRESSURE_UNITS,
     READINGS,
     VELOCITY_METHODS,
 )
-from webapp.readings.new import FURTHEST_AHEAD, NewReading
+from webapp.readings.new import NewReading
+from webapp.readings.pressure import pressure_of
 from webapp.readings.values import LONGEST_SOAK_S, BadValues, read_values
 
 # Beyond what can be measured, but a slip that is worth an offer: °F in the °C box, percent in the mg/L box.
@@ -60,14 +60,14 @@ def parse_reading(source, show, station_code, now):
     new = NewReading(
         id=fields.uuid("submission_id"),
         station_code=station_code,
-        taken_at=_time(fields, now),
+        taken_at=fields.past_time("taken_at", "time of the reading", now),
         do_mg_l=series[-1]["do_mg_l"] if series else oxygen,
         series=series,
         soak_s=fields.number("soak_s", "seconds in the water", 0, LONGEST_SOAK_S, "plain", False),
         water_temp_c=_measured(fields, "water_temp_c", "water temperature", required=True),
         **_velocity(fields),
         **{name: _measured(fields, name, label) for name, label in _PLAIN},
-        **_pressure(fields),
+        **pressure_of(fields),
         **_words(fields),
         entered=fields.entered,
     )
@@ -159,23 +159,6 @@ def _series(fields, do_mg_l):
     if do_mg_l is None or "do_mg_l" in fields.errors or any(one["do_mg_l"] == do_mg_l for one in series):
         return series
     return (*series, {"after_s": None, "do_mg_l": do_mg_l, "water_temp_c": None})
-
-
-def _time(fields, now):
-    taken_at = fields.local_time("taken_at", "time of the reading")
-    if taken_at is not None and taken_at > now + FURTHEST_AHEAD:
-        return fields.refuse("taken_at", "That time is still to come. Check the date, the hour and this phone's clock.")
-    return taken_at
-
-
-def _pressure(fields):
-    source = fields.choice("pressure_source", "source of the air pressure", PRESSURE_SOURCES, "standard")
-    unit = fields.choice("pressure_unit", "unit of the air pressure", PRESSURE_UNITS, "mm[Hg]")
-    column = READINGS.column("pressure")
-    value = fields.number("pressure", "air pressure", column.low, column.high, "pressure", False, unit or "mm[Hg]")
-    if value is not None and source == "standard":
-        fields.refuse("pressure_source", "Say where the air pressure comes from: a weather report's is converted.")
-    return {"pressure_mmhg": value, "pressure_source": source or "standard"}
 
 
 def _velocity(fields):

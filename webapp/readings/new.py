@@ -1,10 +1,7 @@
 """A reading on its way in, from the form or a paper sheet, before it is stored."""
 
 from dataclasses import dataclass, field, replace
-from datetime import datetime, timedelta
-
-# How far a clock may run ahead of the server's before a time is taken for a slip.
-FURTHEST_AHEAD = timedelta(minutes=10)
+from datetime import datetime
 
 
 @dataclass(frozen=True)

@@ -9,13 +9,14 @@ from statistics import median
 
 from webapp.display import QUANTITIES, Show, plain_digits
 from webapp.errors import Conflict
+from webapp.forms import FURTHEST_AHEAD
 from webapp.models import Reading, Station
 from webapp.plan.queries import stations_of
 from webapp.readings.asking import findings_on_new, to_ask
 from webapp.readings.columns import READINGS
 from webapp.readings.day import Day
 from webapp.readings.layers import NUMBERS, final
-from webapp.readings.new import FURTHEST_AHEAD, NewReading
+from webapp.readings.new import NewReading
 from webapp.readings.service import oxygen_of, put_reading, station_pressure_of, velocity_of
 from webapp.readings.surroundings import Neighbourhood
 from webapp.readings.values import BadValues, read_values

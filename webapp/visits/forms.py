@@ -11,7 +11,6 @@ from webapp.forms import Fields, NotANumber, read_number
 from webapp.visits.new import Choice, NewEntry
 from webapp.visits.words import CHOICES, NUMBERS
 
-FURTHEST_AHEAD = timedelta(minutes=10)
 LONGEST_VISIT = timedelta(hours=48)
 TEXTS = {"crew": ("crew", 200), "water_look": ("look of the water", 200), "note": ("note", 2000)}
 TEXTS["partial_reason"] = ("reason why it is partial", 500)
@@ -76,8 +75,7 @@ def _times(fields, saved, now):
     if left is not None and arrived is not None and left < arrived:
         left = _second_time(left, fields.show) or left
     for name, instant in (("arrived_at", arrived), ("left_at", left)):
-        if instant is not None and instant > now + FURTHEST_AHEAD:
-            fields.refuse(name, "That time is still to come. Check the date, the hour and this phone's clock.")
+        fields.not_to_come(name, instant, now)
     if arrived is not None and left is not None:
         if left < arrived:
             fields.refuse("left_at", "That is before the arrival. Check both, also the day.")
