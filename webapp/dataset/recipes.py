@@ -15,4 +15,4 @@ SPREADSHEET = (
     "Each number is rounded for people; readings.csv beside it has every layer, from what was typed to what to use.",
     "Filter by quality. An apostrophe at the start of a text was put there so that no formula runs.",
 )
-BY_TOOL = (("pandas", PANDAS), ("R", R), ("A spreadsheet", SPREADSHEET))
+BY_TOOL = (("Python, after import pandas", PANDAS), ("R", R), ("A spreadsheet", SPREADSHEET))
