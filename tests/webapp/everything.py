@@ -4,7 +4,7 @@ import io
 import zipfile
 from datetime import timedelta
 
-from tests.conftest import ROLES, SURVEY_FORM
+from tests.conftest import SURVEY_FORM
 from tests.webapp import servers
 from tests.webapp.sheets import TAKEN, correct, put_readings, set_aside
 from webapp.dataset import service
@@ -22,10 +22,7 @@ from webapp.models import (
     Visit,
     VisitEntry,
 )
-from webapp.people.queries import find_by_sign_in
 from webapp.plan.queries import current_plan, stations_of
-from webapp.surveys.forms import parse_survey
-from webapp.surveys.service import create_survey
 
 PRIVATE_PHONE = "0650 1234567"
 NOTE = "=cmd|'/c calc'!A1"
@@ -149,13 +146,9 @@ def put_bottle(db, survey, person, station):
 
 def unpacked(people_file, folders):
     """Return the folder with the unpacked dataset of a survey with one of everything, and private things."""
-    facts, _ = parse_survey({**SURVEY_FORM, "safety_note": f"Ring {PRIVATE_PHONE}"})
+    form = {**SURVEY_FORM, "safety_note": f"Ring {PRIVATE_PHONE}"}
     folder = folders.mktemp("package")
-    with servers.server_with(people_file, folders.mktemp("source")) as database:
-        with database.reading() as db:
-            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
-        with database.writing() as db:
-            survey = create_survey(db, facts, people["office"].id)
+    with servers.server_with_survey(people_file, folders.mktemp("source"), form) as (database, survey, people):
         with database.writing() as db:
             put_everything(db, survey, people)
         with database.reading() as db:

@@ -4,13 +4,17 @@ import shutil
 import uuid
 from contextlib import contextmanager
 
+from tests.conftest import ROLES, SURVEY_FORM
 from tests.webapp.sheets import TAKEN
 from webapp.db import Database, make_engine
 from webapp.migrate import upgrade
 from webapp.models import Decision, Reading, SettingsVersion
+from webapp.people.queries import find_by_sign_in
 from webapp.plan import queries as plan_queries
 from webapp.plan import service as plan_service
 from webapp.surveyfile import service
+from webapp.surveys.forms import parse_survey
+from webapp.surveys.service import create_survey
 
 
 @contextmanager
@@ -30,6 +34,19 @@ def server_with(people_file, folder):
     shutil.copy(people_file, folder / "other.sqlite3")
     with server(f"sqlite:///{folder / 'other.sqlite3'}") as database:
         yield database
+
+
+@contextmanager
+def server_with_survey(people_file, folder, form=SURVEY_FORM):
+    """Give such a server's Database with an empty survey of the office's, that survey, and the people by role."""
+    facts, errors = parse_survey(form)
+    assert not errors
+    with server_with(people_file, folder) as database:
+        with database.reading() as db:
+            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
+        with database.writing() as db:
+            survey = create_survey(db, facts, people["office"].id)
+        yield database, survey, people
 
 
 def exported(database, survey):

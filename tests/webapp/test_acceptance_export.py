@@ -7,16 +7,12 @@ from types import SimpleNamespace
 
 import pytest
 
-from tests.conftest import ROLES, SURVEY_FORM
 from tests.webapp import servers
 from tests.webapp.plans import put_plan
 from webapp.dataset import importing, service
 from webapp.models import Bottle, LabResult, Survey
-from webapp.people.queries import find_by_sign_in
 from webapp.plan.queries import stations_of
 from webapp.review.service import import_readings
-from webapp.surveys.forms import parse_survey
-from webapp.surveys.service import create_survey
 
 HALF = timedelta(minutes=30)
 # Half-hours of UTC around 01:00 UTC, when the clocks of the survey's zone change.
@@ -28,12 +24,8 @@ FORMULA = "=cmd|'/c calc'!A1"
 @pytest.fixture(scope="module")
 def place(database_with_people, tmp_path_factory):
     """A survey read over both changes of the clocks with odd values and a late bottle: its server and its dataset."""
-    facts, _ = parse_survey(SURVEY_FORM)
-    with servers.server_with(database_with_people, tmp_path_factory.mktemp("source")) as database:
-        with database.reading() as db:
-            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
-        with database.writing() as db:
-            survey = create_survey(db, facts, people["office"].id)
+    place = servers.server_with_survey(database_with_people, tmp_path_factory.mktemp("source"))
+    with place as (database, survey, people):
         with database.writing() as db:
             put_plan(db, survey, people["lead"])
             import_readings(db, survey, [_row(*one) for one in enumerate(SPRING + AUTUMN)], people["crew"].id)

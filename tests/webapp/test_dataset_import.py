@@ -12,7 +12,7 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from sqlalchemy import select
 
-from tests.conftest import PASSWORD, ROLES, SURVEY_FORM
+from tests.conftest import PASSWORD, SURVEY_FORM
 from tests.needs import postgres_server
 from tests.webapp import servers
 from tests.webapp.everything import put_everything
@@ -25,12 +25,11 @@ from webapp.errors import Conflict, NotAllowed
 from webapp.models import History, Reading, Survey, SurveyEvent, SurveyMember
 from webapp.people import service as people_service
 from webapp.people.forms import NewPerson
-from webapp.people.queries import find_by_sign_in
 from webapp.surveyfile import service as surveyfile
 from webapp.surveyfile.archive import BadSurveyFile
 from webapp.surveyfile.tables import carried
 from webapp.surveys.forms import parse_survey
-from webapp.surveys.service import change_survey, create_survey
+from webapp.surveys.service import change_survey
 
 STRANGER = NewPerson("Ivo Marsh", "ivo", "office", PASSWORD)
 
@@ -38,13 +37,8 @@ STRANGER = NewPerson("Ivo Marsh", "ivo", "office", PASSWORD)
 @pytest.fixture(scope="module")
 def source(database_with_people, tmp_path_factory):
     """A server with a survey that has one of everything, and its dataset; nobody changes either."""
-    facts, errors = parse_survey(SURVEY_FORM)
-    assert not errors
-    with servers.server_with(database_with_people, tmp_path_factory.mktemp("source")) as database:
-        with database.reading() as db:
-            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
-        with database.writing() as db:
-            survey = create_survey(db, facts, people["office"].id)
+    place = servers.server_with_survey(database_with_people, tmp_path_factory.mktemp("source"))
+    with place as (database, survey, people):
         with database.writing() as db:
             put_everything(db, survey, people)
         with database.reading() as db:

@@ -9,7 +9,6 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from tests.conftest import ROLES, SURVEY_FORM
 from tests.webapp import servers
 from tests.webapp.sheets import correct, put_readings
 from webapp.dataset.package import checksums, zipped
@@ -17,20 +16,13 @@ from webapp.models import Survey
 from webapp.people.queries import find_by_sign_in
 from webapp.surveyfile import archive, service
 from webapp.surveyfile.archive import BadSurveyFile
-from webapp.surveys.forms import parse_survey
-from webapp.surveys.service import create_survey
 
 
 @pytest.fixture(scope="module")
 def content(database_with_people, tmp_path_factory):
     """A good survey file, made once: nobody changes bytes."""
-    facts, errors = parse_survey(SURVEY_FORM)
-    assert not errors
-    with servers.server_with(database_with_people, tmp_path_factory.mktemp("source")) as database:
-        with database.reading() as db:
-            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
-        with database.writing() as db:
-            survey = create_survey(db, facts, people["office"].id)
+    place = servers.server_with_survey(database_with_people, tmp_path_factory.mktemp("source"))
+    with place as (database, survey, people):
         with database.writing() as db:
             ids = put_readings(db, survey, people)
         with database.writing() as db:

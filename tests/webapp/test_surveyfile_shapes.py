@@ -4,27 +4,19 @@ import json
 
 import pytest
 
-from tests.conftest import ROLES, SURVEY_FORM
 from tests.webapp import servers
 from tests.webapp.everything import put_everything
 from tests.webapp.test_surveyfile_bad import with_rows
-from webapp.people.queries import find_by_sign_in
 from webapp.surveyfile import checks, service
 from webapp.surveyfile.archive import BadSurveyFile
 from webapp.surveyfile.tables import carried
-from webapp.surveys.forms import parse_survey
-from webapp.surveys.service import create_survey
 
 
 @pytest.fixture(scope="module")
 def content(database_with_people, tmp_path_factory):
     """A good survey file with one of everything, made once: nobody changes bytes."""
-    facts, _ = parse_survey(SURVEY_FORM)
-    with servers.server_with(database_with_people, tmp_path_factory.mktemp("source")) as database:
-        with database.reading() as db:
-            people = {role: find_by_sign_in(db, f"{role}.test") for role in ROLES}
-        with database.writing() as db:
-            survey = create_survey(db, facts, people["office"].id)
+    place = servers.server_with_survey(database_with_people, tmp_path_factory.mktemp("source"))
+    with place as (database, survey, people):
         with database.writing() as db:
             put_everything(db, survey, people)
         yield servers.exported(database, survey)
