@@ -181,3 +181,15 @@ def test_the_pages_take_a_survey_through_its_steps(db, survey, people, read, bro
 def form_of(db, survey, reason=""):
     asked = step(db, survey, reason)
     return {"submission_id": asked.id, "seen": asked.seen, "reason": reason}
+
+
+def test_what_was_prepared_before_a_change_is_worked_out_again(db, survey, people, read):
+    prepared = service.prepare(db, survey)
+    correct(db, survey, people, read["D3"], 4.4)
+    event = service.mark_reviewed(db, survey, step(db, survey), SignedIn(people["lead"]), prepared)
+    assert event.version != prepared.version
+
+
+@pytest.mark.parametrize("endpoint", ["approval.review", "approval.approve", "approval.reopen", "settings.change"])
+def test_what_takes_long_is_worked_out_before_standing_in_the_writers_line(app, endpoint):
+    assert app.view_functions[endpoint].reads_only

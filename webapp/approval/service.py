@@ -1,55 +1,67 @@
 """A survey marked as reviewed, approved, and opened again: each is an event that names the dataset it was about."""
 
 import hashlib
+from dataclasses import dataclass
 
 from sqlalchemy import select
 
 from webapp.approval import lock, queries
-from webapp.approval.standing import standing_of
+from webapp.approval.standing import Standing, standing_of
 from webapp.dataset import service as dataset
 from webapp.errors import Conflict, NotAllowed
 from webapp.models import FrozenDataset, Survey, SurveyEvent
 from webapp.surveys.service import remember
 
-__all__ = ["approve", "mark_reviewed", "reopen", "standing_of", "why_not_approve", "why_not_review"]
+__all__ = ["approve", "mark_reviewed", "prepare", "reopen", "standing_of", "why_not_approve", "why_not_review"]
 
 _CHANGED = "The survey changed since this page was opened. Look at it as it is now, then decide."
 _QUESTIONS = "Questions to the crew are open. Wait for their answers, or take the questions back."
 
 
-def mark_reviewed(db, survey, asked, person):
+@dataclass(frozen=True)
+class Prepared:
+    """What a step rests on, worked out while others may write: it holds where the survey still has this mark."""
+
+    mark: str
+    standing: Standing
+    version: str
+
+
+def prepare(db, survey):
+    """Return the Prepared of a survey as it is: all that takes time and needs no place in the writers' line."""
+    mark = queries.mark_of(db, survey.id)
+    return Prepared(mark, standing_of(db, survey), dataset.dataset_of(db, survey).version)
+
+
+def mark_reviewed(db, survey, asked, person, prepared=None):
     """Store that somebody looked through the survey as it is now; return the event. Raises Conflict.
 
     asked.seen is queries.mark_of of the page. The same step sent twice is one.
     """
     if (stored := _stored(db, survey, asked)) is not None:
         return stored
-    _hold(db, survey)
-    if asked.seen != queries.mark_of(db, survey.id):
-        raise Conflict(_CHANGED)
-    if why := why_not_review(queries.state_of(db, survey.id), standing_of(db, survey)):
+    prepared = _held(db, survey, asked, prepared)
+    if why := why_not_review(queries.state_of(db, survey.id), prepared.standing):
         raise Conflict(why)
-    event = _event(db, survey, asked, person, "reviewed", lock.REVIEWED)
+    event = _event(db, survey, asked, person, "reviewed", lock.REVIEWED, prepared.version)
     db.commit()
     return event
 
 
-def approve(db, survey, asked, person):
+def approve(db, survey, asked, person, prepared=None):
     """Approve the survey as it was reviewed, and keep its dataset for ever; return the event.
 
     Raises Conflict, or NotAllowed for whoever marked it as reviewed or recorded one of its readings.
     """
     if (stored := _stored(db, survey, asked)) is not None:
         return stored
-    _hold(db, survey)
-    if asked.seen != queries.mark_of(db, survey.id):
-        raise Conflict(_CHANGED)
-    state, standing = queries.state_of(db, survey.id), standing_of(db, survey)
+    prepared = _held(db, survey, asked, prepared)
+    state, standing = queries.state_of(db, survey.id), prepared.standing
     if why := _own_work(state, standing, person):
         raise NotAllowed(why)
     if why := why_not_approve(state, standing, person):
         raise Conflict(why)
-    event = _event(db, survey, asked, person, "approved", lock.APPROVED)
+    event = _event(db, survey, asked, person, "approved", lock.APPROVED, prepared.version)
     # The dataset that is kept tells of its own approval, so that whoever makes it again has the same bytes.
     approved = dataset.dataset_of(db, survey)
     content = dataset.zip_of(approved)
@@ -59,14 +71,14 @@ def approve(db, survey, asked, person):
     return event
 
 
-def reopen(db, survey, asked, person):
+def reopen(db, survey, asked, person, prepared=None):
     """Open an approved survey again; what was approved stays as it was delivered. Raises Conflict."""
     if (stored := _stored(db, survey, asked)) is not None:
         return stored
-    _hold(db, survey)
-    if queries.state_of(db, survey.id).kind != queries.APPROVED or asked.seen != queries.mark_of(db, survey.id):
+    prepared = _held(db, survey, asked, prepared)
+    if queries.state_of(db, survey.id).kind != queries.APPROVED:
         raise Conflict(_CHANGED)
-    event = _event(db, survey, asked, person, "reopened", lock.REOPENED)
+    event = _event(db, survey, asked, person, "reopened", lock.REOPENED, prepared.version)
     db.commit()
     return event
 
@@ -107,17 +119,23 @@ def _stored(db, survey, asked):
     return stored
 
 
-def _hold(db, survey):
-    """Keep every writer of this survey waiting, where several processes write at once: see approval.lock."""
+def _held(db, survey, asked, prepared):
+    """Keep every other writer of this survey waiting; return what is prepared for it as it is. Raises Conflict.
+
+    Where several processes write at once, the row of the survey is what they wait for: see approval.lock.
+    """
     db.execute(select(Survey.id).where(Survey.id == survey.id).with_for_update())
+    if asked.seen != queries.mark_of(db, survey.id):
+        raise Conflict(_CHANGED)
+    return prepared if prepared is not None and prepared.mark == asked.seen else prepare(db, survey)
 
 
-def _event(db, survey, asked, person, kind, what):
+def _event(db, survey, asked, person, kind, what, version):
     event = SurveyEvent(
         id=asked.id,
         survey_id=survey.id,
         kind=kind,
-        version=dataset.dataset_of(db, survey).version[:60],
+        version=version[:60],
         reason=asked.reason,
         made_by_id=person.id,
     )

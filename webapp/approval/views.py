@@ -7,7 +7,7 @@ from flask import Blueprint, redirect, render_template, request, send_file, url_
 from flask_login import current_user, login_required
 
 from webapp.approval import forms, queries, service
-from webapp.db import get_db
+from webapp.db import get_db, reads_only, write_aside
 from webapp.display import Show
 from webapp.errors import Conflict
 from webapp.people.access import needs
@@ -25,6 +25,7 @@ def page(survey_id):
 
 @bp.post("/surveys/<survey_id>/approval/review")
 @needs("correct")
+@reads_only
 def review(survey_id):
     """Mark the survey as reviewed."""
     return _step(survey_id, service.mark_reviewed)
@@ -32,6 +33,7 @@ def review(survey_id):
 
 @bp.post("/surveys/<survey_id>/approval/approve")
 @needs("manage")
+@reads_only
 def approve(survey_id):
     """Approve the survey, and keep its dataset."""
     return _step(survey_id, service.approve)
@@ -39,6 +41,7 @@ def approve(survey_id):
 
 @bp.post("/surveys/<survey_id>/approval/reopen")
 @needs("manage")
+@reads_only
 def reopen(survey_id):
     """Open an approved survey again."""
     return _step(survey_id, service.reopen, reason_needed=True)
@@ -61,13 +64,16 @@ def frozen(survey_id, event_id):
 
 
 def _step(survey_id, take, reason_needed=False):
+    """Take a step: what it rests on is worked out before it stands in the writers' line."""
     db = get_db()
     survey = survey_queries.get_survey(db, survey_id, current_user.id)
     asked, errors = forms.parse_step(request.form, reason_needed)
     if errors:
         return _page(survey_id, 422, errors)
+    prepared = service.prepare(db, survey)
     try:
-        take(db, survey, asked, current_user)
+        with write_aside() as writing:
+            take(writing, survey, asked, current_user, prepared)
     except Conflict as conflict:
         db.rollback()
         return _page(survey_id, 409, conflict=conflict.message)

@@ -32,10 +32,17 @@ class VersionLine:
     told: dict
 
 
-def change_settings(db, survey, change, by_id):
+def otherwise_under(db, survey, change):
+    """Return (how many readings a change judges otherwise, of how many), told before standing in the writers' line."""
+    current = current_settings(db, survey.id)
+    return judged_otherwise(db, survey, values_of(current.thresholds) | change.values)
+
+
+def change_settings(db, survey, change, by_id, told=None):
     """Store a new version with the changed values over those of the one it is based on; return it.
 
-    The same change sent twice is one version. Raises Overtaken where somebody else was quicker.
+    told is what otherwise_under said just before: the history keeps it. The same change sent twice is one version.
+    Raises Overtaken where somebody else was quicker.
     """
     current = current_settings(db, survey.id)
     if change.based_on != current.number:
@@ -47,7 +54,7 @@ def change_settings(db, survey, change, by_id):
         )
     before = values_of(current.thresholds)
     after = before | change.values
-    otherwise, readings = judged_otherwise(db, survey, after)
+    otherwise, readings = told or judged_otherwise(db, survey, after)
     version = SettingsVersion(
         survey_id=survey.id,
         number=current.number + 1,

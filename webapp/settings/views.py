@@ -4,7 +4,7 @@ from flask import Blueprint, redirect, render_template, request, url_for
 from flask_login import current_user, login_required
 
 from webapp.approval import queries as approval_queries
-from webapp.db import get_db
+from webapp.db import get_db, reads_only, write_aside
 from webapp.display import Show
 from webapp.errors import Conflict
 from webapp.people.access import needs
@@ -31,6 +31,7 @@ def page(survey_id):
 
 @bp.post("/surveys/<survey_id>/settings")
 @needs("correct")
+@reads_only
 def change(survey_id):
     """Store the changed values as a new version, or show the form again with what is wrong beside each field."""
     db = get_db()
@@ -40,10 +41,13 @@ def change(survey_id):
     asked, errors = forms.parse_change(request.form, seen)
     if errors:
         return _page(db, survey, 422, _typed_over(current, seen), errors)
+    told = service.otherwise_under(db, survey, asked)
     try:
-        version = service.change_settings(db, survey, asked, current_user.id)
+        with write_aside() as writing:
+            version = service.change_settings(writing, survey, asked, current_user.id, told)
     except Conflict as conflict:
         db.rollback()
+        current = survey_queries.current_settings(db, survey_id)
         return _page(db, survey, 409, _typed_over(current, seen), conflict=conflict.message, seen=seen)
     return redirect(url_for(".page", survey_id=survey_id, saved=version.number), code=303)
 
