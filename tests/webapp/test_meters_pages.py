@@ -207,7 +207,7 @@ def test_fresh_form_proposes_the_only_meter_and_the_next_check(crew, address, me
     assert "data-fresh" in answer.text
     assert '<option value="as_found" selected>' in answer.text
     asked = crew.get(f"{address}/check?meter=meter+a&kind=zero").text
-    assert '<option value="zero" selected>' in asked and '<option value="zero_solution" selected>' in asked
+    assert '<option value="zero" selected>' in asked and '<option value="zero_solution" selected>' not in asked
 
 
 def test_form_proposes_the_meter_that_the_person_checked_last(crew, address, meter, day):
@@ -243,6 +243,11 @@ def test_check_made_at_once_after_another_begins_with_its_pressure_and_place(cre
     assert value_of(beside, "water_temp_c") == ""
     elsewhere = crew.get(f"{address}/check?meter={day.meter('Meter B').id}&kind=as_found")
     assert value_of(elsewhere, "pressure") == "" and 'value="U1"' not in elsewhere.text
+
+
+def test_form_for_a_zero_check_that_becomes_another_kind_is_not_against_zero_solution(crew, address, meter):
+    page = crew.get(f"{address}/check?meter={meter.id}&kind=zero").text
+    assert '<option value="zero" selected>' in page and '<option value="air_saturated_water" selected>' in page
 
 
 def test_with_htmx_the_verdict_comes_in_place(crew, address, a_form):

@@ -188,7 +188,8 @@ def fresh_check(show, last, now, meter_id, kind, parameter):
         "meter": meter_id,
         "kind": kind,
         "parameter": parameter,
-        "standard": usual_standard(parameter, kind),
+        # Of a zero check the list is hidden and does not count: it waits with what another kind is made against.
+        "standard": PARAMETERS[parameter].standards[0],
         "place": last.place if follows else "",
         "action": _usual_action(kind),
         "pressure": pressure.get("text", "") if follows else "",
