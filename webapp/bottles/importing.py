@@ -3,7 +3,6 @@
 import json
 import uuid
 from collections import Counter
-from dataclasses import dataclass
 from datetime import UTC
 
 from webapp.bottles import queries, service
@@ -16,30 +15,11 @@ from webapp.forms import FURTHEST_AHEAD, NotANumber
 from webapp.surveys.service import remember
 from webapp.tablefile import BadCell, read_table, write_table
 from webapp.tablehead import written_head
+from webapp.tablepreview import Preview, in_table_order
 
 _IMPORTED = uuid.UUID("0f0b9a52-6a55-5c11-8d0a-8b1c0e6c6a3e")
 _TIMES = ("arrived_at", "started_at", "finished_at")
 _TEXTS = ("laboratory", "lab_number", "method", "analyst", "note")
-
-
-@dataclass(frozen=True)
-class Preview:
-    """What a file would do: its bad cells, or the NewResults it brings with their bottles' codes."""
-
-    file: object
-    errors: tuple
-    new: tuple = ()
-    known: int = 0
-
-    @property
-    def good(self):
-        """Return whether the file can be taken as it is."""
-        return not self.errors and not self.file.header_errors
-
-    @property
-    def wrong(self):
-        """Return the (row, column label) of each bad cell."""
-        return {(cell.row, cell.column_label) for cell in self.errors}
 
 
 def preview(db, survey, text, now):
@@ -50,9 +30,7 @@ def preview(db, survey, text, now):
     if not file.header_errors:
         for number, row, typed in zip(file.numbers, file.rows, file.cells, strict=True):
             errors += _impossible(number, row, typed, bottles, now + FURTHEST_AHEAD)
-    order = {column.label: at for at, column in enumerate(RESULTS.columns)}
-    errors.sort(key=lambda cell: (cell.row, order.get(cell.column_label, len(order))))
-    found = Preview(file, tuple(errors))
+    found = Preview(file, in_table_order(errors, RESULTS))
     if not found.good:
         return found
     made = _results(survey, file, bottles)

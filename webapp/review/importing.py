@@ -24,6 +24,7 @@ from webapp.review.queries import stored_ids
 from webapp.surveys.service import remember
 from webapp.tablefile import BadCell, read_table, write_table
 from webapp.tablehead import written_head
+from webapp.tablepreview import Preview, in_table_order
 
 _IMPORTED = uuid.UUID("6f1d0a5e-3c0b-5d0f-9a43-6a2f1c7be0d4")
 _MEASURED = ("do_mg_l", "values", "water_temp_c", "depth_m", "do_percent", "conductance_us_cm", "ph", "pressure",
@@ -35,26 +36,6 @@ _PLAIN = ("do_mg_l", "water_temp_c", "depth_m", "do_percent", "conductance_us_cm
 _ROUNDED_MG_L = 0.05
 
 
-@dataclass(frozen=True)
-class Preview:
-    """What a file would do: its bad cells, or the readings it brings, each with what is worth a look."""
-
-    file: object
-    errors: tuple
-    new: tuple = ()
-    known: int = 0
-
-    @property
-    def good(self):
-        """Return whether the file can be taken as it is."""
-        return not self.errors and not self.file.header_errors
-
-    @property
-    def wrong(self):
-        """Return the (row, column label) of each bad cell."""
-        return {(cell.row, cell.column_label) for cell in self.errors}
-
-
 def checked(db, survey, text):
     """Return the Preview of a readings table as text, with its bad cells and not yet with its readings."""
     file = read_table(text, READINGS, Show.of(survey))
@@ -64,9 +45,7 @@ def checked(db, survey, text):
         latest = datetime.now(UTC) + FURTHEST_AHEAD
         for number, row, typed in zip(file.numbers, file.rows, file.cells, strict=True):
             errors += [*_impossible(number, row, typed, codes, latest), *_unreadable(number, row, Show.of(survey))]
-    order = {column.label: at for at, column in enumerate(READINGS.columns)}
-    errors.sort(key=lambda cell: (cell.row, order.get(cell.column_label, len(order))))
-    return Preview(file, tuple(errors))
+    return Preview(file, in_table_order(errors, READINGS))
 
 
 def preview(db, survey, text):
