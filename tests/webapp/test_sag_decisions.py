@@ -300,3 +300,8 @@ def test_mark_is_that_of_the_page(app, day):
         survey = survey_of(db, day)
         sag = service.sag_of(db, survey, Show.of(survey), datetime.now(UTC))
         assert service.current_mark(db, survey) == sag.mark
+
+
+@pytest.mark.parametrize("endpoint", ["sag.choose", "sag.decline", "sag.offer", "sag.leave"])
+def test_the_estimate_is_made_before_standing_in_the_writers_line(app, endpoint):
+    assert app.view_functions[endpoint].reads_only

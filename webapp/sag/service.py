@@ -1,7 +1,7 @@
 """What the sag page tells: the answer, today's sag beside the plan's, where next, and every station."""
 
 import hashlib
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from webapp.fieldsheet.snapshot import window_of
 from webapp.meters.closing import closing_of
@@ -9,6 +9,7 @@ from webapp.plan.prediction import prediction_of
 from webapp.plan.queries import current_plan, stations_of
 from webapp.readings.asking import thresholds
 from webapp.readings.check import on_site_check
+from webapp.readings.kept import readings_kept
 from webapp.readings.layers import final, placed
 from webapp.readings.queries import readings_of
 from webapp.sag.budget import time_budget
@@ -121,7 +122,12 @@ def _meters(db, survey, show, settings, readings, prediction, now):
 def current_mark(db, survey):
     """Return the mark of a survey's sag page as it stands, without making the page."""
     plan = current_plan(db, survey.id)
-    return mark_of(plan, counted(readings_of(db, survey.id), plan) if plan else ())
+    return mark_of(plan, counted(readings_kept(db, survey.id)[1], plan) if plan else ())
+
+
+def marked_now(db, survey, sag):
+    """Return the Sag with the mark of now: asked for by whoever writes, it tells what changed since it was made."""
+    return replace(sag, mark=current_mark(db, survey))
 
 
 def mark_of(plan, counts):

@@ -7,7 +7,7 @@ from flask import Blueprint, redirect, request, url_for
 from flask_login import current_user, login_required
 
 from webapp.charts import sag_chart
-from webapp.db import get_db
+from webapp.db import get_db, reads_only, write_aside
 from webapp.display import Show
 from webapp.errors import Conflict
 from webapp.htmx import page_or_part, wants_fragment
@@ -45,6 +45,7 @@ def news(survey_id):
 
 @bp.post(f"{SAG}/station")
 @needs("plan")
+@reads_only
 def choose(survey_id):
     """Take a place for the next station."""
     return _decided(survey_id, decisions.choose_station)
@@ -52,6 +53,7 @@ def choose(survey_id):
 
 @bp.post(f"{SAG}/decline")
 @needs("plan")
+@reads_only
 def decline(survey_id):
     """Offer a place no longer."""
     return _decided(survey_id, decisions.decline)
@@ -59,6 +61,7 @@ def decline(survey_id):
 
 @bp.post(f"{SAG}/offer")
 @needs("plan")
+@reads_only
 def offer(survey_id):
     """Offer a declined place again."""
     return _decided(survey_id, decisions.offer_again)
@@ -78,6 +81,7 @@ def crew(survey_id):
 
 @bp.post(f"{SAG}/leave")
 @needs("plan")
+@reads_only
 def leave(survey_id):
     """Keep that the crew leaves, or stays."""
     db = get_db()
@@ -86,7 +90,7 @@ def leave(survey_id):
     asked, errors = forms.parse_leaving(request.form, sag.leave is not None and sag.leave.settled)
     if errors:
         return _page(survey, 422, errors=errors, sag=sag)
-    return _tried(survey, lambda: decisions.leave_or_stay(db, survey, sag, asked, current_user.id))
+    return _tried(survey, lambda: _written(survey, sag, decisions.leave_or_stay, asked))
 
 
 def _decided(survey_id, decide):
@@ -97,7 +101,14 @@ def _decided(survey_id, decide):
     if errors:
         return _page(survey, 422, errors=errors)
     sag = service.sag_of(db, survey, Show.of(survey), datetime.now(UTC))
-    return _tried(survey, lambda: decide(db, survey, sag, asked, current_user.id))
+    return _tried(survey, lambda: _written(survey, sag, decide, asked))
+
+
+def _written(survey, sag, decide, asked):
+    """Store a decision on a Sag that was made before it stood in the writers' line; what it shows is then the new."""
+    with write_aside() as writing:
+        decide(writing, survey, service.marked_now(writing, survey, sag), asked, current_user.id)
+    get_db().rollback()
 
 
 def _tried(survey, deed):
