@@ -6,6 +6,7 @@ from tests.webapp.metered import START, put_check, put_day
 from webapp.models import Reading, Survey
 from webapp.people.access import SignedIn
 from webapp.readings import judging, queries
+from webapp.readings.kept import readings_kept
 from webapp.readings.layers import final
 from webapp.review import service
 from webapp.review.forms import Correction
@@ -84,3 +85,17 @@ def test_a_decision_leaves_what_is_said_of_far_readings_as_it_was(db, survey, pe
     after = judging.judgement_of(db, survey)
     assert after.by_id[first].reading.review == "kept"
     assert any(after.by_id[one] is before.by_id[one] for one in others)
+
+
+def test_a_reading_that_was_rolled_back_is_not_kept_in_memory(db, survey, people):
+    put_day(db, survey, people)
+    stored = len(readings_kept(db, survey.id)[0])
+    row = db.query(Reading).first()
+    same = {
+        name: getattr(row, name) for name in ("survey_id", "station_id", "plan_version_id", "author_id", "taken_at")
+    }
+    db.add(Reading(id="lost", **same))
+    db.flush()
+    assert len(readings_kept(db, survey.id)[0]) == stored + 1
+    db.rollback()
+    assert "lost" not in {one.id for one in readings_kept(db, survey.id)[1]}
