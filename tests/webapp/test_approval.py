@@ -163,7 +163,9 @@ def test_the_pages_take_a_survey_through_its_steps(db, survey, people, read, bro
     assert crew.post(f"{address}/review", form_of(db, survey)).status_code == 403
     assert lead.post(f"{address}/approve", form_of(db, survey)).status_code == 403
     assert "<button>Approve</button>" in office.get(address).text
-    assert office.post(f"{address}/approve", form_of(db, survey)).status_code == 303
+    silent = office.post(f"{address}/approve", form_of(db, survey))  # with four readings that nobody looked at
+    assert (silent.status_code, 'id="reason-error"' in silent.text) == (422, True)
+    assert office.post(f"{address}/approve", form_of(db, survey, "for the permit")).status_code == 303
     assert "Approved</strong> by Olive Reed" in crew.get(f"/surveys/{survey.id}/readings").text
     page = office.get(address).text
     assert "Download what was approved" in page

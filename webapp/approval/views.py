@@ -67,6 +67,8 @@ def _step(survey_id, take, reason_needed=False):
     """Take a step: what it rests on is worked out before it stands in the writers' line."""
     db = get_db()
     survey = survey_queries.get_survey(db, survey_id, current_user.id)
+    # What stands against a survey may stay, if whoever reviews or approves it says why.
+    reason_needed = reason_needed or not service.standing_of(db, survey).clear
     asked, errors = forms.parse_step(request.form, reason_needed)
     if errors:
         return _page(survey_id, 422, errors)
