@@ -40,6 +40,12 @@ def _without_groups(plain):
     raise NotANumber("not a number")
 
 
+def whole_number(text, otherwise=None):
+    """Return the whole number that plain digits say, otherwise where they don't or are too many for a page to mean."""
+    text = str(text or "")
+    return int(text) if text.isascii() and text.isdigit() and len(text) <= 6 else otherwise
+
+
 class Fields:
     """Takes fields from a form one by one; errors collects a message for each bad one, entered what was typed."""
 

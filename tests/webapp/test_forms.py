@@ -7,7 +7,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from webapp.display import Show
-from webapp.forms import Fields, NotANumber, read_number
+from webapp.forms import Fields, NotANumber, read_number, whole_number
 
 
 @pytest.mark.parametrize(
@@ -83,3 +83,13 @@ def test_strange_times_are_refused_or_read_but_never_crash(text):
     fields = Fields({"at": text}, Show(time_zone="Pacific/Kiritimati"))
     value = fields.local_time("at", "time")
     assert (value is None) == bool(fields.errors)
+
+
+@pytest.mark.parametrize(("text", "number"), [("0", 0), ("12", 12), ("999999", 999999)])
+def test_whole_number_is_read_from_plain_digits(text, number):
+    assert whole_number(text) == number
+
+
+@pytest.mark.parametrize("text", [None, "", "-1", "1.0", "1_0", "\u0661", "\u00b2", "1000000", " 1"])
+def test_what_is_no_plain_whole_number_counts_as_not_said(text):
+    assert whole_number(text, -1) == -1

@@ -11,6 +11,7 @@ from webapp.bottles import forms, importing, queries, service, shown, words
 from webapp.db import get_db, reads_only
 from webapp.display import Show
 from webapp.errors import Conflict
+from webapp.forms import whole_number
 from webapp.htmx import page_or_part, wants_fragment
 from webapp.people.access import needs
 from webapp.readings.queries import get_station
@@ -36,8 +37,7 @@ def page(survey_id):
     """Show every bottle with its clock, and the hand-overs."""
     survey, now = _survey(survey_id), datetime.now(UTC)
     found = shown.bottles_page(get_db(), survey, now)
-    added = request.args.get("added", "")
-    added = int(added) if added.isascii() and added.isdigit() and len(added) < 6 else None
+    added = whole_number(request.args.get("added"))
     return render_template("bottles/page.html", **_context(survey), bottles=found, added=added)
 
 

@@ -3,7 +3,7 @@
 import uuid
 from datetime import date, timedelta
 
-from webapp.forms import Fields
+from webapp.forms import Fields, whole_number
 from webapp.meters.new import NewCheck, NewMeter, Standard, find_meter
 from webapp.meters.words import (
     ACTIONS,
@@ -237,5 +237,4 @@ def parse_reason(source):
 
 def based_on(source):
     """Return how many decisions the form's page knew of; -1, which never fits, where it does not say."""
-    text = source.get("based_on") or ""
-    return int(text) if text.isascii() and text.isdigit() and len(text) <= 6 else -1
+    return whole_number(source.get("based_on"), -1)

@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass, field, replace
 
+from webapp.forms import whole_number
 from webapp.plan.rows import next_codes, refused_code, refused_rows, row_title, with_row
 from webapp.plan.tables import PLAN_TABLES, STATIONS
 from webapp.tablecell import BadText, read_cell
@@ -89,8 +90,7 @@ def parse_reason(source, needed):
 
 def parse_based_on(source):
     """Return the number of the version that a form was made from; 0 where it does not say."""
-    text = str(source.get("based_on") or "")
-    return int(text) if text.isascii() and text.isdigit() and len(text) < 9 else 0
+    return whole_number(source.get("based_on"), 0)
 
 
 def parse_file(text, key, show):

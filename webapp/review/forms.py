@@ -4,7 +4,7 @@ import math
 from dataclasses import dataclass
 from datetime import date, datetime
 
-from webapp.forms import Fields
+from webapp.forms import Fields, whole_number
 from webapp.readings.quality_words import QUALITIES, REASONS
 from webapp.review.numbers import CORRECTABLE
 
@@ -91,9 +91,7 @@ def _day(fields):
 
 
 def _page(text):
-    if text and text.isascii() and text.isdigit() and len(text) <= 6:
-        return min(max(int(text), 1), LAST_PAGE)
-    return 1
+    return min(max(whole_number(text, 1), 1), LAST_PAGE)
 
 
 def parse_correction(source, show, final, decided):
@@ -155,7 +153,7 @@ def parse_ticked(source, ticked):
     counts = {}
     for text in ticked:
         reading_id, _, count = text.rpartition(".")
-        counts[reading_id[:36]] = _count(count)
+        counts[reading_id[:36]] = whole_number(count, -1)
     all_that_fit = fields.ticked("all_that_fit")
     if not counts and not all_that_fit:
         fields.refuse("ticked", "Tick the readings to keep first.")
@@ -188,11 +186,7 @@ def parse_drift(source):
 
 def based_on(source):
     """Return how many decisions the form's page knew of; -1, which never fits, where it does not say."""
-    return _count(source.get("based_on") or "")
-
-
-def _count(text):
-    return int(text) if text.isascii() and text.isdigit() and len(text) <= 6 else -1
+    return whole_number(source.get("based_on"), -1)
 
 
 def _reason(fields):

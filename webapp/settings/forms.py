@@ -2,11 +2,8 @@
 
 from dataclasses import dataclass
 
-from webapp.forms import Fields, NotANumber, read_number
+from webapp.forms import Fields, NotANumber, read_number, whole_number
 from webapp.settings.topics import LOW_AND_HIGH, SETTINGS, limits_of, title_of, typed, values_of
-
-# Beyond it a number is a slip: no version has that many before it.
-_MOST_VERSIONS = 1_000_000
 
 
 @dataclass(frozen=True)
@@ -20,9 +17,7 @@ class Change:
 
 def based_on(source, default):
     """Return the number of the version the form was filled in on."""
-    text = source.get("based_on") or ""
-    number = int(text) if text.isascii() and text.isdigit() and len(text) <= 6 else default
-    return min(number, _MOST_VERSIONS)
+    return whole_number(source.get("based_on"), default)
 
 
 def typed_values(thresholds):
