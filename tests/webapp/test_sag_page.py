@@ -5,8 +5,9 @@ import pytest
 
 from calc.oxygen import saturation_mg_l, standard_pressure_mmhg
 from tests.webapp.plans import PLAN, put_plan
-from webapp.models import ReadingEvent
+from webapp.models import ReadingEvent, Visit, VisitEntry, new_id
 from webapp.plan.prediction import predict_plan
+from webapp.plan.queries import stations_of
 from webapp.readings.new import NewReading
 from webapp.readings.service import add_reading
 
@@ -157,3 +158,15 @@ def test_page_in_us_units_and_river_miles_shows_no_si(app, survey, sag_text, ver
     assert "75.93 ft³/s" in text
     assert " km" not in text
     assert "°C" not in text
+
+
+def test_a_stage_that_rose_since_the_morning_is_told_where_the_lead_decides(db, survey, people, version, sag_text):
+    station = stations_of(db, survey.id)["D3"].id
+    for hours, stage in ((0, 0.41), (4, 0.55)):
+        visit = Visit(id=new_id(), survey_id=survey.id, station_id=station, opened_by_id=people["crew"].id)
+        facts = {"arrived_at": (START + timedelta(hours=hours)).isoformat(), "stage_m": stage}
+        db.add_all([visit, VisitEntry(id=new_id(), visit_id=visit.id, author_id=people["crew"].id, facts=facts)])
+    db.commit()
+    page = sag_text("lead")
+    assert "0.14 m" in page
+    assert f"/surveys/{survey.id}/visits/" in page

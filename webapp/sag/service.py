@@ -21,6 +21,8 @@ from webapp.sag.queries import decisions_of
 from webapp.sag.screen import screen_of
 from webapp.sag.where_next import where_next
 from webapp.surveys.queries import current_settings
+from webapp.visits.line import SheetVisits, visits_on_sheet
+from webapp.visits.queries import visits_of
 
 
 @dataclass(frozen=True)
@@ -45,7 +47,8 @@ class Sag:
     """All of the sag page. placed are the readings a chart draws; leave, where and budget are None without an estimate.
 
     below_criterion tells of the lowest reading; decisions are those made on site; mark changes with whatever a decision
-    rests on, and screen is what a decision keeps of the page. window is the run of a snapshot survey.
+    rests on, and screen is what a decision keeps of the page. window is the run of a snapshot survey, visits what the
+    crews noticed at the water.
     """
 
     plan: object
@@ -61,6 +64,7 @@ class Sag:
     mark: str
     screen: dict
     window: object
+    visits: SheetVisits
 
     @property
     def chosen(self):
@@ -110,6 +114,7 @@ def sag_of(db, survey, show, now):
         mark=mark_of(plan, counted(finals, plan) if plan else ()),
         screen=screen_of(plan, today, leave, where, budget, now),
         window=window_of(survey, plan, settings, finals),
+        visits=visits_on_sheet(show, visits_of(db, survey.id), settings, now),
     )
 
 
