@@ -41,6 +41,10 @@ def transfer_time_d(first_per_day, second_per_day, time_d):
     return np.exp(-slower * time_d) * exhausted_time_d(np.abs(second_per_day - first_per_day), time_d)
 
 
+# Where a function is flatter than this, Newton's step overflows: bisection takes over.
+_FLAT = 1e-200
+
+
 def falling_root(function, low, high):
     """Return where a falling function crosses zero, elementwise, to 1e-14 of the bracket's upper end.
 
@@ -51,7 +55,8 @@ def falling_root(function, low, high):
     for _ in range(200):
         value, derivative = function(root)
         low, high = np.where(value > 0, root, low), np.where(value > 0, high, root)
-        step = root - value / np.where(derivative == 0, -SMALLEST_RATE, derivative)
+        flat = np.abs(derivative) < _FLAT
+        step = root - value / np.where(flat, -SMALLEST_RATE, derivative)
         closer = np.where((step >= low) & (step <= high), step, (low + high) / 2)
         moved, root = np.abs(closer - root), closer
         if not (moved > enough).any():

@@ -4,6 +4,8 @@ import re
 import shutil
 
 import pytest
+from jinja2 import FileSystemBytecodeCache
+from werkzeug.security import generate_password_hash
 
 from webapp import create_app
 from webapp.config import read_config
@@ -37,6 +39,12 @@ def database_with_people(tmp_path_factory):
     for role, name in ROLES.items():
         with database.writing() as session:
             people_service.add_person(session, NewPerson(name, f"{role}.test", role, PASSWORD))
+    with database.writing() as session:
+        # Checking a real hash takes a tenth of a second, more than most tests.
+        quick = generate_password_hash(PASSWORD, method="pbkdf2:sha256:1")
+        for role in ROLES:
+            find_by_sign_in(session, f"{role}.test").password_hash = quick
+        session.commit()
     database.engine.dispose()
     return config.sqlite_path
 
@@ -50,10 +58,17 @@ def config(tmp_path, database_with_people):
     return config
 
 
+@pytest.fixture(scope="session")
+def compiled_templates(tmp_path_factory):
+    """Templates as Python compiled them for an earlier test: that takes longer than most tests."""
+    return FileSystemBytecodeCache(str(tmp_path_factory.mktemp("templates")))
+
+
 @pytest.fixture
-def app(config):
+def app(config, compiled_templates):
     """The application, with request limits off."""
     app = create_app(config, TESTING=True, RATELIMIT_ENABLED=False)
+    app.jinja_env.bytecode_cache = compiled_templates
     yield app
     app.extensions["bankside_database"].engine.dispose()
 

@@ -1,17 +1,24 @@
 """A real server process with the demo survey, and a real Chromium at phone size."""
 
 import os
+import shutil
 import socket
 import subprocess
 import sys
 import time
 import urllib.request
 from contextlib import contextmanager
+from datetime import UTC, datetime
 
 import pytest
+from werkzeug.security import generate_password_hash
 
 from tests.needs import chromium_path
+from webapp import cli
+from webapp.config import read_config
 from webapp.demo import SIGN_INS
+from webapp.demo import load as load_demo
+from webapp.people.queries import find_by_sign_in
 
 PHONE = {"viewport": {"width": 360, "height": 740}, "device_scale_factor": 2, "is_mobile": True, "has_touch": True}
 DESK = {"viewport": {"width": 1280, "height": 900}}
@@ -66,9 +73,11 @@ def _wait_for(address, process, seconds=40):
 
 
 @pytest.fixture(scope="session")
-def demo(tmp_path_factory):
+def demo(tmp_path_factory, demo_data):
     """The address of a server with the demo survey, shared by the tests that change little."""
-    with serving(tmp_path_factory.mktemp("demo")) as address:
+    data_dir = tmp_path_factory.mktemp("demo") / "data"
+    shutil.copytree(demo_data, data_dir)
+    with serving(data_dir) as address:
         yield address
 
 
@@ -133,9 +142,26 @@ def survey_address(page, name="Sallow Water, August low flow"):
     return link.get_attribute("href").removesuffix("/sheet")
 
 
+@pytest.fixture(scope="session")
+def demo_data(tmp_path_factory):
+    """A data folder with the demo in it, to be copied: loading it takes longer than most tests."""
+    config = read_config({}, data_dir=tmp_path_factory.mktemp("demo-data"))
+    database = cli._open(config)
+    with database.writing() as db:
+        load_demo(db, datetime.now(UTC))
+    with database.writing() as db:
+        for name, password in PASSWORDS.values():
+            # Checking a real hash takes a tenth of a second.
+            find_by_sign_in(db, name).password_hash = generate_password_hash(password, method="pbkdf2:sha256:1")
+        db.commit()
+    database.engine.dispose()
+    return config.data_dir
+
+
 @pytest.fixture
-def own_demo(tmp_path):
+def own_demo(tmp_path, demo_data):
     """A server of this test's own, whose day nobody else walks."""
+    shutil.copytree(demo_data, tmp_path / "data")
     with serving(tmp_path / "data") as address:
         yield address
 
